@@ -1,0 +1,11 @@
+//! Text of a sheet to a checked model, or to diagnostics with a place, a marker and a hint.
+
+mod diagnostic;
+mod model;
+mod syntax;
+mod unit;
+
+pub use diagnostic::{Diagnostic, Severity, SheetErrors, Source};
+pub use model::*;
+pub use syntax::Span;
+pub use unit::{Dimension, Unit};

@@ -1,0 +1,4 @@
+//! Surface integrals from formulas.
+
+pub mod expression;
+pub mod language;
