@@ -1,4 +1,5 @@
 //! Surface integrals from formulas.
 
 pub mod expression;
+pub mod integrals;
 pub mod language;

@@ -1,0 +1,89 @@
+//! What is asked and what is answered: values with their errors and how they were got.
+
+use crate::language::{Dimension, Unit};
+
+/// How an answer was got.
+#[derive(Clone, Copy, PartialEq, Eq, Debug)]
+pub enum AnswerKind {
+    /// A rigorous enclosure: the truth lies in [value - error, value + error].
+    Proved,
+    /// A conservative error estimate within the tolerance.
+    Estimate,
+    /// The tolerance was not reached; value and error are the best so far.
+    Unreached,
+}
+
+impl AnswerKind {
+    /// The word in reports and JSON.
+    pub fn word(self) -> &'static str {
+        match self {
+            AnswerKind::Proved => "proved",
+            AnswerKind::Estimate => "estimate",
+            AnswerKind::Unreached => "unreached",
+        }
+    }
+}
+
+/// Tolerances and limits of a run.
+#[derive(Clone, PartialEq, Debug)]
+pub struct Settings {
+    /// Error allowed, relative to the largest component.
+    pub relative: f64,
+    /// Error allowed in the coherent unit, whatever the value.
+    pub absolute: f64,
+    /// Largest number of integrand evaluations of one patch before the best value so far is returned as unreached.
+    pub evaluations: u64,
+}
+
+impl Default for Settings {
+    fn default() -> Self {
+        Self { relative: 1e-9, absolute: 0.0, evaluations: 20_000_000 }
+    }
+}
+
+/// One number of an answer, in coherent SI units.
+#[derive(Clone, PartialEq, Debug)]
+pub struct Component {
+    /// Empty for a number, `x` for a vector, `xx` for a tensor.
+    pub label: &'static str,
+    /// The value.
+    pub value: f64,
+    /// Half-width of the interval that holds the truth (see [`AnswerKind`]), rounding included.
+    pub error: f64,
+}
+
+/// Principal moments of a tensor of inertia, ascending, and their axes (unit vectors, one row each).
+#[derive(Clone, PartialEq, Debug)]
+pub struct Principal {
+    /// Moments in coherent SI units.
+    pub moments: [f64; 3],
+    /// Bound on the error of each moment, from the errors of the tensor (Weyl's inequality).
+    pub error: f64,
+    /// Axes, right-handed.
+    pub axes: [[f64; 3]; 3],
+}
+
+/// One answered question.
+#[derive(Clone, PartialEq, Debug)]
+pub struct Answer {
+    /// Its name in the sheet, or `area(patch)` where none was asked.
+    pub name: String,
+    /// One number, three or six of them.
+    pub components: Vec<Component>,
+    /// Weakest kind among the integrals it rests on.
+    pub kind: AnswerKind,
+    /// Why the tolerance was not reached or no proof was possible.
+    pub reason: Option<String>,
+    /// Dimension of the components.
+    pub dimension: Dimension,
+    /// The unit to show them in; `None` shows the coherent unit.
+    pub shown_as: Option<Unit>,
+    /// Integrand evaluations of the integrals it rests on.
+    pub evaluations: u64,
+    /// Seconds spent on the integrals it rests on.
+    pub seconds: f64,
+    /// For a tensor of inertia.
+    pub principal: Option<Principal>,
+    /// What the reader should know: open chain, one-sided patch, condition number.
+    pub warnings: Vec<String>,
+}
