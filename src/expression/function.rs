@@ -1,7 +1,7 @@
 //! The table of functions: name, domain, exact values, evaluation.
 //!
 //! A new function is a new variant here; the compiler then points at every `match` that must learn it (its derivative
-//! in `calculus`, its range in `enclosure`). Elementary functions come from `pxfm`, whose results were measured within
+//! in `derivative.rs`, its range in `enclosure`). Elementary functions come from `pxfm`, whose results were measured within
 //! half a unit in the last place and are the same bits on every machine; the standard library is never used, because
 //! its `acosh` and `atanh` lose up to 10^5 units in the last place.
 
