@@ -1,5 +1,7 @@
 //! Surface integrals from formulas.
 
+pub mod calculus;
 pub mod expression;
+pub mod geometry;
 pub mod integrals;
 pub mod language;

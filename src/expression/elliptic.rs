@@ -5,7 +5,11 @@
 //!
 //!   m(1-m) K'' + (1-2m) K' - K/4 = 0,      m(1-m) E'' + (1-m) E' + E/4 = 0,
 //!
-//! differentiated n times; near m = 0, where that recurrence divides by m, from the power series (DLMF 19.5.1, 19.5.2).
+//! differentiated n times; that recurrence also has a solution that grows like |m|^-n, so that in the middle, where |m|
+//! is not large against 1 - m, the hypergeometric series is used instead. The differences in both cancel a few digits
+//! (E near m = 1, K' near m = 0), which arithmetic of twice the length absorbs: the results are good to the last place.
+
+use super::wide::Wide;
 
 /// The n-th derivative of K at `m`; NaN for m > 1, infinite at 1.
 pub(super) fn first_kind(n: u8, m: f64) -> f64 {
@@ -15,17 +19,21 @@ pub(super) fn first_kind(n: u8, m: f64) -> f64 {
     if m == 1.0 {
         return f64::INFINITY;
     }
+    if n > 0 && in_the_middle(n, m) {
+        return series(n, m, 0.5);
+    }
+    let (k, e) = both(m);
     if n == 0 {
-        return std::f64::consts::FRAC_PI_2 / mean(m).0;
+        return k.to_f64();
     }
-    if m.abs() <= SERIES_RADIUS {
-        return series(n, m, 1.0);
-    }
-    let (k, e) = (first_kind(0, m), second_kind(0, m));
-    let slope = (e - (1.0 - m) * k) / (2.0 * m * (1.0 - m));
+    let (m, rest) = (Wide::from(m), Wide::from(1.0) - Wide::from(m));
+    // K' = (E/(1-m) - K)/(2m), DLMF 19.4.1
+    let slope = (e / rest - k) / (Wide::from(2.0) * m);
     // m(1-m) K^(j+2) = (j + 1/2)^2 K^(j) - (j+1)(1-2m) K^(j+1)
     recur(n, k, slope, |j, low, high| {
-        ((j + 0.5) * (j + 0.5) * low - (j + 1.0) * (1.0 - 2.0 * m) * high) / (m * (1.0 - m))
+        let outer = Wide::from((j + 0.5) * (j + 0.5)) * low;
+        let inner = Wide::from(j + 1.0) * (rest - m) * high;
+        (outer - inner) / m / rest
     })
 }
 
@@ -37,68 +45,100 @@ pub(super) fn second_kind(n: u8, m: f64) -> f64 {
     if m == 1.0 {
         return if n == 0 { 1.0 } else { f64::NEG_INFINITY };
     }
+    if n > 0 && in_the_middle(n, m) {
+        return series(n, m, -0.5);
+    }
+    let (k, e) = both(m);
     if n == 0 {
-        let (limit, sum) = mean(m);
-        return std::f64::consts::FRAC_PI_2 / limit * (1.0 - sum);
+        return e.to_f64();
     }
-    if m.abs() <= SERIES_RADIUS {
-        return series(n, m, -1.0);
-    }
-    let (k, e) = (first_kind(0, m), second_kind(0, m));
-    let slope = (e - k) / (2.0 * m);
+    let (m, rest) = (Wide::from(m), Wide::from(1.0) - Wide::from(m));
+    // E' = (E - K)/(2m), DLMF 19.4.2
+    let slope = (e - k) / (Wide::from(2.0) * m);
     // m(1-m) E^(j+2) = (j^2 - 1/4) E^(j) - (j + 1 - (2j+1) m) E^(j+1)
-    recur(n, e, slope, |j, low, high| ((j * j - 0.25) * low - (j + 1.0 - (2.0 * j + 1.0) * m) * high) / (m * (1.0 - m)))
+    recur(n, e, slope, |j, low, high| {
+        let outer = Wide::from(j * j - 0.25) * low;
+        let inner = (Wide::from(j + 1.0) - Wide::from(2.0 * j + 1.0) * m) * high;
+        (outer - inner) / m / rest
+    })
 }
 
-/// Below this |m| the power series converges fast and the recurrence loses digits.
-const SERIES_RADIUS: f64 = 0.4;
+/// Where the series is used. Above 1/2 the recurrence cancels little; below, each order costs a factor (1-m)/|m|, which
+/// 31 digits bear for 20 orders from m = -1 down and for 255 orders from m = -9 down.
+fn in_the_middle(n: u8, m: f64) -> bool {
+    let lowest = if n <= 20 { -1.0 } else { -9.0 };
+    (lowest..=0.5).contains(&m)
+}
 
-/// The arithmetic-geometric mean of 1 and sqrt(1-m), and sum over n >= 0 of 2^(n-1) c_n^2.
-fn mean(m: f64) -> (f64, f64) {
-    let (mut a, mut g) = (1.0, (1.0 - m).sqrt());
-    let (mut sum, mut weight) = (0.5 * m, 0.5);
-    // c_n = (a - g)/2 squares in each step: 40 steps reach any finite m, most need 5.
-    for _ in 0..40 {
-        let c = 0.5 * (a - g);
-        let next = 0.5 * (a + g);
-        g = (a * g).sqrt();
+/// K and E.
+fn both(m: f64) -> (Wide, Wide) {
+    let half = Wide::from(0.5);
+    let (mut a, mut g) = (Wide::from(1.0), (Wide::from(1.0) - Wide::from(m)).square_root());
+    // sum over n >= 0 of 2^(n-1) c_n^2 with c_0^2 = m
+    let (mut sum, mut weight) = (half * Wide::from(m), 0.5);
+    // c_n = (a - g)/2 is squared in each step: 20 steps reach any finite m, most need 6.
+    for _ in 0..20 {
+        let c = half * (a - g);
+        let next = half * (a + g);
+        g = (a * g).square_root();
         a = next;
         weight *= 2.0;
-        sum += weight * c * c;
-        if c.abs() <= 1e-9 * a {
+        sum = sum + Wide::from(weight) * c * c;
+        if c.to_f64().abs() <= 1e-16 * a.to_f64() {
             break;
         }
     }
-    (a, sum)
+    let k = Wide::HALF_PI / a;
+    (k, k * (Wide::from(1.0) - sum))
 }
 
-/// The n-th derivative of (pi/2) sum over j of ((1/2)_j/j!)^2 s_j m^j with s_j = 1 for K and 1/(1-2j) for E.
-fn series(n: u8, m: f64, kind: f64) -> f64 {
+/// The n-th derivative, n > 0, of (pi/2) 2F1(s, 1/2; 1; m), which is K for s = 1/2 and E for s = -1/2:
+///
+///   (pi/2) (s)_n (1/2)_n/n! 2F1(s + n, 1/2 + n; 1 + n; m)      (DLMF 19.5.1, 19.5.2, 15.5.2),
+///
+/// for negative m with 2F1(a, b; c; m) = (1-m)^-a 2F1(a, c-b; c; m/(m-1)) (DLMF 15.8.1), so that no terms cancel.
+fn series(n: u8, m: f64, s: f64) -> f64 {
     let order = f64::from(n);
-    let mut coefficient = 1.0;
-    let mut total = 0.0;
-    let mut power = 1.0;
-    for j in 0..400 {
-        let index = f64::from(j);
-        if j >= u32::from(n) {
-            let falling: f64 = (0..u32::from(n)).map(|i| index - f64::from(i)).product();
-            let sign = if kind > 0.0 { 1.0 } else { 1.0 / (1.0 - 2.0 * index) };
-            let term = coefficient * coefficient * sign * falling * power;
-            total += term;
-            power *= m;
-            if index > 2.0 * order + 4.0 && term.abs() <= 1e-19 * total.abs() {
-                break;
-            }
+    let (a, b, c) = (s + order, 0.5 + order, 1.0 + order);
+    let rest = Wide::from(1.0) - Wide::from(m);
+    let mut factor = Wide::HALF_PI;
+    for i in (0..n).map(f64::from) {
+        factor = factor * Wide::from((s + i) * (0.5 + i)) / Wide::from(1.0 + i);
+        if m < 0.0 {
+            factor = factor / rest;
         }
-        coefficient *= (index + 0.5) / (index + 1.0);
     }
-    std::f64::consts::FRAC_PI_2 * total
+    let sum = if m < 0.0 {
+        // (1-m)^-a = (1-m)^-n (1-m)^-s
+        let root = rest.square_root();
+        factor = if s > 0.0 { factor / root } else { factor * root };
+        hypergeometric(a, c - b, c, -Wide::from(m) / rest)
+    } else {
+        hypergeometric(a, b, c, Wide::from(m))
+    };
+    (factor * sum).to_f64()
 }
 
-fn recur(n: u8, value: f64, slope: f64, next: impl Fn(f64, f64, f64) -> f64) -> f64 {
-    let (mut low, mut high) = (value, slope);
-    for j in 0..n.saturating_sub(1) {
-        (low, high) = (high, next(f64::from(j), low, high));
+/// 2F1(a, b; c; z) for positive arguments and z at most 0.9.
+fn hypergeometric(a: f64, b: f64, c: f64, z: Wide) -> Wide {
+    let mut term = Wide::from(1.0);
+    let mut total = term;
+    for k in (0..5000).map(f64::from) {
+        term = term * Wide::from((a + k) * (b + k)) / Wide::from((c + k) * (1.0 + k)) * z;
+        total = total + term;
+        // The terms may grow at first; once their ratio is below 0.95 the rest is at most 20 terms of this size.
+        let ratio = (a + k) * (b + k) / ((c + k) * (1.0 + k)) * z.to_f64();
+        if ratio < 0.95 && term.to_f64() <= 1e-20 * total.to_f64() {
+            break;
+        }
     }
-    high
+    total
+}
+
+fn recur(n: u8, value: Wide, slope: Wide, next: impl Fn(f64, Wide, Wide) -> Wide) -> f64 {
+    let (mut low, mut high) = (value, slope);
+    for j in (0..n - 1).map(f64::from) {
+        (low, high) = (high, next(j, low, high));
+    }
+    high.to_f64()
 }

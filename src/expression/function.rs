@@ -5,6 +5,7 @@
 //! half a unit in the last place and are the same bits on every machine; the standard library is never used, because
 //! its `acosh` and `atanh` lose up to 10^5 units in the last place.
 
+use super::bessel;
 use super::elliptic;
 use super::number::Exact;
 use super::polygamma::polygamma;
@@ -148,12 +149,8 @@ impl Function {
             Function::Gamma => gamma(x),
             Function::LogGamma => pxfm::f_lgamma(x),
             Function::Polygamma(n) => polygamma(n, x),
-            Function::BesselJ(0) => pxfm::f_j0(x),
-            Function::BesselJ(1) => pxfm::f_j1(x),
-            Function::BesselJ(n) => libm::jn(i32::from(n), x),
-            Function::BesselY(0) => pxfm::f_y0(x),
-            Function::BesselY(1) => pxfm::f_y1(x),
-            Function::BesselY(n) => libm::yn(i32::from(n), x),
+            Function::BesselJ(n) => bessel::first_kind(n, x),
+            Function::BesselY(n) => bessel::second_kind(n, x),
             Function::EllipticK(n) => elliptic::first_kind(n, x),
             Function::EllipticE(n) => elliptic::second_kind(n, x),
         }

@@ -4,6 +4,7 @@
 //! index than the node that uses it. Index order is therefore an evaluation order, and every pass over a formula
 //! (evaluate, differentiate, substitute, print) is a sweep over indices, never a recursion on depth.
 
+mod bessel;
 mod derivative;
 mod elliptic;
 mod evaluate;
@@ -12,6 +13,7 @@ mod graph;
 mod number;
 mod polygamma;
 mod print;
+mod wide;
 
 pub use derivative::{differentiate, differentiate_all};
 pub use evaluate::{Undefined, evaluate, evaluate_one, first_undefined, power};
