@@ -2,10 +2,14 @@
 
 mod diagnostic;
 mod model;
-mod syntax;
+mod parse;
+mod suggest;
+pub mod syntax;
 mod unit;
 
 pub use diagnostic::{Diagnostic, Severity, SheetErrors, Source};
 pub use model::*;
+pub use parse::{MAXIMUM_BYTES, parse, parse_value};
+pub use suggest::{is_reserved, nearest, other_name};
 pub use syntax::Span;
 pub use unit::{Dimension, Unit};

@@ -34,6 +34,8 @@ pub struct Sheet {
     pub expressions: Vec<Syntax>,
     /// The statements that could be read, in the order of the text.
     pub statements: Vec<Statement>,
+    /// Names whose definitions could not be read, so that their uses need not be reported as unknown.
+    pub unread: Vec<Name>,
 }
 
 impl Sheet {
