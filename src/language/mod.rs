@@ -6,6 +6,7 @@ mod parse;
 mod suggest;
 pub mod syntax;
 mod unit;
+mod unit_table;
 
 pub use diagnostic::{Diagnostic, Severity, SheetErrors, Source};
 pub use model::*;
