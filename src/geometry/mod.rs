@@ -1,5 +1,6 @@
 //! Map phi(u, v) to tangents, normal, area element, fundamental forms, curvatures, and to the densities of integrals.
 
+mod content;
 mod density;
 mod surface;
 

@@ -11,8 +11,9 @@
 //! parallel. For the same reason EG - F^2 in the curvatures is |N|^2, and the second form is kept along N (not n), which
 //! leaves one division for each curvature.
 
-use crate::calculus::{Vector, cross, differentiate_vector, divide, dot, negate, norm, squared_norm};
-use crate::expression::{ExpressionId, Graph, SymbolId};
+use super::content::take_content;
+use crate::calculus::{Vector, cross, differentiate_vector, divide, dot, negate, norm, scale, squared_norm};
+use crate::expression::{ExpressionId, Function, Graph, SymbolId};
 use crate::language::Patch;
 
 /// Position, tangents, normal and area element of a patch.
@@ -31,6 +32,8 @@ pub struct Surface {
     pub normal: Vector,
     /// |N|, the area element per du dv.
     pub element: ExpressionId,
+    /// |N|^2 = N.N
+    pub element_squared: ExpressionId,
 }
 
 /// Coefficients of the first fundamental form.
@@ -79,12 +82,21 @@ impl Surface {
     /// The surface of the map `position` of `variables`; `reversed` turns N around.
     pub fn from_map(graph: &mut Graph, position: Vector, variables: [SymbolId; 2], reversed: bool) -> Self {
         let tangents = variables.map(|variable| differentiate_vector(graph, &position, variable));
-        let mut normal = cross(graph, &tangents[0], &tangents[1]);
+        // N = g a with the shared factors of the tangents, and of their cross product, in g; |N| = |g| |a|.
+        let [(first, u), (second, v)] = [0, 1].map(|i| take_content(graph, &tangents[i]));
+        let rest = cross(graph, &u, &v);
+        let (third, mut direction) = take_content(graph, &rest);
         if reversed {
-            normal = negate(graph, &normal);
+            direction = negate(graph, &direction);
         }
-        let element = norm(graph, &normal);
-        Self { position, variables, tangents, normal, element }
+        let pair = graph.multiply(first, second);
+        let content = graph.multiply(pair, third);
+        let normal = scale(graph, content, &direction);
+        let (size, length) = (graph.call(Function::Abs, content), norm(graph, &direction));
+        let element = graph.multiply(size, length);
+        let (square, length) = (graph.square(content), squared_norm(graph, &direction));
+        let element_squared = graph.multiply(square, length);
+        Self { position, variables, tangents, normal, element, element_squared }
     }
 
     /// n = N/|N|; undefined where the map is not regular.
@@ -136,8 +148,7 @@ impl Surface {
         let twice = graph.multiply(two, fm);
         let mean = graph.subtract(outer, twice);
 
-        let element_squared = squared_norm(graph, &self.normal);
-        Curvature { gauss, mean, element: self.element, element_squared }
+        Curvature { gauss, mean, element: self.element, element_squared: self.element_squared }
     }
 
     /// K, the product of the principal curvatures.
