@@ -315,3 +315,22 @@ fn shared_factors_stand_before_the_root() {
     let inside = &shown[shown.find("sqrt(").expect("a root")..];
     assert!(!inside.contains('R'), "{shown}");
 }
+
+/// H keeps its sign where the shared factor g of N = g a is negative: a sphere with colatitude from -pi to 0 has its
+/// normal inward, so H = 1/R.
+#[test]
+fn a_negative_shared_factor_turns_the_mean_curvature() {
+    let mut case = case("sphere-colatitude");
+    let symbols = surface_symbols(&mut case.formulas);
+    let [h, k] = ["H", "K"].map(|name| case.formulas.parse(name));
+    let graph = &mut case.formulas.graph;
+    let mean = case.surface.mean_curvature(graph);
+    let [mean_density, gauss_density] = [h, k].map(|symbol| density(graph, &case.surface, &symbols, symbol));
+    let [su, sv, sr] = ["u", "v", "R"].map(|name| case.formulas.symbol(name));
+    let point = [(su, -0.8), (sv, 1.0), (sr, 4.0)];
+    let values = evaluate(&case.formulas.graph, &[mean, mean_density, gauss_density], |s| lookup(&point, s));
+    // dA = R^2 |sin(u)|
+    for (value, expected) in values.iter().zip([0.25, 4.0 * 0.8_f64.sin(), 0.8_f64.sin()]) {
+        assert!((value - expected).abs() < 1e-14, "{value} instead of {expected}");
+    }
+}

@@ -8,8 +8,12 @@
 //!
 //! With the outward normal a sphere of radius r has H = -1/r. The area element is the norm of the cross product, never
 //! sqrt(EG - F^2): the two are equal (Lagrange's identity), but the difference cancels where the tangents are nearly
-//! parallel. For the same reason EG - F^2 in the curvatures is |N|^2, and the second form is kept along N (not n), which
-//! leaves one division for each curvature.
+//! parallel. For the same reason EG - F^2 in the curvatures is |N|^2. With N = g a, g the factors that the components
+//! share, and l = phi_uu.a, m = phi_uv.a, n2 = phi_vv.a (no unit vector anywhere)
+//!
+//!   K = (l n2 - m^2)/(g^2 |a|^4),   H = (E n2 - 2Fm + G l)/(2 g |g| |a|^3),
+//!
+//! which leaves one division for each curvature and no power of g to cancel.
 
 use super::content::take_content;
 use crate::calculus::{Vector, cross, differentiate_vector, divide, dot, negate, norm, scale, squared_norm};
@@ -32,8 +36,10 @@ pub struct Surface {
     pub normal: Vector,
     /// |N|, the area element per du dv.
     pub element: ExpressionId,
-    /// |N|^2 = N.N
-    pub element_squared: ExpressionId,
+    /// g: the factors that the components of N share, as far as they are written as factors.
+    pub content: ExpressionId,
+    /// a: N without the shared factors, N = g a.
+    pub direction: Vector,
 }
 
 /// Coefficients of the first fundamental form.
@@ -47,7 +53,7 @@ pub struct FirstForm {
     pub g: ExpressionId,
 }
 
-/// Coefficients of the second fundamental form, with respect to n or (where said) to N.
+/// Coefficients of the second fundamental form, with the unit normal.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub struct SecondForm {
     /// L = phi_uu.n
@@ -58,19 +64,23 @@ pub struct SecondForm {
     pub n: ExpressionId,
 }
 
-/// Curvatures as fractions over powers of |N|, so that a density can cancel one power.
-///
-/// K = gauss/|N|^4, H = mean/(2 |N|^3).
+/// Curvatures as fractions, so that a density can cancel a power of |N|, see the top of the file.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub struct Curvature {
-    /// (phi_uu.N)(phi_vv.N) - (phi_uv.N)^2
-    pub gauss: ExpressionId,
-    /// E phi_vv.N - 2 F phi_uv.N + G phi_uu.N
-    pub mean: ExpressionId,
-    /// |N|
-    pub element: ExpressionId,
-    /// |N|^2 = N.N
-    pub element_squared: ExpressionId,
+    /// l n2 - m^2
+    gauss: ExpressionId,
+    /// E n2 - 2Fm + G l
+    mean: ExpressionId,
+    /// g
+    content: ExpressionId,
+    /// |g|
+    content_size: ExpressionId,
+    /// |a|
+    length: ExpressionId,
+    /// |a|^2 = a.a
+    length_squared: ExpressionId,
+    /// |N| = |g| |a|
+    element: ExpressionId,
 }
 
 impl Surface {
@@ -94,9 +104,7 @@ impl Surface {
         let normal = scale(graph, content, &direction);
         let (size, length) = (graph.call(Function::Abs, content), norm(graph, &direction));
         let element = graph.multiply(size, length);
-        let (square, length) = (graph.square(content), squared_norm(graph, &direction));
-        let element_squared = graph.multiply(square, length);
-        Self { position, variables, tangents, normal, element, element_squared }
+        Self { position, variables, tangents, normal, element, content, direction }
     }
 
     /// n = N/|N|; undefined where the map is not regular.
@@ -120,35 +128,39 @@ impl Surface {
         ]
     }
 
-    /// L, M, N2 with the unit normal.
+    /// L, M, N2; undefined where the map is not regular.
     pub fn second_form(&self, graph: &mut Graph) -> SecondForm {
-        let along = self.second_form_along_normal(graph);
-        let [l, m, n] = [along.l, along.m, along.n].map(|coefficient| graph.divide(coefficient, self.element));
+        let [l, m, n] = self.second_derivatives(graph).map(|second| {
+            let along = dot(graph, &second, &self.normal);
+            graph.divide(along, self.element)
+        });
         SecondForm { l, m, n }
     }
 
-    /// phi_uu.N, phi_uv.N, phi_vv.N with the normal as it is, so |N| times L, M, N2.
-    pub fn second_form_along_normal(&self, graph: &mut Graph) -> SecondForm {
-        let [l, m, n] = self.second_derivatives(graph).map(|second| dot(graph, &second, &self.normal));
-        SecondForm { l, m, n }
-    }
-
-    /// The numerators of both curvatures and the |N| they are divided by.
+    /// What both curvatures are made of.
     pub fn curvature(&self, graph: &mut Graph) -> Curvature {
-        let first = self.first_form(graph);
-        let second = self.second_form_along_normal(graph);
-        let product = graph.multiply(second.l, second.n);
-        let mixed = graph.square(second.m);
+        let FirstForm { e, f, g } = self.first_form(graph);
+        let [l, m, n] = self.second_derivatives(graph).map(|second| dot(graph, &second, &self.direction));
+        let product = graph.multiply(l, n);
+        let mixed = graph.square(m);
         let gauss = graph.subtract(product, mixed);
 
-        let (en, gl) = (graph.multiply(first.e, second.n), graph.multiply(first.g, second.l));
+        let (en, gl) = (graph.multiply(e, n), graph.multiply(g, l));
         let outer = graph.add(en, gl);
-        let fm = graph.multiply(first.f, second.m);
+        let fm = graph.multiply(f, m);
         let two = graph.integer(2);
         let twice = graph.multiply(two, fm);
         let mean = graph.subtract(outer, twice);
 
-        Curvature { gauss, mean, element: self.element, element_squared: self.element_squared }
+        Curvature {
+            gauss,
+            mean,
+            content: self.content,
+            content_size: graph.call(Function::Abs, self.content),
+            length: norm(graph, &self.direction),
+            length_squared: squared_norm(graph, &self.direction),
+            element: self.element,
+        }
     }
 
     /// K, the product of the principal curvatures.
@@ -164,41 +176,44 @@ impl Surface {
 }
 
 impl Curvature {
-    /// K = gauss/|N|^4
+    /// K = (l n2 - m^2)/(g |a|^2)^2
     pub fn gauss_curvature(&self, graph: &mut Graph) -> ExpressionId {
-        let fourth = graph.square(self.element_squared);
-        graph.divide(self.gauss, fourth)
+        let base = graph.multiply(self.content, self.length_squared);
+        let divisor = graph.square(base);
+        graph.divide(self.gauss, divisor)
     }
 
-    /// H = mean/(2 |N|^3)
+    /// H = (E n2 - 2Fm + G l)/(2 g |a|^2 |N|)
     pub fn mean_curvature(&self, graph: &mut Graph) -> ExpressionId {
-        let cube = self.element_cubed(graph);
-        let two = graph.integer(2);
-        let divisor = graph.multiply(two, cube);
+        let base = self.mean_divisor(graph);
+        let divisor = graph.multiply(base, self.element);
         graph.divide(self.mean, divisor)
     }
 
-    /// K |N|, the density of the total curvature: gauss/|N|^3
+    /// K |N|, the density of the total curvature: (l n2 - m^2)/(|g| |a|^3)
     pub fn gauss_density(&self, graph: &mut Graph) -> ExpressionId {
-        let cube = self.element_cubed(graph);
-        graph.divide(self.gauss, cube)
+        let cube = graph.multiply(self.length_squared, self.length);
+        let divisor = graph.multiply(self.content_size, cube);
+        graph.divide(self.gauss, divisor)
     }
 
-    /// H |N|: mean/(2 |N|^2)
+    /// H |N|: (E n2 - 2Fm + G l)/(2 g |a|^2)
     pub fn mean_density(&self, graph: &mut Graph) -> ExpressionId {
-        let two = graph.integer(2);
-        let divisor = graph.multiply(two, self.element_squared);
+        let divisor = self.mean_divisor(graph);
         graph.divide(self.mean, divisor)
     }
 
-    /// H^2 |N|, the density of the bending energy: (mean/(2 |N|^2))^2/|N|
+    /// H^2 |N|, the density of the bending energy: (H |N|)^2/|N|
     pub fn squared_mean_density(&self, graph: &mut Graph) -> ExpressionId {
         let density = self.mean_density(graph);
         let square = graph.square(density);
         graph.divide(square, self.element)
     }
 
-    fn element_cubed(&self, graph: &mut Graph) -> ExpressionId {
-        graph.multiply(self.element_squared, self.element)
+    /// 2 g |a|^2
+    fn mean_divisor(&self, graph: &mut Graph) -> ExpressionId {
+        let two = graph.integer(2);
+        let twice = graph.multiply(two, self.content);
+        graph.multiply(twice, self.length_squared)
     }
 }
