@@ -189,7 +189,7 @@ fn step(
 }
 
 proptest! {
-    #![proptest_config(ProptestConfig::with_cases(3000))]
+    #![proptest_config(ProptestConfig::with_cases(10_000))]
 
     /// Formulas with shared parts, their last node differentiated by x, by y, and by both.
     #[test]

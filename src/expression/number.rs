@@ -3,7 +3,7 @@
 //! Numbers of a sheet stay exact until evaluation: `0.1` is one tenth. An operation whose result would need more than
 //! [`MAXIMUM_BITS`] bits is not carried out (it returns `None`), so that `9^9^9` cannot exhaust memory.
 
-use dashu_base::{Abs, BitTest, Sign, Signed, UnsignedAbs};
+use dashu_base::{Abs, BitTest, Sign, UnsignedAbs};
 use dashu_int::{IBig, UBig};
 use dashu_ratio::RBig;
 use std::cmp::Ordering;

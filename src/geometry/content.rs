@@ -6,7 +6,7 @@
 //! finding hidden factors is the simplifier's job.
 
 use crate::calculus::Vector;
-use crate::expression::{ExpressionId, Graph, Node};
+use crate::expression::{BinaryFunction, ExpressionId, Function, Graph, Node};
 use std::collections::BTreeMap;
 
 /// The most factors a component is taken apart into; what is left is one factor.
@@ -31,6 +31,31 @@ pub(super) fn take_content(graph: &mut Graph, vector: &Vector) -> (ExpressionId,
     });
     let content = Product { negative: false, powers: common };
     (content.build(graph), reduced)
+}
+
+/// The product of `factors` with equal factors collected, and its absolute value.
+///
+/// Factors that cannot be negative (even powers, roots, exponentials, `cosh`) stand outside the bars.
+pub(super) fn collect(graph: &mut Graph, factors: [ExpressionId; 3]) -> (ExpressionId, ExpressionId) {
+    let partial = graph.multiply(factors[0], factors[1]);
+    let all = graph.multiply(partial, factors[2]);
+    let product = Product::of(graph, all);
+    let value = product.build(graph);
+    let (outside, inside): (Powers, Powers) =
+        product.powers.into_iter().partition(|&(base, exponent)| exponent % 2 == 0 || never_negative(graph, base));
+    let [outside, inside] = [outside, inside].map(|powers| Product { negative: false, powers }.build(graph));
+    let bars = graph.call(Function::Abs, inside);
+    (value, graph.multiply(outside, bars))
+}
+
+fn never_negative(graph: &Graph, formula: ExpressionId) -> bool {
+    match graph.node(formula) {
+        Node::Call(Function::Sqrt | Function::Exp | Function::Cosh | Function::Abs, _)
+        | Node::Call2(BinaryFunction::Hypot, ..)
+        | Node::Pi => true,
+        Node::Number(number) => !graph.number_value(number).is_negative(),
+        _ => false,
+    }
 }
 
 /// Factors with their exponents.
@@ -139,6 +164,25 @@ mod tests {
         let vector = [sum, product, a];
         let (content, reduced) = take_content(&mut g, &vector);
         assert_eq!((print(&g, content).as_str(), reduced), ("1", vector));
+    }
+
+    #[test]
+    fn equal_factors_are_collected_and_even_powers_leave_the_bars() {
+        let mut g = Graph::new();
+        let [r, u] = ["r", "u"].map(|name| {
+            let symbol = g.new_symbol(name);
+            g.symbol(symbol)
+        });
+        let sine = g.call(Function::Sin, u);
+        let wave = g.multiply(r, sine);
+        let root = g.square_root(u);
+        let (value, size) = collect(&mut g, [r, wave, root]);
+        assert_eq!(print(&g, value), "r^2*sin(u)*sqrt(u)");
+        assert_eq!(print(&g, size), "r^2*sqrt(u)*abs(sin(u))");
+        let minus = g.negate(r);
+        let one = g.integer(1);
+        let (value, size) = collect(&mut g, [minus, one, one]);
+        assert_eq!([print(&g, value), print(&g, size)], ["-r", "abs(r)"]);
     }
 
     #[test]

@@ -15,9 +15,9 @@
 //!
 //! which leaves one division for each curvature and no power of g to cancel.
 
-use super::content::take_content;
+use super::content::{collect, take_content};
 use crate::calculus::{Vector, cross, differentiate_vector, divide, dot, negate, norm, scale, squared_norm};
-use crate::expression::{ExpressionId, Function, Graph, SymbolId};
+use crate::expression::{ExpressionId, Graph, SymbolId};
 use crate::language::Patch;
 
 /// Position, tangents, normal and area element of a patch.
@@ -38,6 +38,8 @@ pub struct Surface {
     pub element: ExpressionId,
     /// g: the factors that the components of N share, as far as they are written as factors.
     pub content: ExpressionId,
+    /// |g|
+    pub content_size: ExpressionId,
     /// a: N without the shared factors, N = g a.
     pub direction: Vector,
 }
@@ -99,12 +101,11 @@ impl Surface {
         if reversed {
             direction = negate(graph, &direction);
         }
-        let pair = graph.multiply(first, second);
-        let content = graph.multiply(pair, third);
+        let (content, content_size) = collect(graph, [first, second, third]);
         let normal = scale(graph, content, &direction);
-        let (size, length) = (graph.call(Function::Abs, content), norm(graph, &direction));
-        let element = graph.multiply(size, length);
-        Self { position, variables, tangents, normal, element, content, direction }
+        let length = norm(graph, &direction);
+        let element = graph.multiply(content_size, length);
+        Self { position, variables, tangents, normal, element, content, content_size, direction }
     }
 
     /// n = N/|N|; undefined where the map is not regular.
@@ -156,7 +157,7 @@ impl Surface {
             gauss,
             mean,
             content: self.content,
-            content_size: graph.call(Function::Abs, self.content),
+            content_size: self.content_size,
             length: norm(graph, &self.direction),
             length_squared: squared_norm(graph, &self.direction),
             element: self.element,
