@@ -8,7 +8,7 @@ pub mod syntax;
 mod unit;
 mod unit_table;
 
-pub use diagnostic::{Diagnostic, Severity, SheetErrors, Source};
+pub use diagnostic::{Diagnostic, Part, Severity, SheetErrors, Source};
 pub use model::*;
 pub use parse::{MAXIMUM_BYTES, parse, parse_value};
 pub use suggest::{is_reserved, nearest, other_name};

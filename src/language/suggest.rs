@@ -147,16 +147,17 @@ pub fn nearest<'a>(name: &str, candidates: impl IntoIterator<Item = &'a str>) ->
         return None;
     }
     let allowed = (letters.len().max(2) + 1) / 3;
-    let mut best: Option<(usize, &str)> = None;
+    let mut best: Option<((usize, usize), &str)> = None;
     for candidate in candidates {
         if candidate == name || candidate.len() > 4 * LONGEST_NAME {
             continue;
         }
         let other: Vec<char> = candidate.chars().collect();
         let same_letters = candidate.to_lowercase() == name.to_lowercase();
-        let distance = if same_letters { 0 } else { edits(&letters, &other) };
-        if distance <= allowed && best.is_none_or(|(least, _)| distance < least) {
-            best = Some((distance, candidate));
+        let edits = edits(&letters, &other);
+        let rank = if same_letters { (0, edits) } else { (edits, 0) };
+        if rank.0 <= allowed && best.is_none_or(|(least, _)| rank < least) {
+            best = Some((rank, candidate));
         }
     }
     best.map(|(_, candidate)| candidate)
@@ -209,6 +210,7 @@ mod tests {
         assert_eq!(nearest("radus", names), Some("radius"));
         assert_eq!(nearest("haed", names), Some("head"));
         assert_eq!(nearest("Height", names), Some("height"));
+        assert_eq!(nearest("Mpa", ["mPa", "MPa"]), Some("MPa"));
         assert_eq!(nearest("knuckle", names), None);
         assert_eq!(nearest(&"a".repeat(100_000), names), None);
     }

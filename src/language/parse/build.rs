@@ -4,7 +4,7 @@
 //! Grouping uses two stacks (operands, waiting operators), so a sum of 100,000 terms needs no recursion; brackets do
 //! recurse, at most `MAXIMUM_NESTING` deep. Operands are stored before what contains them.
 
-use super::Rule;
+use super::{Rule, whole_characters};
 use crate::expression::Exact;
 use crate::language::diagnostic::Diagnostic;
 use crate::language::suggest::{canonical_name, is_reserved};
@@ -19,6 +19,8 @@ pub(super) struct Builder<'a> {
     pub sheet: &'a mut Sheet,
     pub diagnostics: &'a mut Vec<Diagnostic>,
     pub offset: usize,
+    /// The sheet as it was written.
+    pub source: &'a str,
 }
 
 /// An operand with the text it takes up, brackets included: `(a + b)`.
@@ -88,11 +90,11 @@ impl Builder<'_> {
             let word_span = part.clone().into_inner().next().map(|word| self.span(&word));
             let clause = match part.as_rule() {
                 Rule::name => {
-                    name = Some(self.new_name(&part, "is defined"));
+                    name = Some(self.new_name(&part, "defined"));
                     continue;
                 }
                 Rule::arguments => {
-                    arguments = Some(part.into_inner().map(|pair| self.new_name(&pair, "is an argument")).collect());
+                    arguments = Some(part.into_inner().map(|pair| self.new_name(&pair, "an argument")).collect());
                     continue;
                 }
                 Rule::expression => {
@@ -120,7 +122,7 @@ impl Builder<'_> {
         ranges
             .map(|pair| {
                 let mut parts = pair.into_inner();
-                let variable = self.new_name(&parts.next()?, "is a variable");
+                let variable = self.new_name(&parts.next()?, "a variable");
                 Some(IntervalSyntax { variable, range: self.interval(parts.last()?)? })
             })
             .collect()
@@ -206,16 +208,7 @@ impl Builder<'_> {
         let span = self.span(&pair);
         match pair.as_rule() {
             Rule::number => self.number(pair),
-            Rule::name => {
-                let name = canonical_name(pair.as_str());
-                if let Some(form) = needs_arguments(&name) {
-                    let message = format!("`{name}` stands without its arguments");
-                    self.diagnostics.push(
-                        Diagnostic::error("missing-arguments", span, message).with_hint(format!("write `{form}`")),
-                    );
-                }
-                Some(self.add(span, SyntaxKind::Name(name)))
-            }
+            Rule::named => self.named(pair),
             Rule::group => {
                 let mut parts = self.expressions(pair)?;
                 match parts.as_slice() {
@@ -226,25 +219,36 @@ impl Builder<'_> {
                     }
                 }
             }
-            Rule::call => {
-                let callee = self.name(&pair.clone().into_inner().next()?);
-                if matches!(callee.text.as_str(), "pi" | "inf") {
-                    let message = format!("`{}` is a number, not a function", callee.text);
-                    let hint = format!("a product needs its sign: `{}*(...)`", callee.text);
-                    self.diagnostics.push(Diagnostic::error("implicit-product", callee.span, message).with_hint(hint));
-                }
-                let arguments = self.expressions(pair)?.iter().map(|part| part.id).collect();
-                Some(self.add(span, SyntaxKind::Call { callee, arguments }))
-            }
             Rule::sum => {
                 let index = pair.clone().into_inner().find(|inner| inner.as_rule() == Rule::name)?;
-                let index = self.new_name(&index, "is an index");
+                let index = self.new_name(&index, "an index");
                 let parts = self.expressions(pair)?;
                 let [from, to, term] = parts.as_slice() else { return None };
                 Some(self.add(span, SyntaxKind::Sum { index, from: from.id, to: to.id, term: term.id }))
             }
             _ => None,
         }
+    }
+
+    /// A name, or a call if arguments follow it.
+    fn named(&mut self, pair: Pair<'_, Rule>) -> Option<Operand> {
+        let span = self.span(&pair);
+        let name = self.name(&pair.clone().into_inner().next()?);
+        let arguments: Vec<SyntaxId> = self.expressions(pair)?.iter().map(|part| part.id).collect();
+        if arguments.is_empty() {
+            if let Some(form) = needs_arguments(&name.text) {
+                let message = format!("`{}` stands without its arguments", name.text);
+                let error = Diagnostic::error("missing-arguments", name.span, message);
+                self.diagnostics.push(error.with_hint(format!("write `{form}`")));
+            }
+            return Some(self.add(name.span, SyntaxKind::Name(name.text)));
+        }
+        if matches!(name.text.as_str(), "pi" | "inf") {
+            let message = format!("`{}` is a number, not a function", name.text);
+            let hint = format!("a product needs its sign: `{}*(...)`", name.text);
+            self.diagnostics.push(Diagnostic::error("implicit-product", name.span, message).with_hint(hint));
+        }
+        Some(self.add(span, SyntaxKind::Call { callee: name, arguments }))
     }
 
     fn expressions(&mut self, pair: Pair<'_, Rule>) -> Option<Vec<Operand>> {
@@ -268,7 +272,7 @@ impl Builder<'_> {
             let place = self.span(&decimal);
             self.diagnostics.push(
                 Diagnostic::error("number-out-of-range", place, "this number is too large, too small or too long")
-                    .with_hint("magnitudes from 1e-1200 to 1e1200 and up to 1000 digits can be read"),
+                    .with_hint("write a number between 1e-1000 and 1e1000, with fewer digits"),
             );
             return None;
         };
@@ -322,7 +326,7 @@ impl Builder<'_> {
     fn new_name(&mut self, pair: &Pair<'_, Rule>, role: &str) -> Name {
         let name = self.name(pair);
         if is_reserved(&name.text) {
-            let message = format!("`{}` has a meaning in every sheet and cannot be what {role} here", name.text);
+            let message = format!("`{}` has a meaning in every sheet and cannot be {role}", name.text);
             let hint = format!("choose another name, such as `{}_1`", name.text);
             self.diagnostics.push(Diagnostic::error("reserved-name", name.span, message).with_hint(hint));
         }
@@ -336,7 +340,7 @@ impl Builder<'_> {
     fn span(&self, pair: &Pair<'_, Rule>) -> Span {
         let span = pair.as_span();
         let end = span.start() + pair.as_str().trim_end().len();
-        Span { start: self.offset + span.start(), end: self.offset + end }
+        whole_characters(self.source, Span { start: self.offset + span.start(), end: self.offset + end })
     }
 
     fn add(&mut self, span: Span, kind: SyntaxKind) -> Operand {

@@ -7,7 +7,9 @@
 //!    diagnostic. An error costs one statement.
 
 mod build;
+mod context;
 mod explain;
+mod explain_operands;
 mod spelling;
 mod statements;
 #[cfg(test)]
@@ -68,7 +70,9 @@ pub fn parse_value(source: &Source) -> (Sheet, Option<SyntaxId>, Vec<Diagnostic>
 }
 
 /// A text on its way to a tree.
-struct Reading {
+struct Reading<'a> {
+    /// The text as it was written.
+    source: &'a str,
     /// The text with wrong spellings replaced by right ones of the same length.
     text: String,
     tokens: Vec<Token>,
@@ -78,8 +82,8 @@ struct Reading {
     diagnostics: Vec<Diagnostic>,
 }
 
-impl Reading {
-    fn start(source: &Source) -> Result<Self, Diagnostic> {
+impl<'a> Reading<'a> {
+    fn start(source: &'a Source) -> Result<Self, Diagnostic> {
         if source.text.len() > MAXIMUM_BYTES {
             let message = format!("the sheet has {} bytes, at most {MAXIMUM_BYTES} can be read", source.text.len());
             return Err(Diagnostic::error("too-long", Span::default(), message));
@@ -90,10 +94,13 @@ impl Reading {
             let message = format!("the sheet has more than {MAXIMUM_SYMBOLS} numbers, names and signs");
             return Err(Diagnostic::error("too-long", token.span, message));
         }
-        Ok(Self { text, tokens, unreadable, sheet: Sheet::default(), diagnostics })
+        Ok(Self { source: &source.text, text, tokens, unreadable, sheet: Sheet::default(), diagnostics })
     }
 
     fn finish(mut self) -> (Sheet, Vec<Diagnostic>) {
+        for diagnostic in &mut self.diagnostics {
+            diagnostic.span = whole_characters(self.source, diagnostic.span);
+        }
         self.diagnostics.sort_by_key(|diagnostic| diagnostic.span.start);
         (self.sheet, self.diagnostics)
     }
@@ -102,7 +109,7 @@ impl Reading {
         let statement = self.read(Rule::statement, &range, |builder, pair| builder.statement(pair));
         match statement {
             Some(statement) => self.sheet.statements.push(statement),
-            None => self.sheet.unread.extend(defined_name(&self.text, &self.tokens[range])),
+            None => self.sheet.unread.extend(defined_name(self.source, &self.text, &self.tokens[range])),
         }
     }
 
@@ -140,7 +147,12 @@ impl Reading {
         }
         match SheetParser::parse(rule, &self.text[start..end]) {
             Ok(mut pairs) => {
-                let mut builder = Builder { sheet: &mut self.sheet, diagnostics: &mut self.diagnostics, offset: start };
+                let mut builder = Builder {
+                    sheet: &mut self.sheet,
+                    diagnostics: &mut self.diagnostics,
+                    offset: start,
+                    source: self.source,
+                };
                 build(&mut builder, pairs.next()?)
             }
             Err(error) => {
@@ -154,7 +166,12 @@ impl Reading {
 }
 
 /// The name that an unreadable statement was going to define.
-fn defined_name(text: &str, tokens: &[Token]) -> Option<Name> {
+fn defined_name(source: &str, text: &str, tokens: &[Token]) -> Option<Name> {
     let first = tokens.first().filter(|token| token.kind == TokenKind::Name)?;
-    Some(Name { text: canonical_name(first.text(text)), span: first.span })
+    Some(Name { text: canonical_name(first.text(text)), span: whole_characters(source, first.span) })
+}
+
+/// The span with the characters of the source that it only reaches into: `*` in place of `×` is half as long.
+fn whole_characters(source: &str, span: Span) -> Span {
+    Span { start: source.floor_char_boundary(span.start), end: source.ceil_char_boundary(span.end) }
 }

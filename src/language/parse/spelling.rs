@@ -4,8 +4,9 @@
 //! there: places stay what they were, and the rest of the statement is read as if it had been right.
 
 use super::statements::{is_keyword, is_letter};
-use crate::language::diagnostic::Diagnostic;
+use crate::language::diagnostic::{Diagnostic, is_invisible};
 use crate::language::syntax::Span;
+use unicode_width::UnicodeWidthChar;
 
 /// The result of [`respell`].
 pub(super) struct Respelled {
@@ -33,6 +34,8 @@ pub(super) fn respell(text: &str, limit: usize) -> Respelled {
     let mut unreadable = Vec::new();
     let mut diagnostics = Vec::new();
     let mut depth = 0usize;
+    let mut at_line = 0usize;
+    let mut last_report = None;
     let mut at = 0;
     while let Some(c) = text[at..].chars().next() {
         let rest = &text[at..];
@@ -43,7 +46,12 @@ pub(super) fn respell(text: &str, limit: usize) -> Respelled {
             }
             '(' | '[' => depth += 1,
             ')' | ']' => depth = depth.saturating_sub(1),
-            '\n' if opens_line_of_definition(&rest[1..]) => depth = 0,
+            '\n' => {
+                at_line += 1;
+                if opens_line_of_definition(&rest[1..]) {
+                    depth = 0;
+                }
+            }
             _ => {}
         }
         let length = if c.is_whitespace() && !matches!(c, '\n' | '\r') || c == '\u{feff}' {
@@ -62,7 +70,11 @@ pub(super) fn respell(text: &str, limit: usize) -> Respelled {
                 }
                 None => unreadable.push(at),
             }
-            if diagnostics.len() < limit {
+            // One report for all `|` of a line: it takes two of them to be wrong.
+            let report = (at_line, finding.message.clone());
+            let repeated = finding.repair.is_none() && last_report.as_ref() == Some(&report);
+            last_report = Some(report);
+            if diagnostics.len() < limit && !repeated {
                 let span = Span { start: at, end: at + finding.length };
                 let mut diagnostic = Diagnostic::error("spelling", span, finding.message);
                 diagnostic.hint = finding.hint;
@@ -94,13 +106,17 @@ fn opens_line_of_definition(line: &str) -> bool {
 
 /// The wrong spelling at `at`, if there is one.
 fn find(text: &str, at: usize, c: char, depth: usize) -> Option<Finding> {
+    // Most characters; and the tables below hold none of them.
+    if c.is_ascii_alphanumeric() || matches!(c, ' ' | '_' | '(' | ')' | ',' | '\n') {
+        return None;
+    }
     let rest = &text[at..];
     if let Some((written, meant, note)) = REPLACED.iter().find(|(written, ..)| rest.starts_with(written)) {
-        let message = format!("`{written}` is not a sign of a sheet");
+        let message = format!("`{written}` is not used in a sheet");
         return finding(written.len(), message, Some(format!("{note} is written `{meant}`")), Some(meant));
     }
     if let Some((written, hint)) = REFUSED.iter().find(|(written, _)| rest.starts_with(written)) {
-        return finding(written.len(), format!("`{written}` is not a sign of a sheet"), Some((*hint).to_owned()), None);
+        return finding(written.len(), format!("`{written}` is not used in a sheet"), Some((*hint).to_owned()), None);
     }
     match c {
         '=' if rest.starts_with("==") && defines(text, at) => finding(
@@ -137,10 +153,10 @@ fn find(text: &str, at: usize, c: char, depth: usize) -> Option<Finding> {
         _ if is_used(c) => None,
         _ => {
             let length = rest.find(|other| other != c).unwrap_or(rest.len());
-            let message = if c.is_control() || is_invisible(c) {
-                format!("the invisible character U+{:04X}", u32::from(c))
+            let message = if c.width().unwrap_or(0) == 0 || is_invisible(c) {
+                format!("the character U+{:04X}, which takes no room of its own", u32::from(c))
             } else {
-                format!("`{c}` is not a sign of a sheet")
+                format!("`{c}` is not used in a sheet")
             };
             finding(length, message, hint_for(c).map(str::to_owned), None)
         }
@@ -214,7 +230,8 @@ fn hint_for(c: char) -> Option<&'static str> {
         '₀'..='₉' => "write the index after the name: `r_1`",
         '…' => "the range of a sum is `1..8`",
         '$' | '@' | '\\' => "names consist of letters, digits and `_`",
-        c if is_invisible(c) => "delete it; it often comes along with copied text",
+        '\u{300}'..='\u{36f}' => "type the letter and its accent as one character",
+        c if is_invisible(c) || c.is_control() => "delete it; such characters come along with copied text",
         _ => return None,
     })
 }
@@ -222,11 +239,6 @@ fn hint_for(c: char) -> Option<&'static str> {
 /// Whether a sheet uses `c` somewhere; `%` and `°` are units.
 fn is_used(c: char) -> bool {
     is_letter(c) || c.is_ascii_digit() || "+-*/^()[],.=<>%°\r\n".contains(c)
-}
-
-/// Characters that take no room on the screen, or turn its direction around.
-fn is_invisible(c: char) -> bool {
-    matches!(c, '\u{ad}' | '\u{200b}'..='\u{200f}' | '\u{2028}'..='\u{202e}' | '\u{2060}'..='\u{206f}' | '\u{feff}')
 }
 
 /// What a raised character stands for.
@@ -254,7 +266,7 @@ fn superscripts(rest: &str) -> Finding {
     let one = run.chars().count() == 1 && plain != "-";
     Finding {
         length: run.len(),
-        message: format!("`{run}` is not a sign of a sheet"),
+        message: format!("`{run}` is not used in a sheet"),
         hint: Some(format!("a power is written `^{plain}`")),
         repair: run.chars().next().filter(|_| one).and_then(superscript).map(|(_, power)| power),
     }
