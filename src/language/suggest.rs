@@ -67,7 +67,8 @@ pub(super) fn canonical_name(written: &str) -> String {
         .collect()
 }
 
-/// What the language calls a function or constant that goes by another name elsewhere.
+/// What the language calls a function or constant that goes by another name elsewhere; `^` or `^2` where an operator
+/// does the work (`pow`, `sqr`).
 pub fn other_name(name: &str) -> Option<&'static str> {
     let (_, ours) = OTHER_NAMES.iter().find(|(theirs, _)| *theirs == name)?;
     Some(ours)

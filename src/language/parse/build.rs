@@ -4,7 +4,7 @@
 //! Grouping uses two stacks (operands, waiting operators), so a sum of 100,000 terms needs no recursion; brackets do
 //! recurse, at most `MAXIMUM_NESTING` deep. Operands are stored before what contains them.
 
-use super::{Rule, whole_characters};
+use super::{MAXIMUM_ERRORS, Rule, whole_characters};
 use crate::expression::Exact;
 use crate::language::diagnostic::Diagnostic;
 use crate::language::suggest::{canonical_name, is_reserved};
@@ -239,14 +239,14 @@ impl Builder<'_> {
             if let Some(form) = needs_arguments(&name.text) {
                 let message = format!("`{}` stands without its arguments", name.text);
                 let error = Diagnostic::error("missing-arguments", name.span, message);
-                self.diagnostics.push(error.with_hint(format!("write `{form}`")));
+                self.report(error.with_hint(format!("write `{form}`")));
             }
             return Some(self.add(name.span, SyntaxKind::Name(name.text)));
         }
         if matches!(name.text.as_str(), "pi" | "inf") {
             let message = format!("`{}` is a number, not a function", name.text);
             let hint = format!("a product needs its sign: `{}*(...)`", name.text);
-            self.diagnostics.push(Diagnostic::error("implicit-product", name.span, message).with_hint(hint));
+            self.report(Diagnostic::error("implicit-product", name.span, message).with_hint(hint));
         }
         Some(self.add(span, SyntaxKind::Call { callee: name, arguments }))
     }
@@ -270,7 +270,7 @@ impl Builder<'_> {
         };
         let Some(value) = Exact::parse_decimal(decimal.as_str()) else {
             let place = self.span(&decimal);
-            self.diagnostics.push(
+            self.report(
                 Diagnostic::error("number-out-of-range", place, "this number is too large, too small or too long")
                     .with_hint("write a number between 1e-1000 and 1e1000, with fewer digits"),
             );
@@ -316,7 +316,7 @@ impl Builder<'_> {
             _ => {
                 let message = format!("the exponent of `{}` cannot be used", name.text);
                 let hint = format!("exponents of units are whole numbers or fractions up to {MAXIMUM_UNIT_EXPONENT}");
-                self.diagnostics.push(Diagnostic::error("unit-exponent", span, message).with_hint(hint));
+                self.report(Diagnostic::error("unit-exponent", span, message).with_hint(hint));
                 None
             }
         }
@@ -328,9 +328,16 @@ impl Builder<'_> {
         if is_reserved(&name.text) {
             let message = format!("`{}` has a meaning in every sheet and cannot be {role}", name.text);
             let hint = format!("choose another name, such as `{}_1`", name.text);
-            self.diagnostics.push(Diagnostic::error("reserved-name", name.span, message).with_hint(hint));
+            self.report(Diagnostic::error("reserved-name", name.span, message).with_hint(hint));
         }
         name
+    }
+
+    /// A statement of 100,000 errors is as well served by the first hundred.
+    fn report(&mut self, diagnostic: Diagnostic) {
+        if self.diagnostics.len() < MAXIMUM_ERRORS {
+            self.diagnostics.push(diagnostic);
+        }
     }
 
     fn name(&self, pair: &Pair<'_, Rule>) -> Name {

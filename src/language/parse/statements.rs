@@ -117,8 +117,10 @@ fn line_length(rest: &str) -> usize {
 
 /// Up to the closing bracket, or to the end of the line where there is none.
 fn unit_length(rest: &str) -> usize {
-    let line = &rest[..rest.find(['\n', '#']).unwrap_or(rest.len())];
-    line.find(']').map_or(line.trim_end().len(), |at| at + 1)
+    match rest.find([']', '\n', '#']) {
+        Some(at) if rest[at..].starts_with(']') => at + 1,
+        end => rest[..end.unwrap_or(rest.len())].trim_end().len(),
+    }
 }
 
 /// The same rule as `decimal` in the grammar.

@@ -236,7 +236,10 @@ fn large_texts_take_linear_time_and_little_stack() {
     reads_quickly(times("f(a,\n", 90_000), 1);
     reads_quickly(times("== ", 300_000), MAXIMUM_ERRORS + 1);
     reads_quickly(times("²", 500_000), 1);
+    reads_quickly(format!("a = 1 [m{}]", times("*m", 500_000)), 0);
+    reads_quickly(format!("a = 0{}", times("+1 [m/s]", 100_000)), 0);
     reads_quickly(times("1+", 500_000), 1);
+    reads_quickly(format!("a = 0{}", times("-if", 100_000)), MAXIMUM_ERRORS);
     reads_quickly("x".repeat((1 << 20) + 1), 1);
     reads_quickly("#".repeat(1 << 20), 0);
     reads_quickly(times("#\r", 1 << 19), MAXIMUM_ERRORS);
