@@ -4,4 +4,5 @@ pub mod calculus;
 pub mod expression;
 pub mod geometry;
 pub mod integrals;
+pub mod kernel;
 pub mod language;
