@@ -6,3 +6,4 @@ pub mod geometry;
 pub mod integrals;
 pub mod kernel;
 pub mod language;
+pub mod quadrature;

@@ -1,0 +1,461 @@
+//! Adaptive integration of a vector-valued function over segments of a line.
+//!
+//! Each segment is probed at its ends for algebraic growth or a vertical tangent and mapped so that the integrand becomes
+//! smooth ([`super::map`]); then panels are bisected until the sum of |Gauss - Kronrod| over all panels is within the
+//! tolerance. That difference is the error of the 15-point Gauss rule while the value returned is the 31-point Kronrod
+//! sum, so for a resolved integrand it is larger than the true error by many orders. Work is done in rounds: which panels
+//! are split depends on numbers only, never on timing, so that results do not depend on threads.
+//!
+//! On a proved period the trapezoid rule is used instead, with prime node counts: two neighbouring counts alias the same
+//! frequency only at multiples of their product.
+
+use super::map::{MAXIMUM_ORDER, Map, Segment};
+use super::rules::{KRONROD_NODES, TRAPEZOID_NODES, kronrod};
+
+/// Values of a vector-valued function at a batch of points, component-major: `values[k * count + i]`.
+#[derive(Clone, Debug, Default)]
+pub struct Samples {
+    /// The values; not finite where the function is undefined.
+    pub values: Vec<f64>,
+    /// Absolute error of each value; empty where the values are exact up to rounding.
+    pub errors: Vec<f64>,
+    /// Integral of |f| behind each value; empty where it is |value|.
+    pub magnitudes: Vec<f64>,
+    /// Evaluations spent.
+    pub evaluations: u64,
+    /// For values that are not finite: the second coordinate at which the function was found undefined.
+    pub failures: Vec<(usize, f64)>,
+    /// Number of points at which an inner end with growth like 1/distance or worse was met.
+    pub divergent: usize,
+}
+
+/// A vector-valued function of one variable.
+pub(super) trait Line {
+    fn components(&self) -> usize;
+    fn sample(&self, x: &[f64]) -> Samples;
+}
+
+/// How exact a component must be: within `absolute`, or within `relative` times the integral of |f|.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Tolerance {
+    /// Absolute error allowed.
+    pub absolute: f64,
+    /// Error allowed relative to the integral of |f|.
+    pub relative: f64,
+}
+
+impl Tolerance {
+    fn allowed(&self, magnitude: f64) -> f64 {
+        self.absolute.max(self.relative * magnitude).max(f64::MIN_POSITIVE)
+    }
+}
+
+/// An integral over segments of a line.
+#[derive(Clone, Debug)]
+pub(super) struct LineSum {
+    pub(super) values: Vec<f64>,
+    /// Error of the rule plus the errors of the values that went in.
+    pub(super) errors: Vec<f64>,
+    /// Integral of |f|.
+    pub(super) magnitudes: Vec<f64>,
+    pub(super) evaluations: u64,
+    pub(super) outcome: Outcome,
+    /// Where an end with non-integrable growth was met, and the exponent.
+    pub(super) growth: Option<(f64, f64)>,
+    /// Samples at which the inner integral met such an end, and all samples.
+    pub(super) divergent: (usize, usize),
+}
+
+/// How a line integration ended.
+#[derive(Clone, Copy, PartialEq, Eq, Debug)]
+pub(super) enum Outcome {
+    Reached,
+    /// No panel is worth splitting further: rounding or noise of the integrand.
+    Noise,
+    /// The budget of evaluations is spent.
+    Budget,
+    /// The caller asked to stop.
+    Stopped,
+}
+
+/// The function is undefined at a point, and beside it too.
+#[derive(Clone, Copy, PartialEq, Debug)]
+pub(super) struct NotFinite {
+    pub(super) x: f64,
+    pub(super) second: Option<f64>,
+    pub(super) component: usize,
+}
+
+/// Largest number of bisections of one panel.
+const MAXIMUM_DEPTH: u8 = 48;
+
+/// Generations without progress after which a panel is taken to show noise only.
+const MAXIMUM_STALLS: u8 = 9;
+
+/// A panel whose error is below this multiple of rounding is not split.
+const ROUNDING: f64 = 16.0 * f64::EPSILON;
+
+struct Panel {
+    map: usize,
+    from: f64,
+    to: f64,
+    depth: u8,
+    stalls: u8,
+    /// Errors of the panel that this one is half of; empty at the start.
+    before: Vec<f64>,
+    values: Vec<f64>,
+    errors: Vec<f64>,
+    inherited: Vec<f64>,
+    magnitudes: Vec<f64>,
+}
+
+/// Integrates over `segments`, one after the other. `keep_going` is told the evaluations so far after each round.
+pub(super) fn integrate_segments(
+    line: &impl Line,
+    segments: &[Segment],
+    tolerances: &[Tolerance],
+    budget: u64,
+    keep_going: &dyn Fn(u64) -> bool,
+) -> Result<LineSum, NotFinite> {
+    let components = line.components();
+    let mut evaluations = 0;
+    let (maps, growth) = probe_ends(line, segments, &mut evaluations);
+    let mut divergent = (0, 0);
+    let mut panels: Vec<Panel> = Vec::new();
+    let mut pending: Vec<Panel> = Vec::new();
+    for map in 0..maps.len() {
+        pending.push(Panel::new(map, 0.0, 0.5, 0));
+        pending.push(Panel::new(map, 0.5, 1.0, 0));
+    }
+    let outcome = loop {
+        evaluate_panels(line, &maps, &mut pending, &mut evaluations, &mut divergent)?;
+        panels.append(&mut pending);
+        let total = |part: &dyn Fn(&Panel) -> &Vec<f64>, k: usize| panels.iter().map(|p| part(p)[k]).sum::<f64>();
+        let allowed: Vec<f64> = (0..components).map(|k| tolerances[k].allowed(total(&|p| &p.magnitudes, k))).collect();
+        let reached = (0..components).all(|k| total(&|p| &p.errors, k) <= allowed[k]);
+        if reached {
+            break Outcome::Reached;
+        }
+        if !keep_going(evaluations) {
+            break Outcome::Stopped;
+        }
+        if evaluations >= budget {
+            break Outcome::Budget;
+        }
+        let share = 0.5 / panels.len() as f64;
+        let weight = |panel: &Panel| {
+            (0..components)
+                .filter(|&k| panel.errors[k] > ROUNDING * panel.magnitudes[k])
+                .map(|k| panel.errors[k] / allowed[k])
+                .fold(0.0, f64::max)
+        };
+        let splittable = |panel: &Panel| panel.depth < MAXIMUM_DEPTH && panel.stalls < MAXIMUM_STALLS;
+        let mut kept = Vec::with_capacity(panels.len());
+        for panel in panels {
+            if splittable(&panel) && weight(&panel) > share {
+                pending.extend(panel.halves());
+            } else {
+                kept.push(panel);
+            }
+        }
+        panels = kept;
+        if pending.is_empty() {
+            break Outcome::Noise;
+        }
+    };
+    panels.sort_by(|a, b| (a.map, a.from).partial_cmp(&(b.map, b.from)).expect("panel ends are numbers"));
+    let sum = |k: usize, part: &dyn Fn(&Panel) -> &Vec<f64>| compensated(panels.iter().map(|panel| part(panel)[k]));
+    Ok(LineSum {
+        values: (0..components).map(|k| sum(k, &|p| &p.values)).collect(),
+        errors: (0..components).map(|k| sum(k, &|p| &p.errors) + sum(k, &|p| &p.inherited)).collect(),
+        magnitudes: (0..components).map(|k| sum(k, &|p| &p.magnitudes)).collect(),
+        evaluations,
+        outcome,
+        growth,
+        divergent,
+    })
+}
+
+impl Panel {
+    fn new(map: usize, from: f64, to: f64, depth: u8) -> Self {
+        let none = Vec::new;
+        Self {
+            map,
+            from,
+            to,
+            depth,
+            stalls: 0,
+            before: none(),
+            values: none(),
+            errors: none(),
+            inherited: none(),
+            magnitudes: none(),
+        }
+    }
+
+    /// The two halves, which carry the error of the whole until they are evaluated.
+    fn halves(self) -> [Panel; 2] {
+        let middle = 0.5 * (self.from + self.to);
+        let half = |from, to| Panel {
+            from,
+            to,
+            depth: self.depth + 1,
+            stalls: self.stalls,
+            errors: self.errors.clone(),
+            ..Panel::new(self.map, from, to, 0)
+        };
+        [half(self.from, middle), half(middle, self.to)]
+    }
+}
+
+/// Evaluates the rule on every panel in one batch of samples.
+fn evaluate_panels(
+    line: &impl Line,
+    maps: &[Map],
+    panels: &mut [Panel],
+    evaluations: &mut u64,
+    divergent: &mut (usize, usize),
+) -> Result<(), NotFinite> {
+    let rule = kronrod();
+    let mut x = Vec::with_capacity(panels.len() * KRONROD_NODES);
+    let mut slopes = Vec::with_capacity(x.capacity());
+    let mut nudges = Vec::with_capacity(x.capacity());
+    for panel in panels.iter() {
+        let (middle, half) = (0.5 * (panel.from + panel.to), 0.5 * (panel.to - panel.from));
+        for (node, _, _) in rule {
+            let (point, slope) = maps[panel.map].at(middle + half * node);
+            x.push(point);
+            slopes.push(slope * half);
+            nudges.push(1e-7 * slope * half);
+        }
+    }
+    let samples = finite_samples(line, &x, &nudges)?;
+    *evaluations += samples.evaluations;
+    divergent.0 += samples.divergent;
+    divergent.1 += x.len();
+    let count = x.len();
+    let components = line.components();
+    for (index, panel) in panels.iter_mut().enumerate() {
+        panel.values = vec![0.0; components];
+        panel.before = std::mem::replace(&mut panel.errors, vec![0.0; components]);
+        panel.inherited = vec![0.0; components];
+        panel.magnitudes = vec![0.0; components];
+        for k in 0..components {
+            let (mut fine, mut coarse, mut inherited, mut magnitude) = (0.0, 0.0, 0.0, 0.0);
+            for (node, &(_, weight, coarse_weight)) in rule.iter().enumerate() {
+                let i = index * KRONROD_NODES + node;
+                let value = samples.values[k * count + i] * slopes[i];
+                fine += weight * value;
+                coarse += coarse_weight * value;
+                magnitude += weight * samples.magnitude(k, i, count) * slopes[i];
+                inherited += weight * samples.error(k, i, count) * slopes[i];
+            }
+            panel.values[k] = fine;
+            panel.errors[k] = (fine - coarse).abs();
+            panel.inherited[k] = inherited;
+            panel.magnitudes[k] = magnitude;
+        }
+    }
+    note_progress(panels);
+    Ok(())
+}
+
+/// Counts generations in which a bisection did not help: both halves keep a good part of the error of the whole. Near a
+/// singular point one half gets better; where both stay bad, the integrand is noise (or unresolved ribs, which get better
+/// after a few bisections).
+fn note_progress(panels: &mut [Panel]) {
+    for pair in panels.chunks_exact_mut(2) {
+        let [left, right] = pair else { continue };
+        if left.before.is_empty() {
+            continue;
+        }
+        let stalled = (0..left.errors.len()).any(|k| {
+            let keeps = |panel: &Panel| panel.errors[k] > 0.3 * panel.before[k];
+            left.before[k] > 0.0 && keeps(left) && keeps(right)
+        });
+        let stalls = if stalled { left.stalls + 1 } else { 0 };
+        left.stalls = stalls;
+        right.stalls = stalls;
+    }
+}
+
+impl Samples {
+    fn error(&self, k: usize, i: usize, count: usize) -> f64 {
+        if self.errors.is_empty() { 0.0 } else { self.errors[k * count + i] }
+    }
+
+    fn magnitude(&self, k: usize, i: usize, count: usize) -> f64 {
+        if self.magnitudes.is_empty() { self.values[k * count + i].abs() } else { self.magnitudes[k * count + i] }
+    }
+}
+
+/// Samples at `x`. A point at which the function is undefined is replaced by a near one (an isolated 0/0, such as the
+/// normal at a cone tip, has no weight in an integral); if that is undefined too, the function is.
+fn finite_samples(line: &impl Line, x: &[f64], nudges: &[f64]) -> Result<Samples, NotFinite> {
+    let mut samples = line.sample(x);
+    let components = line.components();
+    let count = x.len();
+    let undefined = |samples: &Samples, i: usize, count: usize| {
+        (0..components).find(|k| !samples.values[k * count + i].is_finite())
+    };
+    let bad: Vec<usize> = (0..count).filter(|&i| undefined(&samples, i, count).is_some()).collect();
+    if bad.is_empty() {
+        return Ok(samples);
+    }
+    let moved: Vec<f64> = bad.iter().flat_map(|&i| [x[i] + nudges[i], x[i] - nudges[i]]).collect();
+    let again = line.sample(&moved);
+    samples.evaluations += again.evaluations;
+    for (position, &i) in bad.iter().enumerate() {
+        let candidates = [2 * position, 2 * position + 1];
+        let Some(&good) = candidates.iter().find(|&&j| undefined(&again, j, moved.len()).is_none()) else {
+            let second = samples.failures.iter().find(|(index, _)| *index == i).map(|(_, second)| *second);
+            let component = undefined(&samples, i, count).unwrap_or(0);
+            return Err(NotFinite { x: x[i], second, component });
+        };
+        for k in 0..components {
+            samples.values[k * count + i] = again.values[k * moved.len() + good];
+            if !samples.errors.is_empty() {
+                samples.errors[k * count + i] = again.error(k, good, moved.len());
+            }
+            if !samples.magnitudes.is_empty() {
+                samples.magnitudes[k * count + i] = again.magnitude(k, good, moved.len());
+            }
+        }
+    }
+    Ok(samples)
+}
+
+/// Distances from an end, as fractions of the segment, at which the behaviour is probed.
+const PROBES: [f64; 3] = [1e-3, 1e-6, 1e-9];
+
+/// Chooses the orders of the map of each segment from samples near its ends.
+fn probe_ends(line: &impl Line, segments: &[Segment], evaluations: &mut u64) -> (Vec<Map>, Option<(f64, f64)>) {
+    let plain: Vec<Map> = segments.iter().map(|&segment| Map::new(segment, (1, 1))).collect();
+    let mut x = Vec::new();
+    let mut slopes = Vec::new();
+    for map in &plain {
+        for t in PROBES.into_iter().chain(PROBES.map(|distance| 1.0 - distance)) {
+            let (point, slope) = map.at(t);
+            x.push(point);
+            slopes.push(slope);
+        }
+    }
+    let samples = line.sample(&x);
+    *evaluations += samples.evaluations;
+    let count = x.len();
+    let mut growth: Option<(f64, f64)> = None;
+    let mut end_order = |first: usize, end: f64| {
+        let mut order = 1;
+        for k in 0..line.components() {
+            let value = |j: usize| samples.values[k * count + first + j] * slopes[first + j];
+            let noise = (0..3).map(|j| samples.error(k, first + j, count) * slopes[first + j]).fold(0.0, f64::max);
+            let Some(exponent) = end_exponent([value(0), value(1), value(2)], noise) else { continue };
+            if exponent <= -0.99 && growth.is_none_or(|(_, known)| exponent < known) {
+                growth = Some((end, exponent));
+            }
+            order = order.max(order_for(exponent));
+        }
+        order
+    };
+    let maps = segments
+        .iter()
+        .enumerate()
+        .map(|(index, &segment)| {
+            let lower = end_order(6 * index, segment.from);
+            let upper = end_order(6 * index + 3, segment.to);
+            Map::new(segment, (lower, upper))
+        })
+        .collect();
+    (maps, growth)
+}
+
+/// The exponent alpha of f ~ c + d^alpha from values at the three probe distances d, if it is below 1.
+fn end_exponent(values: [f64; 3], noise: f64) -> Option<f64> {
+    if values.iter().any(|value| !value.is_finite()) {
+        return None;
+    }
+    let (first, second) = ((values[0] - values[1]).abs(), (values[1] - values[2]).abs());
+    let scale = values.iter().fold(0.0_f64, |scale, value| scale.max(value.abs()));
+    // A square root with a coefficient worth a substitution changes by more than 1e-6 between the last two probes;
+    // less is rounding of the integrand beside its end.
+    if second <= (3e-7 * scale).max(4.0 * noise) || first == 0.0 {
+        return None;
+    }
+    let exponent = -(second / first).log10() / 3.0;
+    (exponent < 0.95).then_some(exponent)
+}
+
+/// The order p for which t^(p (alpha + 1) - 1) and the following powers t^(p alpha) are smooth or nearly so.
+fn order_for(exponent: f64) -> u8 {
+    for order in 2..=4 {
+        let multiple = exponent * f64::from(order);
+        if (multiple - multiple.round()).abs() < 0.04 && multiple.round() > -f64::from(order) {
+            return order;
+        }
+    }
+    MAXIMUM_ORDER
+}
+
+/// Integrates over one period. `None` if the rule does not converge: the caller then uses [`integrate_segments`].
+pub(super) fn integrate_period(
+    line: &impl Line,
+    segment: Segment,
+    tolerances: &[Tolerance],
+    evaluations: &mut u64,
+) -> Result<Option<LineSum>, NotFinite> {
+    let components = line.components();
+    let width = segment.to - segment.from;
+    let mut last: Option<Vec<f64>> = None;
+    let mut last_differences: Option<Vec<f64>> = None;
+    for nodes in TRAPEZOID_NODES {
+        let step = width / nodes as f64;
+        let x: Vec<f64> = (0..nodes).map(|i| segment.from + width * ((i as f64 + 0.5) / nodes as f64)).collect();
+        let samples = finite_samples(line, &x, &vec![1e-7 * step; nodes])?;
+        *evaluations += samples.evaluations;
+        let sum = |part: &dyn Fn(usize) -> f64| step * compensated((0..nodes).map(part));
+        let values: Vec<f64> = (0..components).map(|k| sum(&|i| samples.values[k * nodes + i])).collect();
+        let magnitudes: Vec<f64> = (0..components).map(|k| sum(&|i| samples.magnitude(k, i, nodes))).collect();
+        let inherited: Vec<f64> = (0..components).map(|k| sum(&|i| samples.error(k, i, nodes))).collect();
+        if let Some(before) = &last {
+            let differences: Vec<f64> = (0..components).map(|k| (values[k] - before[k]).abs()).collect();
+            // One lucky difference does not count for more than a hundredfold progress.
+            let errors: Vec<f64> = (0..components)
+                .map(|k| differences[k].max(last_differences.as_ref().map_or(0.0, |older| 0.01 * older[k])))
+                .collect();
+            let reached = (0..components)
+                .all(|k| errors[k] <= tolerances[k].allowed(magnitudes[k]).max(ROUNDING * magnitudes[k]));
+            if reached {
+                return Ok(Some(LineSum {
+                    errors: (0..components).map(|k| errors[k] + inherited[k]).collect(),
+                    values,
+                    magnitudes,
+                    evaluations: *evaluations,
+                    outcome: Outcome::Reached,
+                    growth: None,
+                    divergent: (samples.divergent, nodes),
+                }));
+            }
+            let hopeless = nodes > 100
+                && last_differences.as_ref().is_some_and(|older| {
+                    (0..components).any(|k| differences[k] > 0.1 * older[k].max(1e-3 * magnitudes[k]))
+                });
+            if hopeless {
+                return Ok(None);
+            }
+            last_differences = Some(differences);
+        }
+        last = Some(values);
+    }
+    Ok(None)
+}
+
+/// Neumaier's compensated sum.
+pub(super) fn compensated(terms: impl Iterator<Item = f64>) -> f64 {
+    let (mut sum, mut rest) = (0.0_f64, 0.0_f64);
+    for term in terms {
+        let next = sum + term;
+        rest += if sum.abs() >= term.abs() { (sum - next) + term } else { (term - next) + sum };
+        sum = next;
+    }
+    sum + rest
+}

@@ -1,0 +1,337 @@
+//! Integration over a plane region as an integral of integrals: for each value of the outer variable the inner line is
+//! integrated with its own splits, maps and errors, and those errors are carried into the outer sum.
+
+use super::line::{Line, LineSum, NotFinite, Outcome, Samples, Tolerance, integrate_period, integrate_segments};
+use super::map::{Map, Segment};
+use super::rules::gauss_legendre;
+use rayon::prelude::*;
+use std::sync::atomic::{AtomicU64, Ordering};
+
+/// A vector-valued function on a plane region.
+pub trait PlaneIntegrand: Sync {
+    /// Number of components.
+    fn components(&self) -> usize;
+
+    /// The parts of the inner line that belong to the region, ascending, split where the function has a kink.
+    fn inner_segments(&self, outer: f64) -> Vec<Segment>;
+
+    /// Values at points of one inner line: `out[k * inner.len() + i]`.
+    fn evaluate(&self, outer: f64, inner: &[f64], out: &mut [f64]);
+}
+
+/// What is known about the region and the function along its two variables.
+#[derive(Clone, PartialEq, Debug)]
+pub struct Sides {
+    /// Parts of the outer line, split where the inner integral has a kink.
+    pub outer: Vec<Segment>,
+    /// Whether the function is proved periodic along the outer line, one or more periods of which are integrated.
+    pub outer_periodic: bool,
+    /// Whether the function is proved periodic along every inner line.
+    pub inner_periodic: bool,
+    /// Whether function and inner limits are independent of the outer variable.
+    pub outer_independent: bool,
+    /// Whether the function is independent of the inner variable.
+    pub inner_independent: bool,
+}
+
+/// An integral and how well it is known.
+#[derive(Clone, PartialEq, Debug)]
+pub struct Integral {
+    /// Values of the components.
+    pub values: Vec<f64>,
+    /// Conservative error estimates, rounding included.
+    pub errors: Vec<f64>,
+    /// Integrals of the absolute values.
+    pub magnitudes: Vec<f64>,
+    /// Evaluations of the function.
+    pub evaluations: u64,
+    /// Why the tolerance was not reached; `None` if it was.
+    pub limit: Option<Limit>,
+}
+
+/// Why an integration stopped short of its tolerance.
+#[derive(Clone, Copy, PartialEq, Debug)]
+pub enum Limit {
+    /// The budget of evaluations was spent.
+    Evaluations,
+    /// Rounding errors of the integrand are larger than the tolerance.
+    Rounding,
+    /// The caller asked to stop.
+    Stopped,
+}
+
+/// Why there is no value.
+#[derive(Clone, Copy, PartialEq, Debug)]
+pub enum Failure {
+    /// The function is undefined at (outer, inner) and beside it.
+    NotFinite {
+        /// Outer coordinate.
+        outer: f64,
+        /// Inner coordinate, where it is known.
+        inner: Option<f64>,
+        /// The component.
+        component: usize,
+    },
+    /// The function grows like distance^exponent, exponent <= -1, towards an end.
+    Divergent {
+        /// Outer coordinate of the end, if it is an end of the outer line.
+        outer: Option<f64>,
+        /// Inner coordinate of the end, if it is an end of the inner lines.
+        inner: Option<f64>,
+        /// The exponent measured.
+        exponent: f64,
+    },
+}
+
+/// Integrates `function` over its region until each component k is within `tolerance(k, value, magnitude)`.
+///
+/// `tolerance` gives the error allowed for a component with this value and this integral of |f|. `keep_going` is told the
+/// evaluations so far and returns whether to go on. Results have the same bits for any number of threads.
+///
+/// # Errors
+/// If the function is undefined on more than isolated points or grows so fast that the integral does not exist.
+pub fn integrate(
+    function: &dyn PlaneIntegrand,
+    sides: &Sides,
+    tolerance: &dyn Fn(usize, f64, f64) -> f64,
+    budget: u64,
+    keep_going: &dyn Fn(u64) -> bool,
+) -> Result<Integral, Failure> {
+    let components = function.components();
+    let mut spent = 0;
+    let (mut values, mut magnitudes) = coarse(function, sides, &mut spent);
+    for attempt in 0..4 {
+        // Half of what is allowed for the outer rule, a quarter for the inner integrals, the rest for rounding.
+        let allowed: Vec<f64> = (0..components).map(|k| tolerance(k, values[k], magnitudes[k])).collect();
+        let length: f64 = sides.outer.iter().map(|segment| segment.to - segment.from).sum();
+        let inner_tolerances: Vec<Tolerance> = (0..components)
+            .map(|k| Tolerance {
+                absolute: if length.is_finite() { 0.2 * allowed[k] / length } else { 0.0 },
+                relative: 0.2 * allowed[k] / magnitudes[k].max(f64::MIN_POSITIVE),
+            })
+            .collect();
+        let outer_tolerances: Vec<Tolerance> =
+            allowed.iter().map(|&absolute| Tolerance { absolute: 0.5 * absolute, relative: 0.0 }).collect();
+        let line = OuterLine { function, sides, tolerances: inner_tolerances, cost: AtomicU64::new(64) };
+        let watch = |evaluations: u64| keep_going(spent + evaluations);
+        let sum = integrate_outer(&line, sides, &outer_tolerances, budget.saturating_sub(spent), &watch)?;
+        spent += sum.evaluations;
+        values.clone_from(&sum.values);
+        magnitudes.clone_from(&sum.magnitudes);
+        let errors: Vec<f64> = (0..components).map(|k| sum.errors[k] + ROUNDING_PER_SUM * sum.magnitudes[k]).collect();
+        let short = (0..components).any(|k| errors[k] > tolerance(k, values[k], magnitudes[k]));
+        let limit = match sum.outcome {
+            Outcome::Stopped => Some(Limit::Stopped),
+            _ if !short => None,
+            Outcome::Budget => Some(Limit::Evaluations),
+            _ if spent >= budget => Some(Limit::Evaluations),
+            Outcome::Noise => Some(Limit::Rounding),
+            Outcome::Reached if attempt == 3 => Some(Limit::Rounding),
+            // The first guess at the size of the integral was too large: once more with the better one.
+            Outcome::Reached => continue,
+        };
+        return Ok(Integral { values, errors, magnitudes, evaluations: spent, limit });
+    }
+    unreachable!("the last attempt returns")
+}
+
+/// Bound for the rounding of the integrand and of the sum, relative to the integral of |f|.
+///
+/// Integrands are short formulas of functions within a few units in the last place; cancellation inside them shows in
+/// the differences between rules, which are counted besides.
+const ROUNDING_PER_SUM: f64 = 64.0 * f64::EPSILON;
+
+/// Evaluations after which one inner line gives up, its error then counts as it is.
+const INNER_BUDGET: u64 = 30_000;
+
+/// Evaluations in one batch of lines above which threads are worth their start-up.
+const PARALLEL_EVALUATIONS: u64 = 200_000;
+
+struct OuterLine<'a> {
+    function: &'a dyn PlaneIntegrand,
+    sides: &'a Sides,
+    tolerances: Vec<Tolerance>,
+    /// Evaluations of an average line so far; only steers whether threads are used, never a result.
+    cost: AtomicU64,
+}
+
+struct InnerLine<'a> {
+    function: &'a dyn PlaneIntegrand,
+    outer: f64,
+}
+
+impl Line for InnerLine<'_> {
+    fn components(&self) -> usize {
+        self.function.components()
+    }
+
+    fn sample(&self, x: &[f64]) -> Samples {
+        let mut values = vec![0.0; x.len() * self.components()];
+        self.function.evaluate(self.outer, x, &mut values);
+        Samples { values, evaluations: x.len() as u64, ..Samples::default() }
+    }
+}
+
+impl OuterLine<'_> {
+    fn inner_integral(&self, outer: f64) -> Result<LineSum, NotFinite> {
+        let line = InnerLine { function: self.function, outer };
+        let segments = self.function.inner_segments(outer);
+        let mut evaluations = 0;
+        if self.sides.inner_independent {
+            return Ok(constant_line(&line, &segments));
+        }
+        if self.sides.inner_periodic
+            && let [segment] = segments[..]
+            && let Some(sum) = integrate_period(&line, segment, &self.tolerances, &mut evaluations)?
+        {
+            return Ok(sum);
+        }
+        let mut sum = integrate_segments(&line, &segments, &self.tolerances, INNER_BUDGET, &|_| true)?;
+        sum.evaluations += evaluations;
+        Ok(sum)
+    }
+}
+
+/// The integral of a function that does not change along the line.
+fn constant_line(line: &impl Line, segments: &[Segment]) -> LineSum {
+    let components = line.components();
+    let length: f64 = segments.iter().map(|segment| segment.to - segment.from).sum();
+    let middle: Vec<f64> = segments.iter().take(1).map(|s| s.from + 0.5 * (s.to - s.from)).collect();
+    let samples = line.sample(&middle);
+    let at = |part: &[f64], k: usize| part.get(k).copied().unwrap_or(0.0);
+    let values: Vec<f64> = (0..components).map(|k| length * at(&samples.values, k)).collect();
+    let magnitudes = if samples.magnitudes.is_empty() {
+        values.iter().map(|value| value.abs()).collect()
+    } else {
+        (0..components).map(|k| length * at(&samples.magnitudes, k)).collect()
+    };
+    LineSum {
+        values,
+        errors: (0..components).map(|k| length * at(&samples.errors, k)).collect(),
+        magnitudes,
+        evaluations: samples.evaluations,
+        outcome: Outcome::Reached,
+        growth: None,
+        divergent: (samples.divergent, middle.len()),
+    }
+}
+
+impl Line for OuterLine<'_> {
+    fn components(&self) -> usize {
+        self.function.components()
+    }
+
+    fn sample(&self, x: &[f64]) -> Samples {
+        let expected = self.cost.load(Ordering::Relaxed) * x.len() as u64;
+        let lines: Vec<Result<LineSum, NotFinite>> = if expected > PARALLEL_EVALUATIONS {
+            x.par_iter().map(|&outer| self.inner_integral(outer)).collect()
+        } else {
+            x.iter().map(|&outer| self.inner_integral(outer)).collect()
+        };
+        let components = self.components();
+        let size = components * x.len();
+        let mut samples = Samples {
+            values: vec![f64::NAN; size],
+            errors: vec![0.0; size],
+            magnitudes: vec![0.0; size],
+            ..Samples::default()
+        };
+        for (i, line) in lines.into_iter().enumerate() {
+            match line {
+                Ok(sum) => {
+                    for k in 0..components {
+                        samples.values[k * x.len() + i] = sum.values[k];
+                        samples.errors[k * x.len() + i] = sum.errors[k];
+                        samples.magnitudes[k * x.len() + i] = sum.magnitudes[k];
+                    }
+                    samples.evaluations += sum.evaluations;
+                    samples.divergent += usize::from(sum.growth.is_some());
+                }
+                Err(failure) => samples.failures.push((i, failure.x)),
+            }
+        }
+        if !x.is_empty() {
+            self.cost.store(samples.evaluations / x.len() as u64 + 1, Ordering::Relaxed);
+        }
+        samples
+    }
+}
+
+fn integrate_outer(
+    line: &OuterLine<'_>,
+    sides: &Sides,
+    tolerances: &[Tolerance],
+    budget: u64,
+    keep_going: &dyn Fn(u64) -> bool,
+) -> Result<LineSum, Failure> {
+    let not_finite = |failure: NotFinite| Failure::NotFinite {
+        outer: failure.x,
+        inner: failure.second,
+        component: failure.component,
+    };
+    if sides.outer_independent {
+        return Ok(constant_line(line, &sides.outer));
+    }
+    let mut evaluations = 0;
+    if sides.outer_periodic
+        && let [segment] = sides.outer[..]
+        && let Some(sum) = integrate_period(line, segment, tolerances, &mut evaluations).map_err(not_finite)?
+    {
+        return Ok(sum);
+    }
+    let mut sum = integrate_segments(line, &sides.outer, tolerances, budget, keep_going).map_err(not_finite)?;
+    sum.evaluations += evaluations;
+    let (divergent, samples) = sum.divergent;
+    if sum.outcome != Outcome::Reached || 2 * divergent > samples {
+        if 2 * divergent > samples {
+            return Err(divergent_inside(line, sides));
+        }
+        if let Some((end, exponent)) = sum.growth {
+            return Err(Failure::Divergent { outer: Some(end), inner: None, exponent });
+        }
+    }
+    Ok(sum)
+}
+
+/// Names the end of the inner line at which the middle line diverges.
+fn divergent_inside(line: &OuterLine<'_>, sides: &Sides) -> Failure {
+    let middle = sides.outer.first().map_or(0.5, |segment| Map::new(*segment, (1, 1)).at(0.4321).0);
+    let growth = line.inner_integral(middle).ok().and_then(|sum| sum.growth);
+    match growth {
+        Some((end, exponent)) => Failure::Divergent { outer: None, inner: Some(end), exponent },
+        None => Failure::Divergent { outer: Some(middle), inner: None, exponent: -1.0 },
+    }
+}
+
+/// First guess at the values and the integrals of |f|: a tensor rule with few nodes. Undefined samples are skipped.
+fn coarse(function: &dyn PlaneIntegrand, sides: &Sides, evaluations: &mut u64) -> (Vec<f64>, Vec<f64>) {
+    let components = function.components();
+    let (nodes, weights) = gauss_legendre(9);
+    let mut values = vec![0.0; components];
+    let mut magnitudes = vec![0.0; components];
+    for &outer_segment in &sides.outer {
+        let outer_map = Map::new(outer_segment, (1, 1));
+        for (outer_node, outer_weight) in nodes.iter().zip(&weights) {
+            let (outer, outer_slope) = outer_map.at(0.5 + 0.5 * outer_node);
+            for inner_segment in function.inner_segments(outer) {
+                let inner_map = Map::new(inner_segment, (1, 1));
+                let mapped: Vec<(f64, f64)> = nodes.iter().map(|node| inner_map.at(0.5 + 0.5 * node)).collect();
+                let inner: Vec<f64> = mapped.iter().map(|(x, _)| *x).collect();
+                let mut out = vec![0.0; components * inner.len()];
+                function.evaluate(outer, &inner, &mut out);
+                *evaluations += inner.len() as u64;
+                for k in 0..components {
+                    for (i, (_, inner_slope)) in mapped.iter().enumerate() {
+                        let value =
+                            out[k * inner.len() + i] * 0.25 * outer_weight * weights[i] * outer_slope * inner_slope;
+                        if value.is_finite() {
+                            values[k] += value;
+                            magnitudes[k] += value.abs();
+                        }
+                    }
+                }
+            }
+        }
+    }
+    (values, magnitudes)
+}
