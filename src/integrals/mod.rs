@@ -1,7 +1,18 @@
 //! Surface plus question to an answer with its error.
 
+mod answer;
+mod bounded;
 mod error;
+mod functionals;
 mod outcome;
+mod patch_integrand;
+mod roots;
+mod rounding;
+mod run;
+mod sharp;
+mod sides;
+mod structure;
 
+pub use answer::answer;
 pub use error::{IntegralError, NoProgress, Place, Progress};
 pub use outcome::{Answer, AnswerKind, Component, Principal, Settings};

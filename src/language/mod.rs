@@ -1,5 +1,7 @@
 //! Text of a sheet to a checked model, or to diagnostics with a place, a marker and a hint.
 
+mod bind;
+mod check;
 mod diagnostic;
 mod model;
 mod parse;
@@ -8,6 +10,8 @@ pub mod syntax;
 mod unit;
 mod unit_table;
 
+pub use bind::Bindings;
+pub use check::check;
 pub use diagnostic::{Diagnostic, Part, Severity, SheetErrors, Source};
 pub use model::*;
 pub use parse::{MAXIMUM_BYTES, parse, parse_value};

@@ -1,0 +1,294 @@
+//! Answers: named values of a sheet computed from the functionals they rest on, with their errors.
+
+use super::bounded::Bounded;
+use super::error::{IntegralError, Progress};
+use super::outcome::{Answer, AnswerKind, Component, Principal, Settings};
+use super::rounding::evaluate_bounded;
+use super::run::{FunctionalOutcome, NEGLIGIBLE, Outcome, Run};
+use super::sides::chain_warnings;
+use crate::expression::{ExpressionId, Graph, SymbolId, differentiate, evaluate};
+use crate::language::{Bindings, Chain, Dimension, Functional, FunctionalId, FunctionalKind, Model, Unit, nearest};
+use crate::quadrature::Limit;
+use nalgebra::Matrix3;
+use rustc_hash::FxHashMap;
+use std::cell::Cell;
+
+/// What is to be answered.
+struct Target {
+    name: String,
+    components: Vec<ExpressionId>,
+    dimension: Dimension,
+    shown_as: Option<Unit>,
+    depends_on: Vec<FunctionalId>,
+}
+
+/// Answers `requests`: names of values, patches or chains (their area) in the sheet. Without any, every answer of the
+/// sheet, or the area of each patch where the sheet has no answers.
+///
+/// Values are in coherent SI units. The error of an answer covers the quadrature, rounding, and the errors of all
+/// integrals that went in; a shared integral counts once, so that `a/a` is exact.
+///
+/// # Errors
+/// For an unknown name, a density that is undefined in the region, or an integral that does not exist. Not reaching
+/// the tolerance is not an error: the answer then says [`AnswerKind::Unreached`].
+pub fn answer(
+    model: &Model,
+    bindings: &Bindings,
+    requests: &[String],
+    settings: &Settings,
+    progress: &dyn Progress,
+) -> Result<Vec<Answer>, IntegralError> {
+    let mut graph = model.graph.clone();
+    let mut functionals = model.functionals.clone();
+    let targets = targets(model, &mut graph, &mut functionals, requests)?;
+    let mut wanted: Vec<FunctionalId> = targets.iter().flat_map(|target| target.depends_on.clone()).collect();
+    wanted.sort_unstable();
+    wanted.dedup();
+    let mut run = Run {
+        model,
+        functionals: &functionals,
+        graph,
+        bindings: bindings.clone(),
+        settings,
+        progress,
+        done: Cell::new(0),
+    };
+    let mut relative = 0.5 * settings.relative;
+    for attempt in 0..3 {
+        let outcomes = run.outcomes(&wanted, relative)?;
+        let mut answers = Vec::with_capacity(targets.len());
+        for target in &targets {
+            answers.push(assemble(target, &mut run, &outcomes));
+        }
+        // An answer that combines integrals may need them more exactly than it is asked for itself.
+        let short = answers.iter().any(|answer| answer.kind == AnswerKind::Unreached);
+        let stuck = outcomes.values().any(|outcome| outcome.limit.is_some());
+        if !short || stuck || attempt == 2 {
+            return Ok(answers);
+        }
+        relative *= 0.03;
+    }
+    unreachable!("the last attempt returns")
+}
+
+fn targets(
+    model: &Model,
+    graph: &mut Graph,
+    functionals: &mut Vec<Functional>,
+    requests: &[String],
+) -> Result<Vec<Target>, IntegralError> {
+    let value = |value: &crate::language::NamedValue| Target {
+        name: value.name.clone(),
+        components: value.components.clone(),
+        dimension: value.dimension,
+        shown_as: value.shown_as.clone(),
+        depends_on: value.depends_on.clone(),
+    };
+    let mut chosen = Vec::new();
+    if requests.is_empty() {
+        chosen.extend(model.values.iter().filter(|value| value.is_answer).map(value));
+        if chosen.is_empty() {
+            for (index, patch) in model.patches.iter().enumerate().filter(|(_, patch)| patch.named) {
+                let chain = Chain { terms: vec![(1, crate::language::PatchId(index))] };
+                chosen.push(area_of(model, &patch.name, chain, graph, functionals));
+            }
+        }
+        return Ok(chosen);
+    }
+    for name in requests {
+        if let Some(found) = model.values.iter().find(|value| value.name == *name) {
+            chosen.push(value(found));
+        } else if let Some(patch) = model.patches.iter().position(|patch| patch.named && patch.name == *name) {
+            let chain = Chain { terms: vec![(1, crate::language::PatchId(patch))] };
+            chosen.push(area_of(model, name, chain, graph, functionals));
+        } else if let Some(chain) = model.chains.iter().find(|chain| chain.name == *name) {
+            chosen.push(area_of(model, name, chain.chain.clone(), graph, functionals));
+        } else {
+            let known = model
+                .values
+                .iter()
+                .map(|value| value.name.as_str())
+                .chain(model.chains.iter().map(|chain| chain.name.as_str()))
+                .chain(model.patches.iter().filter(|patch| patch.named).map(|patch| patch.name.as_str()));
+            let error = IntegralError::new("unknown-name", format!("the sheet has no value or surface `{name}`"));
+            return Err(match nearest(name, known) {
+                Some(near) => error.with_hint(format!("did you mean `{near}`?")),
+                None => error,
+            });
+        }
+    }
+    Ok(chosen)
+}
+
+/// The area of a chain that the sheet does not ask for by itself.
+fn area_of(model: &Model, name: &str, chain: Chain, graph: &mut Graph, functionals: &mut Vec<Functional>) -> Target {
+    let text = format!("area({name})");
+    let symbol = graph.new_symbol(&text);
+    let length = chain.terms.first().map_or(Dimension::NONE, |(_, patch)| model.patches[patch.0].dimension);
+    let span = chain.terms.first().map_or_else(Default::default, |(_, patch)| model.patches[patch.0].span);
+    let id = FunctionalId(functionals.len());
+    functionals.push(Functional {
+        text: text.clone(),
+        kind: FunctionalKind::Area,
+        chain,
+        results: vec![symbol],
+        depends_on: Vec::new(),
+        span,
+    });
+    Target {
+        name: text,
+        components: vec![graph.symbol(symbol)],
+        dimension: length.multiply(length).unwrap_or(length),
+        shown_as: None,
+        depends_on: vec![id],
+    }
+}
+
+/// Labels of the components of a number, a vector and a tensor.
+fn labels(count: usize) -> &'static [&'static str] {
+    match count {
+        3 => &["x", "y", "z"],
+        6 => &["xx", "yy", "zz", "xy", "xz", "yz"],
+        _ => &[""],
+    }
+}
+
+fn assemble(target: &Target, run: &mut Run<'_>, outcomes: &FxHashMap<FunctionalId, FunctionalOutcome>) -> Answer {
+    let known = results(run.functionals, outcomes);
+    let combined: Vec<Outcome> = target.components.iter().map(|&component| combine(component, run, &known)).collect();
+    let components: Vec<Component> = combined
+        .iter()
+        .zip(labels(combined.len()))
+        .map(|(outcome, label)| Component { label, value: outcome.bounded.value, error: outcome.bounded.error })
+        .collect();
+    let behind: Vec<FunctionalId> = closure(run.functionals, &target.depends_on);
+    let largest = combined.iter().map(|outcome| outcome.bounded.value.abs()).fold(0.0, f64::max);
+    let magnitude = combined.iter().map(|outcome| outcome.magnitude).fold(0.0, f64::max);
+    let negligible = largest < NEGLIGIBLE * magnitude;
+    let reference = if negligible { magnitude } else { largest };
+    let allowed = run.settings.absolute.max(run.settings.relative * reference);
+    let worst = components.iter().map(|component| component.error).fold(0.0, f64::max);
+    let finite = components.iter().all(|component| component.value.is_finite() && component.error.is_finite());
+    let reached = finite && worst <= allowed;
+    let mut warnings = Vec::new();
+    if negligible && magnitude > 0.0 && !behind.is_empty() {
+        warnings.push(format!(
+            "the value is negligible beside the integral of |f| ({magnitude:.3e}); the tolerance is relative to that"
+        ));
+    }
+    for id in &behind {
+        for warning in chain_warnings(run, *id) {
+            if !warnings.contains(&warning) {
+                warnings.push(warning);
+            }
+        }
+    }
+    let limit = behind.iter().find_map(|id| outcomes.get(id).and_then(|outcome| outcome.limit));
+    Answer {
+        name: target.name.clone(),
+        principal: (combined.len() == 6).then(|| principal(&components)).flatten(),
+        kind: if reached { AnswerKind::Estimate } else { AnswerKind::Unreached },
+        reason: (!reached).then(|| reason(finite, limit, worst, allowed)),
+        dimension: target.dimension,
+        shown_as: target.shown_as.clone(),
+        evaluations: behind.iter().filter_map(|id| outcomes.get(id)).map(|outcome| outcome.evaluations).sum(),
+        seconds: behind.iter().filter_map(|id| outcomes.get(id)).map(|outcome| outcome.seconds).sum(),
+        components,
+        warnings,
+    }
+}
+
+fn reason(finite: bool, limit: Option<Limit>, worst: f64, allowed: f64) -> String {
+    if !finite {
+        return "the value is undefined: a divisor is zero within its error".to_owned();
+    }
+    let why = match limit {
+        Some(Limit::Evaluations) => "the budget of evaluations is spent (raise --evaluations)",
+        Some(Limit::Rounding) => "rounding errors of the integrand are larger than the tolerance",
+        Some(Limit::Stopped) => "the run was interrupted",
+        None => "the errors of the integrals add up to more than the tolerance",
+    };
+    format!("{why}; error {worst:.2e}, allowed {allowed:.2e}")
+}
+
+fn closure(functionals: &[Functional], wanted: &[FunctionalId]) -> Vec<FunctionalId> {
+    let mut all: Vec<FunctionalId> = Vec::new();
+    let mut todo = wanted.to_vec();
+    while let Some(id) = todo.pop() {
+        if !all.contains(&id) {
+            all.push(id);
+            todo.extend(&functionals[id.0].depends_on);
+        }
+    }
+    all.sort_unstable();
+    all
+}
+
+fn results(
+    functionals: &[Functional],
+    outcomes: &FxHashMap<FunctionalId, FunctionalOutcome>,
+) -> FxHashMap<SymbolId, Outcome> {
+    let mut known = FxHashMap::default();
+    for (id, outcome) in outcomes {
+        for (&symbol, &result) in functionals[id.0].results.iter().zip(&outcome.results) {
+            known.insert(symbol, result);
+        }
+    }
+    known
+}
+
+/// A formula over results: its value, the errors of the results times the slopes, and its own rounding.
+///
+/// Slopes are taken at the values and at both ends of each result's interval, so that a curved formula is covered too;
+/// each result counts once, however often it stands in the formula.
+fn combine(component: ExpressionId, run: &mut Run<'_>, known: &FxHashMap<SymbolId, Outcome>) -> Outcome {
+    if let Some(symbol) = run.graph.as_symbol(component)
+        && let Some(outcome) = known.get(&symbol)
+    {
+        return *outcome;
+    }
+    let used: Vec<SymbolId> =
+        run.graph.symbols_of(&[component]).into_iter().filter(|symbol| known.contains_key(symbol)).collect();
+    let own = evaluate_bounded(&run.graph, &[component], |symbol| run.bindings.value(symbol))[0];
+    let mut error = own.error;
+    let mut magnitude = if used.is_empty() { own.value.abs() } else { 0.0 };
+    for &symbol in &used {
+        let slope = differentiate(&mut run.graph, component, symbol);
+        let result = known[&symbol];
+        let at = |shift: f64| {
+            evaluate(&run.graph, &[slope], |other| {
+                if other == symbol { result.bounded.value + shift } else { run.bindings.value(other) }
+            })[0]
+                .abs()
+        };
+        let steepest = at(0.0).max(at(result.bounded.error)).max(at(-result.bounded.error));
+        error += steepest * result.bounded.error;
+        magnitude += at(0.0) * result.magnitude;
+    }
+    Outcome { bounded: Bounded { value: own.value, error }, magnitude }
+}
+
+/// Principal moments and axes of a symmetric tensor; the moments move by at most the norm of the error (Weyl).
+fn principal(components: &[Component]) -> Option<Principal> {
+    let [xx, yy, zz, xy, xz, yz] = components else { return None };
+    if components.iter().any(|component| !component.value.is_finite()) {
+        return None;
+    }
+    let matrix = |part: fn(&Component) -> f64| {
+        Matrix3::new(part(xx), part(xy), part(xz), part(xy), part(yy), part(yz), part(xz), part(yz), part(zz))
+    };
+    let values = matrix(|component| component.value);
+    let errors = matrix(|component| component.error);
+    let eigen = values.symmetric_eigen();
+    let mut order = [0, 1, 2];
+    order.sort_by(|&a, &b| eigen.eigenvalues[a].total_cmp(&eigen.eigenvalues[b]));
+    let column = |index: usize| eigen.eigenvectors.column(order[index]).into_owned();
+    let (first, second) = (column(0), column(1));
+    let third = first.cross(&second);
+    let row = |axis: &nalgebra::Vector3<f64>| [axis.x, axis.y, axis.z];
+    Some(Principal {
+        moments: order.map(|index| eigen.eigenvalues[index]),
+        error: errors.norm() + 16.0 * f64::EPSILON * values.norm(),
+        axes: [row(&first), row(&second), row(&third)],
+    })
+}

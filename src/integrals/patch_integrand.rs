@@ -1,0 +1,504 @@
+//! The densities of one patch as a function on a plane region, prepared for quadrature: kernels compiled, limits and
+//! trims resolved, kinks and sharp features located.
+
+use super::error::{IntegralError, Place};
+use super::roots::{bisect, point, sign_changes};
+use super::structure::{Feature, features, is_periodic, kink_formulas};
+use crate::expression::{ExpressionId, Graph, SymbolId, evaluate, first_undefined, print_limited};
+use crate::kernel::{Kernel, Program};
+use crate::language::{Bindings, Bound, Patch};
+use crate::quadrature::{PlaneIntegrand, Segment, Sides};
+
+/// Densities per du dv of one patch, ready to be integrated.
+pub(super) struct PatchIntegrand {
+    densities: Kernel,
+    parameters: Vec<f64>,
+    limits: Limits,
+    /// Splits of every inner line.
+    breaks: Vec<f64>,
+    /// Formulas whose sign changes split an inner line at places that depend on the outer variable.
+    kinks: Option<Kernel>,
+    trim: Option<Kernel>,
+    /// Where densities have decayed to nothing before their formula overflows: (outer, inner).
+    decayed: [Segment; 2],
+    /// What is known for the quadrature.
+    pub(super) sides: Sides,
+}
+
+enum Limits {
+    Constant(Segment),
+    /// Lower and upper end as functions of the outer variable; infinite ends are constants.
+    Varying(Kernel, [Option<f64>; 2]),
+}
+
+/// What to integrate over one patch.
+pub(super) struct Question<'a> {
+    pub(super) patch: &'a Patch,
+    /// Formulas of the patch's variables and parameters.
+    pub(super) densities: &'a [ExpressionId],
+    /// The trim with the symbols of a surface point already replaced.
+    pub(super) trim: Option<ExpressionId>,
+    pub(super) bindings: &'a Bindings,
+}
+
+impl Question<'_> {
+    /// Compiles and examines the densities.
+    pub(super) fn prepare(&self, graph: &mut Graph) -> Result<PatchIntegrand, IntegralError> {
+        let patch = self.patch;
+        let outer = usize::from(self.depends(graph, 0, patch.variables[1]));
+        let variables = [patch.variables[outer], patch.variables[1 - outer]];
+        let value_of = |symbol: SymbolId| self.bindings.value(symbol);
+        let roots: Vec<ExpressionId> = self.densities.iter().copied().chain(self.trim).collect();
+        let kinks = kink_formulas(graph, &roots, variables);
+        let found = features(graph, self.densities, variables);
+        let feature_formulas: Vec<ExpressionId> = found
+            .iter()
+            .map(|feature| match *feature {
+                Feature::SmallAt(a) | Feature::LargeAt(a) | Feature::StepAt(a) => a,
+            })
+            .collect();
+        let inner_bounds = [patch.intervals[1 - outer].lower, patch.intervals[1 - outer].upper];
+        let mut everything = roots.clone();
+        everything.extend(&kinks);
+        everything.extend(inner_bounds.iter().filter_map(|bound| finite(*bound)));
+        let parameters: Vec<SymbolId> =
+            graph.symbols_of(&everything).into_iter().filter(|symbol| !variables.contains(symbol)).collect();
+        let compile = |graph: &Graph, formulas: &[ExpressionId]| -> Result<Kernel, IntegralError> {
+            Program::new(graph, formulas, variables, &parameters)
+                .map(Kernel::interpreted)
+                .map_err(|error| IntegralError::new("formula", format!("{}: {error}", patch.name)))
+        };
+        let outer_segment = self.outer_segment(graph, outer, &value_of)?;
+        let limits = match self.constant_segment(graph, 1 - outer, &value_of) {
+            Some(segment) => Limits::Constant(checked(segment, patch, 1 - outer)?),
+            None => {
+                let zero = graph.integer(0);
+                let formulas = inner_bounds.map(|bound| finite(bound).unwrap_or(zero));
+                let infinite = inner_bounds.map(|bound| match bound {
+                    Bound::Finite(_) => None,
+                    Bound::MinusInfinity => Some(f64::NEG_INFINITY),
+                    Bound::PlusInfinity => Some(f64::INFINITY),
+                });
+                Limits::Varying(compile(graph, &formulas)?, infinite)
+            }
+        };
+        let mut integrand = PatchIntegrand {
+            densities: compile(graph, self.densities)?,
+            parameters: parameters.iter().map(|&symbol| self.bindings.value(symbol)).collect(),
+            limits,
+            breaks: Vec::new(),
+            kinks: None,
+            trim: self.trim.map(|trim| compile(graph, &[trim])).transpose()?,
+            decayed: [Segment::new(f64::NEG_INFINITY, f64::INFINITY); 2],
+            sides: Sides {
+                outer: vec![outer_segment],
+                outer_periodic: false,
+                inner_periodic: false,
+                outer_independent: false,
+                inner_independent: false,
+            },
+        };
+        integrand.check_limits(patch, outer, outer_segment)?;
+        integrand.find_decay(outer_segment);
+        let mut outer_breaks = Vec::new();
+        self.split_at_kinks(graph, &mut integrand, &kinks, variables, outer_segment, &mut outer_breaks, &compile)?;
+        if !found.is_empty() {
+            let kernel = compile(graph, &feature_formulas)?;
+            integrand.split_at_features(&found, &kernel, outer_segment, &mut outer_breaks);
+        }
+        outer_breaks.extend(middle_of_infinite(outer_segment));
+        integrand.sides.outer = split(outer_segment, &mut outer_breaks);
+        integrand.find_structure(graph, &roots, self.densities, variables, &value_of);
+        Ok(integrand)
+    }
+
+    /// Whether the interval of variable `index` depends on `other`.
+    fn depends(&self, graph: &Graph, index: usize, other: SymbolId) -> bool {
+        let interval = &self.patch.intervals[index];
+        [interval.lower, interval.upper].iter().filter_map(|b| finite(*b)).any(|b| graph.depends_on(b, other))
+    }
+
+    /// The interval of variable `index` in numbers, if it depends on no variable.
+    fn constant_segment(&self, graph: &Graph, index: usize, value_of: &impl Fn(SymbolId) -> f64) -> Option<Segment> {
+        if self.depends(graph, index, self.patch.variables[1 - index]) {
+            return None;
+        }
+        let interval = &self.patch.intervals[index];
+        let number = |bound: Bound| match bound {
+            Bound::Finite(formula) => evaluate(graph, &[formula], value_of)[0],
+            Bound::MinusInfinity => f64::NEG_INFINITY,
+            Bound::PlusInfinity => f64::INFINITY,
+        };
+        Some(Segment::new(number(interval.lower), number(interval.upper)))
+    }
+
+    fn outer_segment(
+        &self,
+        graph: &Graph,
+        outer: usize,
+        value_of: &impl Fn(SymbolId) -> f64,
+    ) -> Result<Segment, IntegralError> {
+        let segment = self
+            .constant_segment(graph, outer, value_of)
+            .ok_or_else(|| IntegralError::new("limits", "the limits of both variables depend on each other"))?;
+        checked(segment, self.patch, outer)
+    }
+
+    /// Splits at the sign changes of kink formulas: of one variable once, of both by a kernel for every inner line.
+    #[allow(clippy::too_many_arguments)]
+    fn split_at_kinks(
+        &self,
+        graph: &Graph,
+        integrand: &mut PatchIntegrand,
+        kinks: &[ExpressionId],
+        variables: [SymbolId; 2],
+        outer_segment: Segment,
+        outer_breaks: &mut Vec<f64>,
+        compile: &impl Fn(&Graph, &[ExpressionId]) -> Result<Kernel, IntegralError>,
+    ) -> Result<(), IntegralError> {
+        let mut mixed = Vec::new();
+        for &kink in kinks {
+            let depends = variables.map(|variable| graph.depends_on(kink, variable));
+            let kernel = compile(graph, &[kink])?;
+            let parameters = integrand.parameters.clone();
+            match (depends, &integrand.limits) {
+                ([true, false], _) => {
+                    let mut f = |x: &[f64]| values(&kernel, &parameters, x, &vec![0.0; x.len()]);
+                    outer_breaks.extend(sign_changes(outer_segment, &mut f));
+                }
+                ([false, true], Limits::Constant(segment)) => {
+                    let mut f = |x: &[f64]| values(&kernel, &parameters, &vec![0.0; x.len()], x);
+                    let found = sign_changes(*segment, &mut f);
+                    integrand.breaks.extend(found);
+                }
+                _ => mixed.push(kink),
+            }
+        }
+        if !mixed.is_empty() || integrand.trim.is_some() {
+            if !mixed.is_empty() {
+                integrand.kinks = Some(compile(graph, &mixed)?);
+            }
+            outer_breaks.extend(integrand.structure_changes(outer_segment));
+        }
+        Ok(())
+    }
+
+    /// The point of the surface at which a density is undefined, for a message.
+    pub(super) fn place(&self, graph: &Graph, outer: f64, inner: Option<f64>, component: usize) -> Place {
+        let patch = self.patch;
+        let index = usize::from(self.depends(graph, 0, patch.variables[1]));
+        let inner = inner.unwrap_or_else(|| {
+            self.constant_segment(graph, 1 - index, &|symbol| self.bindings.value(symbol))
+                .map_or(f64::NAN, |segment| point(segment, 0.5))
+        });
+        let mut coordinates = [outer, inner];
+        if index == 1 {
+            coordinates.reverse();
+        }
+        let value_of = |symbol: SymbolId| match patch.variables.iter().position(|&v| v == symbol) {
+            Some(position) => coordinates[position],
+            None => self.bindings.value(symbol),
+        };
+        let undefined = self.densities.get(component).and_then(|&density| first_undefined(graph, density, value_of));
+        let position = evaluate(graph, &patch.position, value_of);
+        let name = |i: usize| graph.symbol_name(patch.variables[i]).to_owned();
+        Place {
+            patch: patch.name.clone(),
+            variables: [(name(0), coordinates[0]), (name(1), coordinates[1])],
+            position: [position[0], position[1], position[2]],
+            expression: undefined.map_or_else(String::new, |found| print_limited(graph, found.expression, 120)),
+            value: undefined.map_or(f64::NAN, |found| found.value),
+        }
+    }
+}
+
+fn finite(bound: Bound) -> Option<ExpressionId> {
+    match bound {
+        Bound::Finite(formula) => Some(formula),
+        Bound::MinusInfinity | Bound::PlusInfinity => None,
+    }
+}
+
+/// Limits in order, or an error that names them.
+fn checked(segment: Segment, patch: &Patch, index: usize) -> Result<Segment, IntegralError> {
+    if segment.from.is_nan() || segment.to.is_nan() {
+        return Err(IntegralError::new(
+            "limits",
+            format!("{}: a limit of the {} variable is undefined", patch.name, ["first", "second"][index]),
+        ));
+    }
+    if segment.from > segment.to {
+        return Err(IntegralError::new(
+            "limits",
+            format!("{}: the limits cross, {} > {}", patch.name, segment.from, segment.to),
+        )
+        .with_hint("write the smaller limit first"));
+    }
+    Ok(segment)
+}
+
+/// A doubly infinite line is halved, so that a peak in its middle is seen by the ends of both halves.
+fn middle_of_infinite(segment: Segment) -> Option<f64> {
+    (segment.from.is_infinite() && segment.to.is_infinite()).then_some(0.0)
+}
+
+/// The parts of `segment` between ascending breaks; breaks at its ends or equal up to rounding are dropped.
+fn split(segment: Segment, breaks: &mut Vec<f64>) -> Vec<Segment> {
+    breaks.sort_by(f64::total_cmp);
+    let size = if segment.from.is_finite() && segment.to.is_finite() {
+        segment.to - segment.from
+    } else {
+        breaks.iter().fold(1.0, |size: f64, b| size.max(b.abs()))
+    };
+    let apart = 1e-13 * size;
+    let mut parts = Vec::with_capacity(breaks.len() + 1);
+    let mut from = segment.from;
+    for &at in breaks.iter() {
+        if at > from + apart && at < segment.to - apart {
+            parts.push(Segment::new(from, at));
+            from = at;
+        }
+    }
+    parts.push(Segment::new(from, segment.to));
+    parts
+}
+
+/// First output of a kernel at a batch of points.
+fn values(kernel: &Kernel, parameters: &[f64], outer: &[f64], inner: &[f64]) -> Vec<f64> {
+    let outputs = kernel.program().outputs().len();
+    let mut out = vec![0.0; outputs * outer.len()];
+    kernel.evaluate(parameters, outer, inner, &mut out);
+    out
+}
+
+/// Samples along the outer line at which the arrangement of kinks is compared.
+const STRUCTURE_SAMPLES: usize = 97;
+
+impl PatchIntegrand {
+    fn limits_at(&self, outer: f64) -> Segment {
+        match &self.limits {
+            Limits::Constant(segment) => *segment,
+            Limits::Varying(kernel, infinite) => {
+                let ends = values(kernel, &self.parameters, &[outer], &[0.0]);
+                Segment::new(infinite[0].unwrap_or(ends[0]), infinite[1].unwrap_or(ends[1]))
+            }
+        }
+    }
+
+    /// Limits that depend on the outer variable must not cross inside its range.
+    fn check_limits(&self, patch: &Patch, outer: usize, outer_segment: Segment) -> Result<(), IntegralError> {
+        if matches!(self.limits, Limits::Constant(_)) {
+            return Ok(());
+        }
+        for i in 0..STRUCTURE_SAMPLES {
+            let at = point(outer_segment, (i as f64 + 0.5) / STRUCTURE_SAMPLES as f64);
+            let limits = self.limits_at(at);
+            let size = limits.from.abs().max(limits.to.abs());
+            if limits.from.is_nan() || limits.to.is_nan() || limits.from > limits.to + 1e-12 * size {
+                let which = ["first", "second"];
+                let what = if limits.from > limits.to { "cross" } else { "are undefined" };
+                return Err(IntegralError::new(
+                    "limits",
+                    format!(
+                        "{}: the limits of the {} variable {what} where the {} is {at}: [{}, {}]",
+                        patch.name,
+                        which[1 - outer],
+                        which[outer],
+                        limits.from,
+                        limits.to
+                    ),
+                )
+                .with_hint("change the limits, or trim with `where`"));
+            }
+        }
+        Ok(())
+    }
+
+    /// Looks along infinite directions for the place where a formula overflows although it has long decayed, as
+    /// sinh(v)/cosh(v)^2 does beyond v = 700; densities count as zero from there.
+    fn find_decay(&mut self, outer_segment: Segment) {
+        let middle = point(outer_segment, 0.37);
+        let inner_segment = self.limits_at(middle);
+        let others = |segment: Segment| [0.13, 0.37, 0.61, 0.89].map(|fraction| point(segment, fraction));
+        let components = self.densities.program().outputs().len();
+        for (axis, segment, other) in
+            [(0, outer_segment, others(inner_segment)), (1, inner_segment, others(outer_segment))]
+        {
+            for (end, sign) in [(segment.from, -1.0), (segment.to, 1.0)] {
+                if end.is_finite() {
+                    continue;
+                }
+                let mut largest = 0.0_f64;
+                let mut last = f64::INFINITY;
+                for exponent in 0..80 {
+                    let x = sign * 2f64.powi(exponent);
+                    let (outer, inner) =
+                        if axis == 0 { (vec![x; 4], other.to_vec()) } else { (other.to_vec(), vec![x; 4]) };
+                    let out = values(&self.densities, &self.parameters, &outer, &inner);
+                    debug_assert_eq!(out.len(), 4 * components);
+                    if out.iter().any(|value| !value.is_finite()) {
+                        if last <= 1e-22 * largest {
+                            let edge = sign * 2f64.powi(exponent - 1);
+                            if sign < 0.0 {
+                                self.decayed[axis].from = edge;
+                            } else {
+                                self.decayed[axis].to = edge;
+                            }
+                        }
+                        break;
+                    }
+                    last = out.iter().fold(0.0, |most, value| most.max(value.abs() * x.abs()));
+                    largest = largest.max(last);
+                }
+            }
+        }
+    }
+
+    /// Signs of all kinks and the trim along one inner line, as a word that changes where the arrangement changes.
+    fn arrangement(&self, outer: f64) -> Vec<usize> {
+        self.splits(outer).into_iter().map(|(kink, _)| kink).chain(self.kept(outer)).collect()
+    }
+
+    /// Which parts of the line the trim keeps, as numbers beyond those of kinks.
+    fn kept(&self, outer: f64) -> Vec<usize> {
+        let Some(trim) = &self.trim else { return Vec::new() };
+        self.parts(outer).iter().map(|part| usize::MAX - usize::from(self.holds(trim, outer, *part))).collect()
+    }
+
+    fn holds(&self, trim: &Kernel, outer: f64, part: Segment) -> bool {
+        values(trim, &self.parameters, &[outer], &[point(part, 0.5)])[0] == 1.0
+    }
+
+    /// Sign changes of the mixed kink formulas on one inner line: (which formula, where), ascending.
+    fn splits(&self, outer: f64) -> Vec<(usize, f64)> {
+        let Some(kinks) = &self.kinks else { return Vec::new() };
+        let segment = self.limits_at(outer);
+        if segment.from >= segment.to {
+            return Vec::new();
+        }
+        let count = kinks.program().outputs().len();
+        let mut found = Vec::new();
+        for kink in 0..count {
+            let mut f = |x: &[f64]| {
+                let all = values(kinks, &self.parameters, &vec![outer; x.len()], x);
+                all[kink * x.len()..(kink + 1) * x.len()].to_vec()
+            };
+            found.extend(sign_changes(segment, &mut f).into_iter().map(|at| (kink, at)));
+        }
+        found.sort_by(|a, b| a.1.total_cmp(&b.1));
+        found
+    }
+
+    /// The inner line split at fixed breaks and at sign changes of kinks; parts that the trim cuts away are still there.
+    fn parts(&self, outer: f64) -> Vec<Segment> {
+        let segment = self.limits_at(outer);
+        if segment.from >= segment.to {
+            return Vec::new();
+        }
+        let mut breaks = self.breaks.clone();
+        breaks.extend(middle_of_infinite(segment));
+        breaks.extend(self.splits(outer).into_iter().map(|(_, at)| at));
+        split(segment, &mut breaks)
+    }
+
+    /// Outer values at which kinks appear, vanish, cross or leave through a limit, to the last place.
+    fn structure_changes(&self, outer_segment: Segment) -> Vec<f64> {
+        let at = |i: usize| point(outer_segment, (i as f64 + 0.5) / STRUCTURE_SAMPLES as f64);
+        let mut changes = Vec::new();
+        let mut before = self.arrangement(at(0));
+        for i in 1..STRUCTURE_SAMPLES {
+            let here = self.arrangement(at(i));
+            if here != before {
+                let mut changed = |x: &[f64]| {
+                    x.iter().map(|&x| if self.arrangement(x) == before { 1.0 } else { -1.0 }).collect::<Vec<f64>>()
+                };
+                changes.push(bisect(at(i - 1), at(i), 1.0, &mut changed));
+            }
+            before = here;
+        }
+        changes
+    }
+
+    /// Splits at sharp peaks and near-singular places, with extra splits at a few widths beside them.
+    fn split_at_features(
+        &mut self,
+        found: &[Feature],
+        kernel: &Kernel,
+        outer_segment: Segment,
+        outer_breaks: &mut Vec<f64>,
+    ) {
+        for place in
+            super::sharp::sharp_places(found, kernel, &self.parameters, outer_segment, |outer| self.limits_at(outer))
+        {
+            outer_breaks.extend(place.outer);
+            self.breaks.extend(place.inner);
+        }
+    }
+
+    /// Periods and independence, where splits leave them intact.
+    fn find_structure(
+        &mut self,
+        graph: &Graph,
+        roots: &[ExpressionId],
+        densities: &[ExpressionId],
+        variables: [SymbolId; 2],
+        value_of: &dyn Fn(SymbolId) -> f64,
+    ) {
+        let depends = |variable| roots.iter().any(|&root| graph.depends_on(root, variable));
+        let constant_limits = matches!(self.limits, Limits::Constant(_));
+        self.sides.outer_independent = constant_limits
+            && !depends(variables[0])
+            && self.sides.outer.iter().all(|segment| segment.from.is_finite() && segment.to.is_finite());
+        self.sides.inner_independent = !depends(variables[1]) && {
+            let limits = self.limits_at(point(self.sides.outer[0], 0.5));
+            limits.from.is_finite() && limits.to.is_finite()
+        };
+        let periodic = |variable, segment: Segment| {
+            (segment.to - segment.from).is_finite()
+                && is_periodic(graph, densities, variables, variable, segment.to - segment.from, value_of)
+        };
+        if let [segment] = self.sides.outer[..]
+            && constant_limits
+        {
+            self.sides.outer_periodic = periodic(variables[0], segment);
+        }
+        if let Limits::Constant(segment) = self.limits
+            && self.breaks.is_empty()
+            && self.trim.is_none()
+        {
+            self.sides.inner_periodic = periodic(variables[1], segment);
+        }
+    }
+}
+
+impl PlaneIntegrand for PatchIntegrand {
+    fn components(&self) -> usize {
+        self.densities.program().outputs().len()
+    }
+
+    fn inner_segments(&self, outer: f64) -> Vec<Segment> {
+        let mut parts = self.parts(outer);
+        if let Some(trim) = &self.trim {
+            parts.retain(|part| self.holds(trim, outer, *part));
+        }
+        parts
+    }
+
+    fn evaluate(&self, outer: f64, inner: &[f64], out: &mut [f64]) {
+        let outers = vec![outer; inner.len()];
+        self.densities.evaluate(&self.parameters, &outers, inner, out);
+        let [outer_range, inner_range] = self.decayed;
+        let everywhere = |range: Segment| range.from.is_infinite() && range.to.is_infinite();
+        if everywhere(outer_range) && everywhere(inner_range) {
+            return;
+        }
+        for (i, &x) in inner.iter().enumerate() {
+            let beyond = |x: f64, range: Segment| x < range.from || x > range.to;
+            if beyond(x, inner_range) || beyond(outer, outer_range) {
+                for k in 0..self.components() {
+                    out[k * inner.len() + i] = 0.0;
+                }
+            }
+        }
+    }
+}

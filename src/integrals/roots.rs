@@ -1,0 +1,113 @@
+//! Roots of a function on an interval, found by sampling and bisection; used to split integrals at kinks.
+
+use crate::quadrature::Segment;
+
+/// Samples per interval; neighbours with one sign are searched for a pair of roots where the function dips towards zero.
+const SAMPLES: usize = 33;
+
+/// Ascending sign changes of `f` inside `segment`. `f` maps a batch of points to values; NaN counts as no sign.
+pub(super) fn sign_changes(segment: Segment, f: &mut dyn FnMut(&[f64]) -> Vec<f64>) -> Vec<f64> {
+    let points: Vec<f64> = (0..SAMPLES).map(|i| point(segment, (i as f64 + 0.5) / SAMPLES as f64)).collect();
+    let ends = [inside(segment.from, segment, true), inside(segment.to, segment, false)];
+    let mut x = vec![ends[0]];
+    x.extend(points);
+    x.push(ends[1]);
+    let values = f(&x);
+    let mut roots = Vec::new();
+    for i in 0..x.len() - 1 {
+        let (a, b) = (values[i], values[i + 1]);
+        if a * b < 0.0 {
+            roots.push(bisect(x[i], x[i + 1], a, f));
+        } else if b == 0.0 && i + 2 < x.len() && a * values[i + 2] < 0.0 {
+            roots.push(x[i + 1]);
+        } else if i > 0 && dips(values[i - 1], a, b) {
+            roots.extend(pair_between([x[i - 1], x[i], x[i + 1]], a, f));
+        }
+    }
+    roots.sort_by(f64::total_cmp);
+    roots.dedup();
+    roots
+}
+
+/// The point of a segment at a fraction of the way; infinite ends are compactified.
+pub(super) fn point(segment: Segment, fraction: f64) -> f64 {
+    let Segment { from, to } = segment;
+    match (from.is_finite(), to.is_finite()) {
+        (true, true) => from + (to - from) * fraction,
+        (true, false) => from + fraction / (1.0 - fraction),
+        (false, true) => to - (1.0 - fraction) / fraction,
+        (false, false) => (2.0 * fraction - 1.0) / (4.0 * fraction * (1.0 - fraction)),
+    }
+}
+
+/// An end, or a far point in place of an infinite one.
+fn inside(end: f64, segment: Segment, lower: bool) -> f64 {
+    if end.is_finite() { end } else { point(segment, if lower { 1e-9 } else { 1.0 - 1e-9 }) }
+}
+
+/// Whether the middle value is nearer to zero than both neighbours of the same sign.
+fn dips(a: f64, b: f64, c: f64) -> bool {
+    a * b > 0.0 && b * c > 0.0 && b.abs() <= a.abs() && b.abs() <= c.abs()
+}
+
+/// The two roots beside an extreme value that crosses zero, if it does: golden-section search on |f|.
+fn pair_between(x: [f64; 3], middle: f64, f: &mut dyn FnMut(&[f64]) -> Vec<f64>) -> Vec<f64> {
+    let sign = middle.signum();
+    let ratio = 0.5 * (5f64.sqrt() - 1.0);
+    let (mut low, mut high) = (x[0], x[2]);
+    for _ in 0..40 {
+        let left = high - ratio * (high - low);
+        let right = low + ratio * (high - low);
+        let values = f(&[left, right]);
+        for (at, value) in [(left, values[0]), (right, values[1])] {
+            if value * sign < 0.0 {
+                let before = bisect(x[0], at, sign, f);
+                let after = bisect(at, x[2], -sign, f);
+                return vec![before, after];
+            }
+        }
+        if values[0] * sign < values[1] * sign {
+            high = right;
+        } else {
+            low = left;
+        }
+    }
+    Vec::new()
+}
+
+/// The sign change between `low` and `high`, to the last place; `at_low` has the sign of the value at `low`.
+pub(super) fn bisect(mut low: f64, mut high: f64, at_low: f64, f: &mut dyn FnMut(&[f64]) -> Vec<f64>) -> f64 {
+    for _ in 0..120 {
+        let middle = 0.5 * (low + high);
+        if middle <= low || middle >= high {
+            break;
+        }
+        let value = f(&[middle])[0];
+        if value == 0.0 {
+            return middle;
+        }
+        if value * at_low > 0.0 {
+            low = middle;
+        } else {
+            high = middle;
+        }
+    }
+    0.5 * (low + high)
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn simple_and_paired_roots_are_found() {
+        let mut cubic = |x: &[f64]| x.iter().map(|x| (x - 0.2) * (x - 0.5) * (x - 0.505)).collect();
+        let roots = sign_changes(Segment::new(0.0, 1.0), &mut cubic);
+        assert_eq!(roots.len(), 3);
+        for (root, expected) in roots.iter().zip([0.2, 0.5, 0.505]) {
+            assert!((root - expected).abs() < 1e-15);
+        }
+        let mut touching = |x: &[f64]| x.iter().map(|x| (x - 0.3) * (x - 0.3)).collect();
+        assert!(sign_changes(Segment::new(0.0, 1.0), &mut touching).is_empty());
+    }
+}

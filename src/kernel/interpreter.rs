@@ -1,0 +1,244 @@
+//! Evaluates a program over blocks of points: one loop per instruction and block, in scratch slots that are used again as
+//! soon as a value is dead.
+
+use super::program::{Instruction, Program, Stage};
+use crate::expression::power;
+
+/// Points in one block. Slots of a short program stay in the first-level cache.
+const BLOCK: usize = 256;
+
+/// Distance of two slots: a little more than a block, so that slots do not fall on the same cache lines.
+const STRIDE: usize = BLOCK + 8;
+
+/// Runs `program` at the points (u[i], v[i]). `sink(output, start, values)` receives each output block by block.
+///
+/// Values that depend on no variable are computed once.
+pub(super) fn run(
+    program: &Program,
+    parameters: &[f64],
+    u: &[f64],
+    v: &[f64],
+    sink: &mut dyn FnMut(usize, usize, &[f64]),
+) {
+    let plan = Plan::new(program);
+    let mut scratch = vec![0.0; plan.slots * STRIDE];
+    let uniform = uniform_values(program, parameters);
+    let mut start = 0;
+    while start < u.len() {
+        let count = BLOCK.min(u.len() - start);
+        let (u, v) = (&u[start..start + count], &v[start..start + count]);
+        for (index, instruction) in program.instructions().iter().enumerate() {
+            if program.stages()[index] <= Stage::Parameter {
+                if let Some(slot) = plan.slot[index] {
+                    scratch[slot * STRIDE..slot * STRIDE + count].fill(uniform[index]);
+                }
+                continue;
+            }
+            let slot = plan.slot[index].expect("every computed value has a slot");
+            step(instruction, &plan.slot, &mut scratch, slot, count, u, v);
+        }
+        for (output, value) in program.outputs().iter().enumerate() {
+            let slot = plan.slot[value.index()].expect("outputs have slots");
+            sink(output, start, &scratch[slot * STRIDE..slot * STRIDE + count]);
+        }
+        start += count;
+    }
+}
+
+/// Which slot each value lives in.
+struct Plan {
+    slot: Vec<Option<usize>>,
+    slots: usize,
+}
+
+impl Plan {
+    fn new(program: &Program) -> Self {
+        let count = program.len();
+        let mut last_use = vec![0usize; count];
+        for (index, instruction) in program.instructions().iter().enumerate() {
+            for operand in instruction.operands() {
+                last_use[operand.index()] = index;
+            }
+        }
+        for output in program.outputs() {
+            last_use[output.index()] = usize::MAX;
+        }
+        let mut free: Vec<usize> = Vec::new();
+        let mut slot = vec![None; count];
+        let mut slots = 0;
+        for (index, instruction) in program.instructions().iter().enumerate() {
+            // The result gets its slot before operands give theirs back: a loop never reads what it writes.
+            let own = free.pop().unwrap_or_else(|| {
+                slots += 1;
+                slots - 1
+            });
+            slot[index] = Some(own);
+            let mut operands: Vec<usize> = instruction.operands().map(|operand| operand.index()).collect();
+            operands.sort_unstable();
+            operands.dedup();
+            for operand in operands {
+                if last_use[operand] == index {
+                    free.extend(slot[operand]);
+                }
+            }
+        }
+        Self { slot, slots }
+    }
+}
+
+/// Values of the constant and parameter stages.
+fn uniform_values(program: &Program, parameters: &[f64]) -> Vec<f64> {
+    let mut values = vec![f64::NAN; program.len()];
+    for (index, instruction) in program.instructions().iter().enumerate() {
+        if program.stages()[index] <= Stage::Parameter {
+            values[index] = scalar(instruction, parameters, |operand| values[operand]);
+        }
+    }
+    values
+}
+
+/// One instruction on numbers; `at` gives the values of operands. Variables are not uniform and do not occur.
+fn scalar(instruction: &Instruction, parameters: &[f64], at: impl Fn(usize) -> f64) -> f64 {
+    use Instruction::*;
+    match *instruction {
+        Constant(value) => value,
+        Parameter(position) => parameters[position as usize],
+        Variable(_) => f64::NAN,
+        Negate(a) => -at(a.index()),
+        Add(a, b) => at(a.index()) + at(b.index()),
+        Subtract(a, b) => at(a.index()) - at(b.index()),
+        Multiply(a, b) => at(a.index()) * at(b.index()),
+        Divide(a, b) => at(a.index()) / at(b.index()),
+        MultiplyAdd(a, b, c) => at(a.index()).mul_add(at(b.index()), at(c.index())),
+        MultiplySubtract(a, b, c) => at(a.index()).mul_add(at(b.index()), -at(c.index())),
+        NegateMultiplyAdd(a, b, c) => (-at(a.index())).mul_add(at(b.index()), at(c.index())),
+        SquareRoot(a) => at(a.index()).sqrt(),
+        Magnitude(a) => at(a.index()).abs(),
+        Minimum(a, b) => minimum(at(a.index()), at(b.index())),
+        Maximum(a, b) => maximum(at(a.index()), at(b.index())),
+        Call(function, a) => function.evaluate(at(a.index())),
+        Call2(function, a, b) => function.evaluate(at(a.index()), at(b.index())),
+        Power(a, b) => power(at(a.index()), at(b.index())),
+        Less(a, b) => less(at(a.index()), at(b.index())),
+        LessEqual(a, b) => less_equal(at(a.index()), at(b.index())),
+        And(a, b) => both(at(a.index()), at(b.index())),
+        Or(a, b) => either(at(a.index()), at(b.index())),
+        Not(a) => 1.0 - at(a.index()),
+        Select(c, a, b) => select(at(c.index()), at(a.index()), at(b.index())),
+    }
+}
+
+/// One instruction on a block.
+fn step(
+    instruction: &Instruction,
+    slots: &[Option<usize>],
+    scratch: &mut [f64],
+    slot: usize,
+    count: usize,
+    u: &[f64],
+    v: &[f64],
+) {
+    use Instruction::*;
+    let place = |value: super::program::ValueId| slots[value.index()].expect("operands have slots") * STRIDE;
+    let target = slot * STRIDE;
+    let mut one = |a: usize, f: &dyn Fn(f64) -> f64| {
+        for i in 0..count {
+            scratch[target + i] = f(scratch[a + i]);
+        }
+    };
+    match *instruction {
+        Constant(_) | Parameter(_) => unreachable!("uniform values are filled in by the caller"),
+        Variable(0) => scratch[target..target + count].copy_from_slice(u),
+        Variable(_) => scratch[target..target + count].copy_from_slice(v),
+        Negate(a) => each(scratch, target, [place(a)], count, |[x]| -x),
+        Add(a, b) => each(scratch, target, [place(a), place(b)], count, |[x, y]| x + y),
+        Subtract(a, b) => each(scratch, target, [place(a), place(b)], count, |[x, y]| x - y),
+        Multiply(a, b) => each(scratch, target, [place(a), place(b)], count, |[x, y]| x * y),
+        Divide(a, b) => each(scratch, target, [place(a), place(b)], count, |[x, y]| x / y),
+        MultiplyAdd(a, b, c) => {
+            each(scratch, target, [place(a), place(b), place(c)], count, |[x, y, z]| x.mul_add(y, z))
+        }
+        MultiplySubtract(a, b, c) => {
+            each(scratch, target, [place(a), place(b), place(c)], count, |[x, y, z]| x.mul_add(y, -z))
+        }
+        NegateMultiplyAdd(a, b, c) => {
+            each(scratch, target, [place(a), place(b), place(c)], count, |[x, y, z]| (-x).mul_add(y, z))
+        }
+        SquareRoot(a) => each(scratch, target, [place(a)], count, |[x]| x.sqrt()),
+        Magnitude(a) => each(scratch, target, [place(a)], count, |[x]| x.abs()),
+        Minimum(a, b) => each(scratch, target, [place(a), place(b)], count, |[x, y]| minimum(x, y)),
+        Maximum(a, b) => each(scratch, target, [place(a), place(b)], count, |[x, y]| maximum(x, y)),
+        Call(function, a) => one(place(a), &|x| function.evaluate(x)),
+        Call2(function, a, b) => each(scratch, target, [place(a), place(b)], count, |[x, y]| function.evaluate(x, y)),
+        Power(a, b) => each(scratch, target, [place(a), place(b)], count, |[x, y]| power(x, y)),
+        Less(a, b) => each(scratch, target, [place(a), place(b)], count, |[x, y]| less(x, y)),
+        LessEqual(a, b) => each(scratch, target, [place(a), place(b)], count, |[x, y]| less_equal(x, y)),
+        And(a, b) => each(scratch, target, [place(a), place(b)], count, |[x, y]| both(x, y)),
+        Or(a, b) => each(scratch, target, [place(a), place(b)], count, |[x, y]| either(x, y)),
+        Not(a) => each(scratch, target, [place(a)], count, |[x]| 1.0 - x),
+        Select(c, a, b) => each(scratch, target, [place(c), place(a), place(b)], count, |[c, x, y]| select(c, x, y)),
+    }
+}
+
+#[inline(always)]
+fn each<const N: usize>(
+    scratch: &mut [f64],
+    target: usize,
+    operands: [usize; N],
+    count: usize,
+    f: impl Fn([f64; N]) -> f64,
+) {
+    for i in 0..count {
+        scratch[target + i] = f(operands.map(|operand| scratch[operand + i]));
+    }
+}
+
+fn truth(holds: bool) -> f64 {
+    if holds { 1.0 } else { 0.0 }
+}
+
+fn minimum(a: f64, b: f64) -> f64 {
+    if a.is_nan() || b.is_nan() {
+        f64::NAN
+    } else if b < a {
+        b
+    } else {
+        a
+    }
+}
+
+fn maximum(a: f64, b: f64) -> f64 {
+    if a.is_nan() || b.is_nan() {
+        f64::NAN
+    } else if b > a {
+        b
+    } else {
+        a
+    }
+}
+
+fn less(a: f64, b: f64) -> f64 {
+    if a.is_nan() || b.is_nan() { f64::NAN } else { truth(a < b) }
+}
+
+fn less_equal(a: f64, b: f64) -> f64 {
+    if a.is_nan() || b.is_nan() { f64::NAN } else { truth(a <= b) }
+}
+
+fn both(a: f64, b: f64) -> f64 {
+    a * b
+}
+
+fn either(a: f64, b: f64) -> f64 {
+    if a.is_nan() || b.is_nan() { f64::NAN } else { truth(a + b > 0.0) }
+}
+
+fn select(condition: f64, yes: f64, no: f64) -> f64 {
+    if condition.is_nan() {
+        f64::NAN
+    } else if condition != 0.0 {
+        yes
+    } else {
+        no
+    }
+}
