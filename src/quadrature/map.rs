@@ -24,6 +24,9 @@ impl Segment {
 /// Largest order of a map.
 pub(super) const MAXIMUM_ORDER: u8 = 6;
 
+/// Relative distance from an end below which nodes are not placed by refinement.
+const RESOLUTION: f64 = 256.0 * f64::EPSILON;
+
 /// A change of variable from t in (0, 1) to a segment.
 #[derive(Clone, Debug)]
 pub(super) struct Map {
@@ -67,6 +70,15 @@ impl Map {
                 (self.scale * s / rest, self.scale * 2.0 * slope * (1.0 + s * s) / (rest * rest))
             }
         }
+    }
+
+    /// Whether the halves of a panel at an end still have nodes that doubles tell from the end: closer than that, the
+    /// distance to the end is rounding, and a function that grows there would be sampled at the wrong place.
+    pub(super) fn resolves(&self, from: f64, to: f64) -> bool {
+        let Segment { from: lower, to: upper } = self.segment;
+        let near = |end: f64, t: f64| !end.is_finite() || (self.at(t).0 - end).abs() > RESOLUTION * end.abs();
+        let node = 1e-3 * (to - from);
+        (from > 0.0 || near(lower, from + node)) && (to < 1.0 || near(upper, to - node))
     }
 
     /// I_t(p, q), 1 - I_t(p, q) and the derivative, each without cancellation.
