@@ -1,7 +1,7 @@
 //! A program with the engine that runs it.
 
 use super::interpreter::run;
-use super::program::{KernelError, Program};
+use super::program::Program;
 
 /// A formula, or several that share their parts, ready to be evaluated at many points.
 ///
@@ -40,10 +40,41 @@ impl Kernel {
 
 impl Kernel {
     /// A kernel for about `expected_points` evaluations.
-    ///
-    /// # Errors
-    /// See [`Program::new`].
-    pub fn new(program: Program, _expected_points: u64) -> Result<Self, KernelError> {
-        Ok(Self::interpreted(program))
+    pub fn new(program: Program, _expected_points: u64) -> Self {
+        Self::interpreted(program)
     }
+
+    /// Which engine runs the program.
+    pub fn engine(&self) -> Engine {
+        Engine::Interpreter
+    }
+
+    /// Seconds from program to callable code.
+    pub fn compile_seconds(&self) -> f64 {
+        0.0
+    }
+
+    /// Sums over a product grid: sum over i, j of `wu[i] * wv[j] * f_k(u[i], v[j])` for each output k.
+    pub fn sum_grid(&self, parameters: &[f64], u: &[f64], wu: &[f64], v: &[f64], wv: &[f64]) -> Vec<f64> {
+        let outputs = self.program.outputs().len();
+        let mut totals = vec![0.0; outputs];
+        let mut out = vec![0.0; outputs * v.len()];
+        for (&u, &wu) in u.iter().zip(wu) {
+            self.evaluate(parameters, &vec![u; v.len()], v, &mut out);
+            for (k, total) in totals.iter_mut().enumerate() {
+                let row: f64 = out[k * v.len()..(k + 1) * v.len()].iter().zip(wv).map(|(f, w)| f * w).sum();
+                *total += wu * row;
+            }
+        }
+        totals
+    }
+}
+
+/// Which engine runs a program.
+#[derive(Clone, Copy, PartialEq, Eq, Debug)]
+pub enum Engine {
+    /// Block by block, one loop for each instruction.
+    Interpreter,
+    /// Code of the processor.
+    MachineCode,
 }

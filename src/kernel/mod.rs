@@ -5,5 +5,5 @@ mod interpreter;
 mod kernel;
 mod program;
 
-pub use kernel::Kernel;
+pub use kernel::{Engine, Kernel};
 pub use program::{Instruction, KernelError, Program, Stage, ValueId};

@@ -520,7 +520,7 @@ impl Checker {
         let density = if chain_at == 1 { Some(arguments[0]) } else { None };
         let point = arguments.get(chain_at + 1).copied();
         let area = length.multiply(length).ok_or(()).map_err(|()| self.unit_overflow(span))?;
-        let mut times = |checker: &mut Self, a: Option<Dimension>, b: Dimension| match a {
+        let times = |checker: &mut Self, a: Option<Dimension>, b: Dimension| match a {
             Some(a) => a.multiply(b).map(Some).ok_or(()).map_err(|()| checker.unit_overflow(span)),
             None => Ok(None),
         };

@@ -1,0 +1,90 @@
+//! `quadrel nodes`
+
+use super::arguments::{NodesOptions, RuleOption};
+use super::{Exit, Failure, choose_patch, load, output};
+use crate::integrals::{IntegralError, NodesError, SurfaceNodes};
+use crate::quadrature::gauss_legendre;
+use crate::report::{COLUMNS, CsvTable, NpyTable, Stamp, TableFormat, write_whole};
+use std::io::{self, Write};
+use std::path::Path;
+
+/// Memory for one table and the nodes of its rule.
+const MEMORY_BYTES: u64 = 2 << 30;
+
+pub(super) fn run(options: &NodesOptions) -> Result<Exit, Failure> {
+    let (model, bindings) = load(&options.sheet, &options.set)?;
+    let patch = choose_patch(&model, options.patch.as_deref())?;
+    let (first, second) = options.grid;
+    let rows = (first as u64).checked_mul(second as u64);
+    let bytes = rows.and_then(|rows| rows.checked_mul(8 * COLUMNS.len() as u64));
+    let rows = match (rows, bytes) {
+        (Some(rows), Some(bytes)) if bytes <= 64 * MEMORY_BYTES && 16 * (first + second) as u64 <= MEMORY_BYTES => {
+            rows as usize
+        }
+        _ => {
+            return Err(Failure::Usage(format!(
+                "--grid {first}x{second} is too large: a table has at most {} bytes",
+                64 * MEMORY_BYTES
+            )));
+        }
+    };
+    if options.rule == RuleOption::Gauss && first.max(second) > 20_000 {
+        return Err(Failure::Usage("--rule gauss takes at most 20000 nodes along a variable".to_owned()));
+    }
+    let rule = |n: usize| match options.rule {
+        RuleOption::Midpoint => {
+            ((0..n).map(|i| (2 * i + 1) as f64 / n as f64 - 1.0).collect(), vec![2.0 / n as f64; n])
+        }
+        RuleOption::Gauss => gauss_legendre(n),
+    };
+    let nodes = SurfaceNodes::new(&model, &bindings, patch)?;
+    let word = if options.rule == RuleOption::Gauss { "gauss" } else { "midpoint" };
+    let stamp = Stamp::new(
+        &model.source.text,
+        format!(
+            "patch {} grid {first}x{second} rule {word} set {}",
+            model.patches[patch.0].name,
+            options.set.join(";")
+        ),
+    );
+    let names = model.patches[patch.0].variables.map(|variable| model.graph.symbol_name(variable).to_owned());
+    let extension = options.output.extension().and_then(|extension| extension.to_str()).unwrap_or("");
+    let to_stdout = options.output == Path::new("-");
+    let format: Box<dyn TableFormat> = match extension {
+        "npy" => Box::new(NpyTable),
+        "csv" => Box::new(CsvTable { stamp, variables: names }),
+        _ if to_stdout => Box::new(CsvTable { stamp, variables: names }),
+        _ => {
+            return Err(Failure::Usage(format!(
+                "{}: the name of the table must end in .npy or .csv",
+                options.output.display()
+            )));
+        }
+    };
+    let mut failed: Option<IntegralError> = None;
+    let mut write = |out: &mut dyn Write| -> io::Result<()> {
+        format.header(out, rows)?;
+        nodes.for_each(&rule(first), &rule(second), &mut |row| format.row(out, row)).map_err(|error| match error {
+            NodesError::Output(error) => error,
+            NodesError::Surface(error) => {
+                failed = Some(error.clone());
+                io::Error::other(error)
+            }
+        })
+    };
+    let result = if to_stdout {
+        let mut text = Vec::new();
+        let result = write(&mut text);
+        if result.is_ok() {
+            output::print(&String::from_utf8_lossy(&text));
+        }
+        result
+    } else {
+        write_whole(&options.output, |out| write(out))
+    };
+    if let Some(error) = failed {
+        return Err(error.into());
+    }
+    result.map_err(|error| Failure::Files(format!("{}: {error}", options.output.display())))?;
+    Ok(Exit::Reached)
+}

@@ -1,0 +1,69 @@
+//! Numbers with their errors, in the unit they are shown in, with the digits the error supports.
+
+use crate::integrals::{Answer, Component};
+use crate::language::Unit;
+
+/// Value and error of a component in the shown unit; the error covers the conversion.
+pub fn in_shown_unit(component: &Component, unit: Option<&Unit>) -> (f64, f64) {
+    let Some(unit) = unit else { return (component.value, component.error) };
+    let value = unit.from_si(component.value);
+    let error =
+        unit.from_si(component.error).abs() * (1.0 + Unit::CONVERSION_ERROR) + Unit::CONVERSION_ERROR * value.abs();
+    (value, error)
+}
+
+/// The unit of an answer as text: the one asked for, else the coherent SI unit, else nothing.
+pub fn unit_text(answer: &Answer) -> String {
+    match &answer.shown_as {
+        Some(unit) => unit.text.clone(),
+        None if answer.dimension.is_none() => String::new(),
+        None => answer.dimension.to_string(),
+    }
+}
+
+/// `3.14159265 ± 0.00000012`: the error with two digits, rounded up, the value to the same place.
+pub fn value_with_error(value: f64, error: f64) -> String {
+    if !value.is_finite() || !error.is_finite() {
+        return format!("{value} ± {error}");
+    }
+    if error == 0.0 {
+        return format!("{value} ± 0");
+    }
+    let place = error.log10().floor() as i32 - 1;
+    let size = if value == 0.0 { place } else { value.abs().log10().floor() as i32 };
+    let plain = (-6..15).contains(&size) && place > -20 && place <= 0;
+    let exponent = if plain { 0 } else { size.max(place + 1) };
+    let decimals = (exponent - place).clamp(0, 25) as usize;
+    let unit = 10f64.powi(exponent);
+    let last = 10f64.powi(-(decimals as i32));
+    let mut shown_error = format!("{:.decimals$}", error / unit);
+    // The error is never rounded down.
+    if shown_error.parse::<f64>().is_ok_and(|shown| shown < error / unit) {
+        shown_error = format!("{:.decimals$}", error / unit + last);
+    }
+    let shown_value = format!("{:.decimals$}", value / unit);
+    // A value that rounds to zero has no sign.
+    let shown_value = match shown_value.strip_prefix('-') {
+        Some(digits) if digits.bytes().all(|b| matches!(b, b'0' | b'.')) => digits.to_owned(),
+        _ => shown_value,
+    };
+    if exponent == 0 {
+        format!("{shown_value} ± {shown_error}")
+    } else {
+        format!("({shown_value} ± {shown_error})e{exponent}")
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn digits_follow_the_error() {
+        assert_eq!(value_with_error(std::f64::consts::PI, 1.23e-6), "3.1415927 ± 0.0000013");
+        assert_eq!(value_with_error(0.0, 0.0), "0 ± 0");
+        assert_eq!(value_with_error(-1e-20, 1.05e-12), "(0.0 ± 1.1)e-12");
+        assert_eq!(value_with_error(5.1e14, 7.8e2), "(5.1000000000000 ± 0.0000000000078)e14");
+        assert_eq!(value_with_error(6.022e23, 1e15), "(6.0220000000 ± 0.0000000010)e23");
+    }
+}

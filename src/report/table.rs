@@ -1,0 +1,73 @@
+//! Tables of nodes: comma-separated text, and the NPY array format of version 1.0.
+
+use super::stamp::Stamp;
+use std::io::{self, Write};
+
+/// Columns of a table of nodes.
+pub const COLUMNS: [&str; 10] = ["u", "v", "x", "y", "z", "nx", "ny", "nz", "dA", "weight"];
+
+/// Writes rows of a table.
+pub trait TableFormat {
+    /// What comes before the rows; `rows` is how many will follow.
+    ///
+    /// # Errors
+    /// What the writer reports.
+    fn header(&self, out: &mut dyn Write, rows: usize) -> io::Result<()>;
+
+    /// One row.
+    ///
+    /// # Errors
+    /// What the writer reports.
+    fn row(&self, out: &mut dyn Write, row: &[f64; COLUMNS.len()]) -> io::Result<()>;
+}
+
+/// Comma-separated values, a stamp in leading `#` lines, then the names of the columns.
+pub struct CsvTable {
+    /// The stamp.
+    pub stamp: Stamp,
+    /// Names of the two variables of the patch, in place of `u` and `v`.
+    pub variables: [String; 2],
+}
+
+impl TableFormat for CsvTable {
+    fn header(&self, out: &mut dyn Write, _rows: usize) -> io::Result<()> {
+        writeln!(out, "# quadrel {}", self.stamp.version)?;
+        writeln!(out, "# sheet sha256 {}", self.stamp.sheet_hash)?;
+        writeln!(out, "# {}", self.stamp.settings)?;
+        let names = [self.variables[0].as_str(), self.variables[1].as_str()];
+        writeln!(out, "{},{}", names.join(","), COLUMNS[2..].join(","))
+    }
+
+    fn row(&self, out: &mut dyn Write, row: &[f64; COLUMNS.len()]) -> io::Result<()> {
+        for (index, value) in row.iter().enumerate() {
+            if index > 0 {
+                out.write_all(b",")?;
+            }
+            write!(out, "{value:?}")?;
+        }
+        out.write_all(b"\n")
+    }
+}
+
+/// A two-dimensional array of little-endian doubles, one row for each node, columns in the order of [`COLUMNS`].
+pub struct NpyTable;
+
+impl TableFormat for NpyTable {
+    fn header(&self, out: &mut dyn Write, rows: usize) -> io::Result<()> {
+        let mut text = format!("{{'descr': '<f8', 'fortran_order': False, 'shape': ({rows}, {}), }}", COLUMNS.len());
+        // Magic, version, length and text fill a multiple of 64 bytes; the text ends with a line feed.
+        let unpadded = 6 + 2 + 2 + text.len() + 1;
+        text.push_str(&" ".repeat(unpadded.next_multiple_of(64) - unpadded));
+        text.push('\n');
+        out.write_all(b"\x93NUMPY\x01\x00")?;
+        out.write_all(&(text.len() as u16).to_le_bytes())?;
+        out.write_all(text.as_bytes())
+    }
+
+    fn row(&self, out: &mut dyn Write, row: &[f64; COLUMNS.len()]) -> io::Result<()> {
+        for value in row {
+            out.write_all(&value.to_le_bytes())?;
+        }
+        Ok(())
+    }
+}
