@@ -1,5 +1,10 @@
 //! Evaluates a program over blocks of points: one loop per instruction and block, in scratch slots that are used again as
 //! soon as a value is dead.
+//!
+//! Fused instructions round once where the processor has fused multiply-add, as the machine code does, and twice where it
+//! has not; the loops are compiled for both.
+
+#![expect(unsafe_code, reason = "calls the loops that are compiled for processors with fused multiply-add")]
 
 use super::program::{Instruction, Program, Stage};
 use crate::expression::power;
@@ -10,35 +15,60 @@ const BLOCK: usize = 256;
 /// Distance of two slots: a little more than a block, so that slots do not fall on the same cache lines.
 const STRIDE: usize = BLOCK + 8;
 
-/// Runs `program` at the points (u[i], v[i]). `sink(output, start, values)` receives each output block by block.
-///
-/// Values that depend on no variable are computed once.
-pub(super) fn run(
-    program: &Program,
-    parameters: &[f64],
-    u: &[f64],
-    v: &[f64],
-    sink: &mut dyn FnMut(usize, usize, &[f64]),
-) {
+/// Whether fused instructions round once on this machine.
+pub(super) fn fused() -> bool {
+    #[cfg(target_arch = "x86_64")]
+    {
+        std::is_x86_feature_detected!("avx2") && std::is_x86_feature_detected!("fma")
+    }
+    #[cfg(not(target_arch = "x86_64"))]
+    {
+        cfg!(target_arch = "aarch64")
+    }
+}
+
+/// Receives the block of one output that starts at a point: (output, first point, values).
+type Sink<'a> = &'a mut dyn FnMut(usize, usize, &[f64]);
+
+/// Runs `program` at the points (u[i], v[i]); values that depend on no variable are computed once.
+pub(super) fn run(program: &Program, parameters: &[f64], u: &[f64], v: &[f64], sink: Sink<'_>) {
+    #[cfg(target_arch = "x86_64")]
+    if fused() {
+        // SAFETY: `fused` has just asked the processor for both features.
+        return unsafe { run_on_fused_processor(program, parameters, u, v, sink) };
+    }
+    if fused() {
+        run_blocks::<true>(program, parameters, u, v, sink);
+    } else {
+        run_blocks::<false>(program, parameters, u, v, sink);
+    }
+}
+
+#[cfg(target_arch = "x86_64")]
+#[target_feature(enable = "avx2,fma")]
+fn run_on_fused_processor(program: &Program, parameters: &[f64], u: &[f64], v: &[f64], sink: Sink<'_>) {
+    run_blocks::<true>(program, parameters, u, v, sink);
+}
+
+#[inline(always)]
+fn run_blocks<const FUSED: bool>(program: &Program, parameters: &[f64], u: &[f64], v: &[f64], sink: Sink<'_>) {
     let plan = Plan::new(program);
     let mut scratch = vec![0.0; plan.slots * STRIDE];
-    let uniform = uniform_values(program, parameters);
+    let uniform = uniform_values::<FUSED>(program, parameters);
     let mut start = 0;
     while start < u.len() {
         let count = BLOCK.min(u.len() - start);
         let (u, v) = (&u[start..start + count], &v[start..start + count]);
         for (index, instruction) in program.instructions().iter().enumerate() {
+            let slot = plan.slot[index];
             if program.stages()[index] <= Stage::Parameter {
-                if let Some(slot) = plan.slot[index] {
-                    scratch[slot * STRIDE..slot * STRIDE + count].fill(uniform[index]);
-                }
-                continue;
+                scratch[slot * STRIDE..slot * STRIDE + count].fill(uniform[index]);
+            } else {
+                step::<FUSED>(instruction, &plan.slot, &mut scratch, slot, count, u, v);
             }
-            let slot = plan.slot[index].expect("every computed value has a slot");
-            step(instruction, &plan.slot, &mut scratch, slot, count, u, v);
         }
         for (output, value) in program.outputs().iter().enumerate() {
-            let slot = plan.slot[value.index()].expect("outputs have slots");
+            let slot = plan.slot[value.index()];
             sink(output, start, &scratch[slot * STRIDE..slot * STRIDE + count]);
         }
         start += count;
@@ -47,7 +77,7 @@ pub(super) fn run(
 
 /// Which slot each value lives in.
 struct Plan {
-    slot: Vec<Option<usize>>,
+    slot: Vec<usize>,
     slots: usize,
 }
 
@@ -64,7 +94,7 @@ impl Plan {
             last_use[output.index()] = usize::MAX;
         }
         let mut free: Vec<usize> = Vec::new();
-        let mut slot = vec![None; count];
+        let mut slot = vec![0; count];
         let mut slots = 0;
         for (index, instruction) in program.instructions().iter().enumerate() {
             // The result gets its slot before operands give theirs back: a loop never reads what it writes.
@@ -72,13 +102,13 @@ impl Plan {
                 slots += 1;
                 slots - 1
             });
-            slot[index] = Some(own);
+            slot[index] = own;
             let mut operands: Vec<usize> = instruction.operands().map(|operand| operand.index()).collect();
             operands.sort_unstable();
             operands.dedup();
             for operand in operands {
                 if last_use[operand] == index {
-                    free.extend(slot[operand]);
+                    free.push(slot[operand]);
                 }
             }
         }
@@ -87,18 +117,18 @@ impl Plan {
 }
 
 /// Values of the constant and parameter stages.
-fn uniform_values(program: &Program, parameters: &[f64]) -> Vec<f64> {
+fn uniform_values<const FUSED: bool>(program: &Program, parameters: &[f64]) -> Vec<f64> {
     let mut values = vec![f64::NAN; program.len()];
     for (index, instruction) in program.instructions().iter().enumerate() {
         if program.stages()[index] <= Stage::Parameter {
-            values[index] = scalar(instruction, parameters, |operand| values[operand]);
+            values[index] = scalar::<FUSED>(instruction, parameters, |operand| values[operand]);
         }
     }
     values
 }
 
 /// One instruction on numbers; `at` gives the values of operands. Variables are not uniform and do not occur.
-fn scalar(instruction: &Instruction, parameters: &[f64], at: impl Fn(usize) -> f64) -> f64 {
+fn scalar<const FUSED: bool>(instruction: &Instruction, parameters: &[f64], at: impl Fn(usize) -> f64) -> f64 {
     use Instruction::*;
     match *instruction {
         Constant(value) => value,
@@ -109,9 +139,9 @@ fn scalar(instruction: &Instruction, parameters: &[f64], at: impl Fn(usize) -> f
         Subtract(a, b) => at(a.index()) - at(b.index()),
         Multiply(a, b) => at(a.index()) * at(b.index()),
         Divide(a, b) => at(a.index()) / at(b.index()),
-        MultiplyAdd(a, b, c) => at(a.index()).mul_add(at(b.index()), at(c.index())),
-        MultiplySubtract(a, b, c) => at(a.index()).mul_add(at(b.index()), -at(c.index())),
-        NegateMultiplyAdd(a, b, c) => (-at(a.index())).mul_add(at(b.index()), at(c.index())),
+        MultiplyAdd(a, b, c) => multiply_add::<FUSED>(at(a.index()), at(b.index()), at(c.index())),
+        MultiplySubtract(a, b, c) => multiply_add::<FUSED>(at(a.index()), at(b.index()), -at(c.index())),
+        NegateMultiplyAdd(a, b, c) => multiply_add::<FUSED>(-at(a.index()), at(b.index()), at(c.index())),
         SquareRoot(a) => at(a.index()).sqrt(),
         Magnitude(a) => at(a.index()).abs(),
         Minimum(a, b) => minimum(at(a.index()), at(b.index())),
@@ -129,9 +159,10 @@ fn scalar(instruction: &Instruction, parameters: &[f64], at: impl Fn(usize) -> f
 }
 
 /// One instruction on a block.
-fn step(
+#[inline(always)]
+fn step<const FUSED: bool>(
     instruction: &Instruction,
-    slots: &[Option<usize>],
+    slots: &[usize],
     scratch: &mut [f64],
     slot: usize,
     count: usize,
@@ -139,7 +170,7 @@ fn step(
     v: &[f64],
 ) {
     use Instruction::*;
-    let place = |value: super::program::ValueId| slots[value.index()].expect("operands have slots") * STRIDE;
+    let place = |value: super::program::ValueId| slots[value.index()] * STRIDE;
     let target = slot * STRIDE;
     let mut one = |a: usize, f: &dyn Fn(f64) -> f64| {
         for i in 0..count {
@@ -156,13 +187,13 @@ fn step(
         Multiply(a, b) => each(scratch, target, [place(a), place(b)], count, |[x, y]| x * y),
         Divide(a, b) => each(scratch, target, [place(a), place(b)], count, |[x, y]| x / y),
         MultiplyAdd(a, b, c) => {
-            each(scratch, target, [place(a), place(b), place(c)], count, |[x, y, z]| x.mul_add(y, z))
+            each(scratch, target, [place(a), place(b), place(c)], count, |[x, y, z]| multiply_add::<FUSED>(x, y, z))
         }
         MultiplySubtract(a, b, c) => {
-            each(scratch, target, [place(a), place(b), place(c)], count, |[x, y, z]| x.mul_add(y, -z))
+            each(scratch, target, [place(a), place(b), place(c)], count, |[x, y, z]| multiply_add::<FUSED>(x, y, -z))
         }
         NegateMultiplyAdd(a, b, c) => {
-            each(scratch, target, [place(a), place(b), place(c)], count, |[x, y, z]| (-x).mul_add(y, z))
+            each(scratch, target, [place(a), place(b), place(c)], count, |[x, y, z]| multiply_add::<FUSED>(-x, y, z))
         }
         SquareRoot(a) => each(scratch, target, [place(a)], count, |[x]| x.sqrt()),
         Magnitude(a) => each(scratch, target, [place(a)], count, |[x]| x.abs()),
@@ -193,10 +224,18 @@ fn each<const N: usize>(
     }
 }
 
+/// `x*y + z`, rounded once or twice.
+#[inline(always)]
+fn multiply_add<const FUSED: bool>(x: f64, y: f64, z: f64) -> f64 {
+    if FUSED { x.mul_add(y, z) } else { x * y + z }
+}
+
+#[inline(always)]
 fn truth(holds: bool) -> f64 {
     if holds { 1.0 } else { 0.0 }
 }
 
+#[inline(always)]
 fn minimum(a: f64, b: f64) -> f64 {
     if a.is_nan() || b.is_nan() {
         f64::NAN
@@ -207,6 +246,7 @@ fn minimum(a: f64, b: f64) -> f64 {
     }
 }
 
+#[inline(always)]
 fn maximum(a: f64, b: f64) -> f64 {
     if a.is_nan() || b.is_nan() {
         f64::NAN
@@ -217,22 +257,27 @@ fn maximum(a: f64, b: f64) -> f64 {
     }
 }
 
+#[inline(always)]
 fn less(a: f64, b: f64) -> f64 {
     if a.is_nan() || b.is_nan() { f64::NAN } else { truth(a < b) }
 }
 
+#[inline(always)]
 fn less_equal(a: f64, b: f64) -> f64 {
     if a.is_nan() || b.is_nan() { f64::NAN } else { truth(a <= b) }
 }
 
+#[inline(always)]
 fn both(a: f64, b: f64) -> f64 {
     a * b
 }
 
+#[inline(always)]
 fn either(a: f64, b: f64) -> f64 {
     if a.is_nan() || b.is_nan() { f64::NAN } else { truth(a + b > 0.0) }
 }
 
+#[inline(always)]
 fn select(condition: f64, yes: f64, no: f64) -> f64 {
     if condition.is_nan() {
         f64::NAN

@@ -187,6 +187,11 @@ impl Program {
         Ok(prune(fused, outputs, parameters.len()))
     }
 
+    /// The part of the program that computes `outputs`.
+    pub(super) fn restricted(&self, outputs: Vec<ValueId>) -> Program {
+        prune(self.instructions.clone(), outputs, self.parameter_count)
+    }
+
     /// The steps, operands before users.
     pub fn instructions(&self) -> &[Instruction] {
         &self.instructions

@@ -64,6 +64,6 @@ mod tests {
         assert_eq!(value_with_error(0.0, 0.0), "0 ± 0");
         assert_eq!(value_with_error(-1e-20, 1.05e-12), "(0.0 ± 1.1)e-12");
         assert_eq!(value_with_error(5.1e14, 7.8e2), "(5.1000000000000 ± 0.0000000000078)e14");
-        assert_eq!(value_with_error(6.022e23, 1e15), "(6.0220000000 ± 0.0000000010)e23");
+        assert_eq!(value_with_error(6.022e23, 1e15), "(6.022000000 ± 0.000000010)e23");
     }
 }

@@ -1,0 +1,299 @@
+//! Three evaluators agree: tree evaluation, block interpreter, machine code.
+//!
+//! Interpreter and machine code are equal bit for bit (NaN payloads aside). Against the tree they differ by the single
+//! rounding of fused multiply-add; where a program has none they are equal bit for bit, else within a running error bound.
+
+use quadrel::expression::{BinaryFunction, ExpressionId, Function, Graph, SymbolId, evaluate};
+use quadrel::kernel::{Engine, Instruction, Kernel, KernelError, Program};
+
+/// xorshift64*: reproducible, with a seed for each case.
+struct Random(u64);
+
+impl Random {
+    fn next(&mut self) -> u64 {
+        self.0 ^= self.0 >> 12;
+        self.0 ^= self.0 << 25;
+        self.0 ^= self.0 >> 27;
+        self.0.wrapping_mul(0x2545_F491_4F6C_DD1D)
+    }
+
+    fn below(&mut self, n: usize) -> usize {
+        (self.next() >> 33) as usize % n
+    }
+
+    /// Mostly ordinary numbers, sometimes the edges of the format.
+    fn number(&mut self) -> f64 {
+        match self.below(16) {
+            0 => 0.0,
+            1 => -0.0,
+            2 => f64::INFINITY,
+            3 => f64::NEG_INFINITY,
+            4 => f64::NAN,
+            5 => 5e-324,
+            6 => 1e308,
+            7 => 1.0,
+            _ => (self.next() >> 11) as f64 / (1u64 << 53) as f64 * 6.0 - 3.0,
+        }
+    }
+}
+
+struct Formula {
+    graph: Graph,
+    root: ExpressionId,
+    variables: [SymbolId; 2],
+    parameter: SymbolId,
+}
+
+/// A formula of about `size` nodes over u, v and a parameter, with every kind of node.
+fn formula(random: &mut Random, size: usize, fused: bool) -> Formula {
+    let mut graph = Graph::new();
+    let variables = [graph.new_symbol("u"), graph.new_symbol("v")];
+    let parameter = graph.new_symbol("p");
+    let mut values: Vec<ExpressionId> =
+        [variables[0], variables[1], parameter].into_iter().map(|symbol| graph.symbol(symbol)).collect();
+    values.push(graph.fraction(3, 7));
+    values.push(graph.pi());
+    let mut truths: Vec<ExpressionId> = Vec::new();
+    for _ in 0..size {
+        // Recent values more often, so that formulas grow deep.
+        let mut pick = |values: &[ExpressionId]| {
+            let low = if random.below(2) == 0 { values.len().saturating_sub(6) } else { 0 };
+            values[low + random.below(values.len() - low)]
+        };
+        let (a, b) = (pick(&values), pick(&values));
+        let kind = random.below(18);
+        let value = match kind {
+            0 if fused => graph.add(a, b),
+            1 if fused => graph.subtract(a, b),
+            0..=3 => graph.multiply(a, b),
+            4 => graph.divide(a, b),
+            5 => graph.negate(a),
+            6..=8 => {
+                let functions = Function::NAMED;
+                graph.call(functions[random.below(functions.len())], a)
+            }
+            9 => graph.call2(BinaryFunction::NAMED[random.below(4)], a, b),
+            10 => graph.power(a, b),
+            11 => {
+                let exponents = [(2, 1), (3, 1), (-1, 1), (-2, 1), (1, 2), (3, 2), (-1, 2), (7, 1), (1, 3), (65, 1)];
+                let (numerator, denominator) = exponents[random.below(exponents.len())];
+                let exponent = graph.fraction(numerator, denominator);
+                graph.power(a, exponent)
+            }
+            12 => graph.call(Function::Sqrt, a),
+            13 => graph.call(Function::Abs, a),
+            _ => {
+                let truth = match kind {
+                    14 => graph.less(a, b),
+                    15 => graph.less_equal(a, b),
+                    16 if truths.len() > 1 => {
+                        let (x, y) = (truths[random.below(truths.len())], truths[random.below(truths.len())]);
+                        if random.below(2) == 0 { graph.and(x, y) } else { graph.or(x, y) }
+                    }
+                    _ if !truths.is_empty() => {
+                        let x = truths[random.below(truths.len())];
+                        graph.not(x)
+                    }
+                    _ => graph.less(b, a),
+                };
+                truths.push(truth);
+                graph.select(truth, a, b)
+            }
+        };
+        values.push(value);
+    }
+    let root = *values.last().unwrap();
+    Formula { graph, root, variables, parameter }
+}
+
+fn same_bits(a: f64, b: f64) -> bool {
+    a.to_bits() == b.to_bits() || (a.is_nan() && b.is_nan())
+}
+
+fn points(random: &mut Random, count: usize) -> (Vec<f64>, Vec<f64>) {
+    ((0..count).map(|_| random.number()).collect(), (0..count).map(|_| random.number()).collect())
+}
+
+#[test]
+fn interpreter_and_machine_code_give_the_same_bits() {
+    for seed in 1..400u64 {
+        let mut random = Random(seed.wrapping_mul(0x9E37_79B9_7F4A_7C15));
+        let size = 3 + random.below(40);
+        let f = formula(&mut random, size, true);
+        let program = Program::new(&f.graph, &[f.root], f.variables, &[f.parameter]).unwrap();
+        let interpreted = Kernel::interpreted(program.clone());
+        let compiled = Kernel::compiled(program).unwrap();
+        assert_eq!(compiled.engine(), Engine::MachineCode);
+        let count = [1, 3, 64, 257, 515][random.below(5)];
+        let (u, v) = points(&mut random, count);
+        let p = [random.number()];
+        let (mut a, mut b) = (vec![0.0; count], vec![0.0; count]);
+        interpreted.evaluate(&p, &u, &v, &mut a);
+        compiled.evaluate(&p, &u, &v, &mut b);
+        for i in 0..count {
+            assert!(same_bits(a[i], b[i]), "seed {seed}, point {i} ({}, {}): {} and {}", u[i], v[i], a[i], b[i]);
+        }
+    }
+}
+
+#[test]
+fn without_sums_the_tree_gives_the_same_bits_too() {
+    for seed in 1..400u64 {
+        let mut random = Random(seed.wrapping_mul(0xD134_2543_DE82_EF95));
+        let size = 3 + random.below(40);
+        let f = formula(&mut random, size, false);
+        let program = Program::new(&f.graph, &[f.root], f.variables, &[f.parameter]).unwrap();
+        let kernel = Kernel::interpreted(program);
+        let (u, v) = points(&mut random, 20);
+        let p = random.number();
+        let mut out = vec![0.0; 20];
+        kernel.evaluate(&[p], &u, &v, &mut out);
+        for i in 0..20 {
+            let tree = evaluate(&f.graph, &[f.root], |symbol| {
+                if symbol == f.variables[0] {
+                    u[i]
+                } else if symbol == f.variables[1] {
+                    v[i]
+                } else {
+                    p
+                }
+            })[0];
+            assert!(
+                same_bits(tree, out[i]),
+                "seed {seed} at ({}, {}), p = {p}: tree {tree}, kernel {}",
+                u[i],
+                v[i],
+                out[i]
+            );
+        }
+    }
+}
+
+/// A polynomial of products and sums of positive numbers: every operation is well conditioned, so one rounding less in a
+/// fused instruction moves the result by at most one unit in the last place for each operation.
+#[test]
+fn fused_sums_stay_within_one_rounding_for_each_operation() {
+    for seed in 1..200u64 {
+        let mut random = Random(seed.wrapping_mul(0xA076_1D64_78BD_642F));
+        let mut graph = Graph::new();
+        let variables = [graph.new_symbol("u"), graph.new_symbol("v")];
+        let mut values: Vec<ExpressionId> = variables.into_iter().map(|symbol| graph.symbol(symbol)).collect();
+        for _ in 0..20 {
+            let (a, b) = (values[random.below(values.len())], values[random.below(values.len())]);
+            let value = if random.below(2) == 0 { graph.add(a, b) } else { graph.multiply(a, b) };
+            let value = graph.call(Function::Sqrt, value);
+            values.push(value);
+        }
+        let root = *values.last().unwrap();
+        let program = Program::new(&graph, &[root], variables, &[]).unwrap();
+        let operations = program.len() as f64;
+        let (u, v) = (0.3 + random.below(100) as f64 / 37.0, 0.2 + random.below(100) as f64 / 41.0);
+        let tree = evaluate(&graph, &[root], |symbol| if symbol == variables[0] { u } else { v })[0];
+        let mut out = [0.0];
+        Kernel::interpreted(program).evaluate(&[], &[u], &[v], &mut out);
+        assert!((tree - out[0]).abs() <= operations * f64::EPSILON * tree.abs(), "seed {seed}: {tree} and {}", out[0]);
+    }
+}
+
+#[test]
+fn grid_sums_agree_between_engines_and_for_any_thread_count() {
+    let mut graph = Graph::new();
+    let variables = [graph.new_symbol("u"), graph.new_symbol("v")];
+    let p = graph.new_symbol("p");
+    let (u, v, pe) = (graph.symbol(variables[0]), graph.symbol(variables[1]), graph.symbol(p));
+    let (su, cv) = (graph.call(Function::Sin, u), graph.call(Function::Cos, v));
+    let product = graph.multiply(su, cv);
+    let shifted = graph.add(product, pe);
+    let square = graph.square(shifted);
+    let uv = graph.multiply(u, v);
+    let mixed = graph.call(Function::Exp, uv);
+    let sum = graph.add(square, mixed);
+    let root = graph.call(Function::Sqrt, sum);
+    let program = Program::new(&graph, &[root, su, cv, pe], variables, &[p]).unwrap();
+    let axis = |n: usize| -> (Vec<f64>, Vec<f64>) {
+        ((0..n).map(|i| (i as f64 + 0.5) / n as f64).collect(), vec![1.0 / n as f64; n])
+    };
+    let ((u, wu), (v, wv)) = (axis(531), axis(777));
+    let interpreted = Kernel::interpreted(program.clone()).sum_grid(&[0.5], &u, &wu, &v, &wv);
+    let compiled = Kernel::compiled(program).unwrap();
+    let mut results = Vec::new();
+    for threads in [1, 2, 4] {
+        let pool = rayon::ThreadPoolBuilder::new().num_threads(threads).build().unwrap();
+        results.push(pool.install(|| compiled.sum_grid(&[0.5], &u, &wu, &v, &wv)));
+    }
+    assert_eq!(results[0], results[1]);
+    assert_eq!(results[0], results[2]);
+    for (a, b) in interpreted.iter().zip(&results[0]) {
+        assert!((a - b).abs() <= 1e-13 * a.abs(), "{a} and {b}");
+    }
+    // Midpoint sums of sin over (0, 1): 1 - cos 1 up to 1/(24 n^2), exact calculus.
+    assert!((results[0][1] - (1.0 - 1f64.cos())).abs() < 1e-6);
+    assert!((results[0][3] - 0.5).abs() < 1e-14);
+}
+
+#[test]
+fn large_programs_fall_back_and_finish() {
+    let mut graph = Graph::new();
+    let variables = [graph.new_symbol("u"), graph.new_symbol("v")];
+    let (u, v) = (graph.symbol(variables[0]), graph.symbol(variables[1]));
+    let mut chain = u;
+    for i in 0..12_000 {
+        let sine = if i % 2 == 0 { graph.call(Function::Cos, chain) } else { graph.multiply(chain, v) };
+        chain = graph.add(sine, u);
+    }
+    let program = Program::new(&graph, &[chain], variables, &[]).unwrap();
+    assert!(matches!(Kernel::compiled(program.clone()), Err(KernelError::TooLargeToCompile(_))));
+    let kernel = Kernel::new(program, u64::MAX);
+    assert_eq!(kernel.engine(), Engine::Interpreter);
+    let mut out = [0.0];
+    kernel.evaluate(&[], &[0.3], &[0.7], &mut out);
+    assert!(out[0].is_finite());
+    while graph.reachable(&[chain]).len() <= Graph::MAXIMUM_FORMULA_NODES {
+        let sine = graph.call(Function::Sin, chain);
+        chain = graph.add(sine, u);
+    }
+    assert!(matches!(Program::new(&graph, &[chain], variables, &[]), Err(KernelError::TooLarge(_))));
+}
+
+#[test]
+fn parameters_are_inputs() {
+    let mut graph = Graph::new();
+    let variables = [graph.new_symbol("u"), graph.new_symbol("v")];
+    let p = graph.new_symbol("p");
+    let (u, pe) = (graph.symbol(variables[0]), graph.symbol(p));
+    let root = graph.multiply(u, pe);
+    let kernel = Kernel::compiled(Program::new(&graph, &[root], variables, &[p]).unwrap()).unwrap();
+    for value in [1.0, 2.5, -3.0] {
+        let mut out = [0.0; 5];
+        kernel.evaluate(&[value], &[2.0; 5], &[0.0; 5], &mut out);
+        assert_eq!(out, [2.0 * value; 5]);
+    }
+}
+
+#[test]
+fn every_kind_of_node_occurs_in_generated_formulas() {
+    let mut kinds = std::collections::HashSet::new();
+    let mut fused = 0;
+    for seed in 1..200u64 {
+        let mut random = Random(seed.wrapping_mul(0x9E37_79B9_7F4A_7C15));
+        let f = formula(&mut random, 30, true);
+        for id in f.graph.reachable(&[f.root]) {
+            kinds.insert(std::mem::discriminant(&f.graph.node(id)));
+        }
+        let program = Program::new(&f.graph, &[f.root], f.variables, &[f.parameter]).unwrap();
+        fused += program
+            .instructions()
+            .iter()
+            .filter(|i| {
+                matches!(
+                    i,
+                    Instruction::MultiplyAdd(..)
+                        | Instruction::NegateMultiplyAdd(..)
+                        | Instruction::MultiplySubtract(..)
+                )
+            })
+            .count();
+    }
+    assert!(kinds.len() >= 16, "only {} kinds of nodes occur", kinds.len());
+    assert!(fused >= 5, "only {fused} fused instructions occur");
+}
