@@ -166,12 +166,19 @@ fn assemble(target: &Target, run: &mut Run<'_>, outcomes: &FxHashMap<FunctionalI
     let magnitude = combined.iter().map(|outcome| outcome.magnitude).fold(0.0, f64::max);
     let negligible = largest < NEGLIGIBLE * magnitude;
     let reference = if negligible { magnitude } else { largest };
-    let allowed = run.settings.absolute.max(run.settings.relative * reference);
+    // A value that is zero within its rounding cannot be had more exactly, whatever the tolerance.
+    let rounding = combined.iter().map(|outcome| outcome.rounding).fold(0.0, f64::max);
+    let zero =
+        !behind.is_empty() && combined.iter().all(|outcome| outcome.bounded.value.abs() <= outcome.bounded.error);
+    let floor = if zero { 4.0 * rounding } else { 0.0 };
+    let allowed = run.settings.absolute.max(run.settings.relative * reference).max(floor);
     let worst = components.iter().map(|component| component.error).fold(0.0, f64::max);
     let finite = components.iter().all(|component| component.value.is_finite() && component.error.is_finite());
     let reached = finite && worst <= allowed;
     let mut warnings = Vec::new();
-    if negligible && magnitude > 0.0 && !behind.is_empty() {
+    if zero && floor >= run.settings.relative * reference {
+        warnings.push("zero within the rounding errors of the integrand".to_owned());
+    } else if negligible && magnitude > 0.0 && !behind.is_empty() {
         warnings.push(format!(
             "the value is negligible beside the integral of |f| ({magnitude:.3e}); the tolerance is relative to that"
         ));
@@ -251,6 +258,7 @@ fn combine(component: ExpressionId, run: &mut Run<'_>, known: &FxHashMap<SymbolI
         run.graph.symbols_of(&[component]).into_iter().filter(|symbol| known.contains_key(symbol)).collect();
     let own = evaluate_bounded(&run.graph, &[component], |symbol| run.bindings.value(symbol))[0];
     let mut error = own.error;
+    let mut rounding = own.error;
     let mut magnitude = if used.is_empty() { own.value.abs() } else { 0.0 };
     for &symbol in &used {
         let slope = differentiate(&mut run.graph, component, symbol);
@@ -264,8 +272,9 @@ fn combine(component: ExpressionId, run: &mut Run<'_>, known: &FxHashMap<SymbolI
         let steepest = at(0.0).max(at(result.bounded.error)).max(at(-result.bounded.error));
         error += steepest * result.bounded.error;
         magnitude += at(0.0) * result.magnitude;
+        rounding += at(0.0) * result.rounding;
     }
-    Outcome { bounded: Bounded { value: own.value, error }, magnitude }
+    Outcome { bounded: Bounded { value: own.value, error }, magnitude, rounding }
 }
 
 /// Principal moments and axes of a symmetric tensor; the moments move by at most the norm of the error (Weyl).

@@ -24,7 +24,7 @@ pub struct IntegralError {
     /// What was found and where.
     pub message: String,
     /// The point of the surface, where there is one.
-    pub place: Option<Place>,
+    pub place: Option<Box<Place>>,
     /// What to change.
     pub hint: Option<String>,
 }

@@ -43,11 +43,10 @@ pub(super) fn densities(
         FunctionalKind::Inertia { density: rho, about: Some(point) } => {
             let one = graph.integer(1);
             let mass = rho.unwrap_or(one);
-            let mut r = [one; 3];
-            for axis in 0..3 {
+            let r = std::array::from_fn(|axis| {
                 let position = graph.symbol(symbols.position[axis]);
-                r[axis] = graph.subtract(position, point[axis]);
-            }
+                graph.subtract(position, point[axis])
+            });
             tensor_entries(graph, &r)
                 .into_iter()
                 .map(|entry| {
@@ -67,12 +66,11 @@ fn mass_and_arm(
     symbols: &SurfaceSymbols,
 ) -> (ExpressionId, Vector) {
     let one = graph.integer(1);
-    let mut r = [one; 3];
-    for axis in 0..3 {
+    let r = std::array::from_fn(|axis| {
         let position = graph.symbol(symbols.position[axis]);
         let origin = graph.symbol(pivot.symbols[axis]);
-        r[axis] = graph.subtract(position, origin);
-    }
+        graph.subtract(position, origin)
+    });
     (rho.unwrap_or(one), r)
 }
 

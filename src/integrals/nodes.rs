@@ -144,13 +144,13 @@ impl<'a> SurfaceNodes<'a> {
             format!("{} is undefined at {} = {u}, {} = {v}: `{expression}`", self.patch.name, name(0), name(1)),
         )
         .with_hint("cut the region so that it stays inside the domain, or trim it with `where`");
-        error.place = Some(Place {
+        error.place = Some(Box::new(Place {
             patch: self.patch.name.clone(),
             variables: [(name(0), u), (name(1), v)],
             position: [position[0], position[1], position[2]],
             expression,
             value: cause.map_or(f64::NAN, |cause| cause.value),
-        });
+        }));
         error
     }
 }

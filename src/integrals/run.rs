@@ -19,6 +19,8 @@ pub(super) struct Outcome {
     pub(super) bounded: Bounded,
     /// Integral of the absolute value behind it: what the tolerance is relative to where the value is negligible.
     pub(super) magnitude: f64,
+    /// The part of the error that is rounding.
+    pub(super) rounding: f64,
 }
 
 /// What one functional gave and what it took.
@@ -206,6 +208,7 @@ impl Run<'_> {
         let count = shares.first().map_or(0, |share| share.2);
         let mut sums = vec![Bounded::exact(0.0); count];
         let mut magnitudes = vec![0.0; count];
+        let mut roundings = vec![0.0; count];
         let mut outcome = FunctionalOutcome { results: Vec::new(), evaluations: 0, seconds: 0.0, limit: None };
         for &(pass, first, count, weight) in shares {
             let (integral, seconds) = &integrals[pass];
@@ -221,6 +224,7 @@ impl Run<'_> {
                 }
                 sums[k] = sums[k].add(Bounded { value: integral.values[index], error }.scale(weight));
                 magnitudes[k] += weight * integral.magnitudes[index];
+                roundings[k] += weight * integral.rounding[index];
             }
             outcome.evaluations += integral.evaluations;
             outcome.seconds += seconds;
@@ -230,7 +234,11 @@ impl Run<'_> {
         outcome.results = combine(kind, &sums, pivot)
             .into_iter()
             .enumerate()
-            .map(|(k, bounded)| Outcome { bounded, magnitude: size.get(k).copied().unwrap_or(bounded.value.abs()) })
+            .map(|(k, bounded)| Outcome {
+                bounded,
+                magnitude: size.get(k).copied().unwrap_or(bounded.value.abs()),
+                rounding: if count == 1 { roundings[0] } else { 0.0 },
+            })
             .collect();
         if count == 10 {
             let largest = magnitudes[4..7].iter().sum();
@@ -330,7 +338,7 @@ fn failure_message(question: &Question<'_>, graph: &Graph, failure: Failure) -> 
                 format!("{name} is undefined at {u} = {at_u}, {v} = {at_v}: `{}` is {}", place.expression, place.value),
             )
             .with_hint("cut the region so that it stays inside the domain, or trim it with `where`");
-            error.place = Some(place);
+            error.place = Some(Box::new(place));
             error
         }
         Failure::Divergent { outer, inner, exponent } => {

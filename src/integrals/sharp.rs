@@ -50,8 +50,8 @@ pub(super) fn sharp_places(
             continue;
         };
         let worth_it = match feature {
-            Feature::LargeAt(_) | Feature::StepAt(_) => best - worst > PEAK_EXPONENT_RANGE,
-            Feature::SmallAt(_) => worst < best,
+            Feature::Large(_) | Feature::Step(_) => best - worst > PEAK_EXPONENT_RANGE,
+            Feature::Small(_) => worst < best,
         };
         if !worth_it {
             continue;
@@ -125,8 +125,8 @@ impl Grid {
 
 fn score(value: f64, feature: Feature) -> f64 {
     match feature {
-        Feature::LargeAt(_) => value,
-        Feature::SmallAt(_) | Feature::StepAt(_) => -value.abs(),
+        Feature::Large(_) => value,
+        Feature::Small(_) | Feature::Step(_) => -value.abs(),
     }
 }
 
@@ -183,7 +183,7 @@ impl<L: Fn(f64) -> Segment> Search<'_, L> {
                 }
             }
         }
-        let small = matches!(self.feature, Feature::SmallAt(_));
+        let small = matches!(self.feature, Feature::Small(_));
         if small && best < SMALL_FRACTION * typical {
             return None;
         }
@@ -212,8 +212,8 @@ impl<L: Fn(f64) -> Segment> Search<'_, L> {
     /// by its own size. `None` where the peak is wide or the formula does not change along this axis.
     fn width(&self, here: [f64; 2], axis: usize, best: f64, typical: f64) -> Option<f64> {
         let change = match self.feature {
-            Feature::LargeAt(_) | Feature::StepAt(_) => 0.5,
-            Feature::SmallAt(_) => best.abs().max(1e-14 * typical.abs()),
+            Feature::Large(_) | Feature::Step(_) => 0.5,
+            Feature::Small(_) => best.abs().max(1e-14 * typical.abs()),
         };
         let mut distance = 1e-12;
         while distance < WIDE {

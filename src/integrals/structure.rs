@@ -29,11 +29,11 @@ pub(super) fn kink_formulas(graph: &mut Graph, roots: &[ExpressionId], variables
 #[derive(Clone, Copy, PartialEq, Debug)]
 pub(super) enum Feature {
     /// Where this is smallest in absolute value, the integrand is nearly singular: divisors, bases of roots and logarithms.
-    SmallAt(ExpressionId),
+    Small(ExpressionId),
     /// Where this is largest, the integrand peaks: exponents, arguments that a bump is made of.
-    LargeAt(ExpressionId),
+    Large(ExpressionId),
     /// Where this crosses zero, the integrand has a steep step: arguments of tanh, erf, atan, which saturate.
-    StepAt(ExpressionId),
+    Step(ExpressionId),
 }
 
 /// The features of `roots` that depend on a variable.
@@ -41,18 +41,18 @@ pub(super) fn features(graph: &Graph, roots: &[ExpressionId], variables: [Symbol
     let mut found = Vec::new();
     for id in graph.reachable(roots) {
         let feature = match graph.node(id) {
-            Node::Call(Function::Exp, a) => Feature::LargeAt(a),
-            Node::Call(Function::Tanh | Function::Erf | Function::Erfc | Function::Atan, a) => Feature::StepAt(a),
-            Node::Call(Function::Sqrt | Function::Log, a) => Feature::SmallAt(a),
-            Node::Divide(_, b) => Feature::SmallAt(b),
+            Node::Call(Function::Exp, a) => Feature::Large(a),
+            Node::Call(Function::Tanh | Function::Erf | Function::Erfc | Function::Atan, a) => Feature::Step(a),
+            Node::Call(Function::Sqrt | Function::Log, a) => Feature::Small(a),
+            Node::Divide(_, b) => Feature::Small(b),
             Node::Power(base, exponent) => match graph.as_number(exponent) {
                 Some(number) if number.is_integer() && !number.is_negative() => continue,
-                _ => Feature::SmallAt(base),
+                _ => Feature::Small(base),
             },
             _ => continue,
         };
         let formula = match feature {
-            Feature::SmallAt(a) | Feature::LargeAt(a) | Feature::StepAt(a) => a,
+            Feature::Small(a) | Feature::Large(a) | Feature::Step(a) => a,
         };
         if !found.contains(&feature) && variables.iter().any(|&variable| graph.depends_on(formula, variable)) {
             found.push(feature);

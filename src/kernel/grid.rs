@@ -144,7 +144,8 @@ impl<'a> CompiledGrid<'a> {
         let mut buffers: Buffers = code.buffers();
         let mut totals = vec![0.0; outputs];
         let size = self.weights.len();
-        for row in block * ROWS..((block + 1) * ROWS).min(wu.len()) {
+        let rows = block * ROWS..((block + 1) * ROWS).min(wu.len());
+        for (row, &row_weight) in wu.iter().enumerate().take(rows.end).skip(rows.start) {
             let mut next = 0;
             code.set_uniforms(&mut buffers, |_| {
                 next += 1;
@@ -160,7 +161,7 @@ impl<'a> CompiledGrid<'a> {
                 start = end;
             }
             for (total, partial) in totals.iter_mut().zip(&partial) {
-                *total += wu[row] * row_sum(partial);
+                *total += row_weight * row_sum(partial);
             }
         }
         totals

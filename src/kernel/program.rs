@@ -182,7 +182,7 @@ impl Program {
             };
             values.insert(id, value);
         }
-        let outputs = outputs.iter().map(|output| values[output]).collect();
+        let outputs: Vec<ValueId> = outputs.iter().map(|output| values[output]).collect();
         let fused = fuse(&builder.instructions, &outputs);
         Ok(prune(fused, outputs, parameters.len()))
     }
@@ -332,7 +332,7 @@ impl Builder {
 /// Sums and differences with a product that nothing else uses become one fused instruction each.
 ///
 /// Only products of the sum's own stage are fused: a product that a table or a row could hold stays outside the loop.
-fn fuse(instructions: &[Instruction], outputs: &Vec<ValueId>) -> Vec<Instruction> {
+fn fuse(instructions: &[Instruction], outputs: &[ValueId]) -> Vec<Instruction> {
     let stages = stages_of(instructions);
     let mut uses = vec![0u32; instructions.len()];
     for operand in instructions.iter().flat_map(Instruction::operands).chain(outputs.iter().copied()) {

@@ -89,10 +89,10 @@ impl Model {
         }
         for patch in &self.patches {
             for interval in &patch.intervals {
-                if let Some(diagnostic) = self.crossed(interval, &bindings) {
-                    if !diagnostics.contains(&diagnostic) {
-                        diagnostics.push(diagnostic);
-                    }
+                if let Some(diagnostic) = self.crossed(interval, &bindings)
+                    && !diagnostics.contains(&diagnostic)
+                {
+                    diagnostics.push(diagnostic);
                 }
             }
         }

@@ -32,6 +32,8 @@ pub struct Sides {
     pub outer_independent: bool,
     /// Whether the function is independent of the inner variable.
     pub inner_independent: bool,
+    /// Integral of the rounding error of each component over the region, 0 where it is not known.
+    pub rounding: Vec<f64>,
 }
 
 /// An integral and how well it is known.
@@ -45,6 +47,8 @@ pub struct Integral {
     pub magnitudes: Vec<f64>,
     /// Evaluations of the function.
     pub evaluations: u64,
+    /// The part of the errors that no refinement can reduce: rounding.
+    pub rounding: Vec<f64>,
     /// Why the tolerance was not reached; `None` if it was.
     pub limit: Option<Limit>,
 }
@@ -98,11 +102,14 @@ pub fn integrate(
     keep_going: &dyn Fn(u64) -> bool,
 ) -> Result<Integral, Failure> {
     let components = function.components();
+    let rounding = |k: usize, sum: &LineSum| ROUNDING_PER_SUM * sum.magnitudes[k] + 2.0 * sides.rounding[k];
     let mut spent = 0;
     let (mut values, mut magnitudes) = coarse(function, sides, &mut spent);
     for attempt in 0..4 {
         // Half of what is allowed for the outer rule, a quarter for the inner integrals, the rest for rounding.
-        let allowed: Vec<f64> = (0..components).map(|k| tolerance(k, values[k], magnitudes[k])).collect();
+        // Nothing can be had below the rounding of the function itself.
+        let allowed: Vec<f64> =
+            (0..components).map(|k| tolerance(k, values[k], magnitudes[k]).max(4.0 * sides.rounding[k])).collect();
         let length: f64 = sides.outer.iter().map(|segment| segment.to - segment.from).sum();
         let inner_tolerances: Vec<Tolerance> = (0..components)
             .map(|k| Tolerance {
@@ -118,10 +125,10 @@ pub fn integrate(
         spent += sum.evaluations;
         values.clone_from(&sum.values);
         magnitudes.clone_from(&sum.magnitudes);
-        let errors: Vec<f64> = (0..components)
-            .map(|k| sum.errors[k].max(CLAIM * allowed[k]) + ROUNDING_PER_SUM * sum.magnitudes[k])
-            .collect();
-        let short = (0..components).any(|k| errors[k] > tolerance(k, values[k], magnitudes[k]));
+        let errors: Vec<f64> =
+            (0..components).map(|k| sum.errors[k].max(CLAIM * allowed[k]) + rounding(k, &sum)).collect();
+        let short =
+            (0..components).any(|k| errors[k] > tolerance(k, values[k], magnitudes[k]).max(8.0 * sides.rounding[k]));
         let limit = match sum.outcome {
             Outcome::Stopped => Some(Limit::Stopped),
             _ if !short => None,
@@ -132,7 +139,8 @@ pub fn integrate(
             // The first guess at the size of the integral was too large: once more with the better one.
             Outcome::Reached => continue,
         };
-        return Ok(Integral { values, errors, magnitudes, evaluations: spent, limit });
+        let rounding = (0..components).map(|k| rounding(k, &sum)).collect();
+        return Ok(Integral { values, errors, magnitudes, evaluations: spent, rounding, limit });
     }
     unreachable!("the last attempt returns")
 }

@@ -67,11 +67,11 @@ impl Checker {
             .map(|&variable| Name { text: self.graph.symbol_name(variable).to_owned(), span })
             .collect();
         let region = self.region(&names, region, syntax.name.span)?;
-        for i in 0..2 {
+        for (i, name) in names.iter().enumerate() {
             if region.dimensions[i] != patch.variable_dimensions[i] {
                 let message = format!(
                     "`{}` is in {}, in `{}` it is in {}",
-                    names[i].text,
+                    name.text,
                     shown(region.dimensions[i]),
                     patch.name,
                     shown(patch.variable_dimensions[i])
