@@ -30,7 +30,7 @@ pub(super) fn fused() -> bool {
 /// Receives the block of one output that starts at a point: (output, first point, values).
 type Sink<'a> = &'a mut dyn FnMut(usize, usize, &[f64]);
 
-/// Runs `program` at the points (u[i], v[i]); values that depend on no variable are computed once.
+/// Runs `program` at the points (`u[i]`, `v[i]`); values that depend on no variable are computed once.
 pub(super) fn run(program: &Program, parameters: &[f64], u: &[f64], v: &[f64], sink: Sink<'_>) {
     #[cfg(target_arch = "x86_64")]
     if fused() {

@@ -129,7 +129,7 @@ impl Kernel {
         code
     }
 
-    /// Values of all outputs at the points (u[i], v[i]): `out[k * u.len() + i]` is output k at point i.
+    /// Values of all outputs at the points (`u[i]`, `v[i]`): `out[k * u.len() + i]` is output k at point i.
     ///
     /// # Panics
     /// If the lengths do not fit: `v` as long as `u`, `out` as long as `u` times the number of outputs, one parameter value

@@ -283,28 +283,33 @@ fn integrate_outer(
         inner: failure.second,
         component: failure.component,
     };
-    if sides.outer_independent {
-        return Ok(constant_line(line, &sides.outer));
-    }
     let mut evaluations = 0;
-    if sides.outer_periodic
+    let sum = if sides.outer_independent {
+        constant_line(line, &sides.outer)
+    } else if sides.outer_periodic
         && let [segment] = sides.outer[..]
         && let Some(sum) = integrate_period(line, segment, tolerances, &mut evaluations).map_err(not_finite)?
     {
-        return Ok(sum);
-    }
-    let mut sum = integrate_segments(line, &sides.outer, tolerances, budget, keep_going).map_err(not_finite)?;
-    sum.evaluations += evaluations;
+        sum
+    } else {
+        let mut sum = integrate_segments(line, &sides.outer, tolerances, budget, keep_going).map_err(not_finite)?;
+        sum.evaluations += evaluations;
+        sum
+    };
     let (divergent, samples) = sum.divergent;
-    if sum.outcome != Outcome::Reached || 2 * divergent > samples {
-        if 2 * divergent > samples {
-            return Err(divergent_inside(line, sides));
-        }
-        if let Some((end, exponent)) = sum.growth {
-            return Err(Failure::Divergent { outer: Some(end), inner: None, exponent });
-        }
+    if 2 * divergent > samples {
+        return Err(divergent_inside(line, sides));
     }
-    Ok(sum)
+    if let (Some((end, exponent)), true) = (sum.growth, sum.outcome != Outcome::Reached) {
+        return Err(Failure::Divergent { outer: Some(end), inner: None, exponent });
+    }
+    match sum.values.iter().position(|value| !value.is_finite()) {
+        Some(component) => {
+            let outer = sides.outer.first().map_or(0.5, |segment| Map::new(*segment, (1, 1)).at(0.5).0);
+            Err(Failure::NotFinite { outer, inner: None, component })
+        }
+        None => Ok(sum),
+    }
 }
 
 /// Names the end of the inner line at which the middle line diverges.

@@ -187,15 +187,8 @@ impl Checker {
     /// Enters a definition; its name must be free.
     fn declare(&mut self, syntax: &DefinitionSyntax) {
         let name = &syntax.name;
+        // The parser has said so.
         if is_reserved(&name.text) {
-            self.report(
-                Diagnostic::error(
-                    "reserved-name",
-                    name.span,
-                    format!("`{}` has a meaning of its own and cannot be defined", name.text),
-                )
-                .with_hint(format!("choose another name, such as `{}_1`", name.text)),
-            );
             return;
         }
         if let Some(&first) = self.by_name.get(&name.text) {

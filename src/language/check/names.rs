@@ -160,13 +160,6 @@ impl Checker {
 
     pub(super) fn distinct_arguments(&mut self, arguments: &[Name]) -> Checked<()> {
         for (position, argument) in arguments.iter().enumerate() {
-            if super::is_reserved(&argument.text) {
-                return Err(self.error(
-                    "reserved-name",
-                    argument.span,
-                    format!("`{}` has a meaning of its own and cannot be an argument", argument.text),
-                ));
-            }
             if arguments[..position].iter().any(|earlier| earlier.text == argument.text) {
                 return Err(self.error(
                     "doubled-name",
@@ -272,7 +265,9 @@ impl Checker {
             if matches!(name, "x" | "y" | "z" | "nx" | "ny" | "nz" | "K" | "H") {
                 Some(format!("`{name}` has a meaning only inside an integrand or after `where`"))
             } else {
-                nearest(name, candidates).map(|near| format!("did you mean `{near}`?"))
+                nearest(name, candidates)
+                    .filter(|_| name.chars().count() > 1)
+                    .map(|near| format!("did you mean `{near}`?"))
             }
         };
         self.report(match hint {

@@ -1,0 +1,216 @@
+//! Checks against facts from outside the project; each names its source.
+
+use approx::assert_relative_eq;
+use quadrel::integrals::{Answer, AnswerKind, NoProgress, Settings, answer};
+use quadrel::language::{Source, check};
+use std::f64::consts::PI;
+
+fn answers(sheet: &str) -> Vec<Answer> {
+    let model = check(Source::new("test.sheet", sheet)).unwrap_or_else(|errors| {
+        panic!("{}", errors.diagnostics.iter().map(|d| errors.source.draw(d)).collect::<String>())
+    });
+    let bindings = model.bind(&[]).unwrap_or_else(|errors| panic!("{errors}"));
+    answer(&model, &bindings, &[], &Settings::default(), &NoProgress).unwrap()
+}
+
+/// The one answer of a sheet, component by component; each must hold the expected value within its error.
+fn holds(sheet: &str, expected: &[f64]) {
+    let found = answers(sheet);
+    let last = found.last().unwrap();
+    assert_eq!(last.kind, AnswerKind::Estimate, "{sheet}\n{:?}", last.reason);
+    assert_eq!(last.components.len(), expected.len(), "{sheet}");
+    for (component, &expected) in last.components.iter().zip(expected) {
+        let rounding = 4.0 * f64::EPSILON * expected.abs();
+        assert!(
+            (component.value - expected).abs() <= component.error + rounding,
+            "{sheet}\n{}: {} ± {:e}, expected {expected}",
+            component.label,
+            component.value,
+            component.error
+        );
+    }
+}
+
+const SPHERE: &str = "s(u, v) = (r*sin(v)*cos(u), r*sin(v)*sin(u), r*cos(v)) on v in [0, pi], u in [0, 2*pi]\n";
+// phi_u x phi_v points inward in the order (u, v); this one points outward.
+const OUTWARD: &str = "s(v, u) = (r*sin(v)*cos(u), r*sin(v)*sin(u), r*cos(v)) on v in [0, pi], u in [0, 2*pi]\n";
+const TORUS: &str = "R = 3\nr = 1\ns(u, v) = ((R + r*cos(v))*cos(u), (R + r*cos(v))*sin(u), r*sin(v)) on u in [0, 2*pi], v in [0, 2*pi]\n";
+
+/// Handbook formulas for thin shells (from memory: any handbook of mechanics), unit mass per area.
+#[test]
+fn handbook_shells() {
+    let r = 0.7_f64;
+    let area = 4.0 * PI * r * r;
+    let moment = 2.0 / 3.0 * area * r * r;
+    holds(&format!("r = 0.7\n{SPHERE}a = inertia(s)"), &[moment, moment, moment, 0.0, 0.0, 0.0]);
+    // Cylinder of radius r and height h, open ends: I_axis = m r^2, I_across = m (r^2/2 + h^2/12).
+    let (r, h) = (0.4_f64, 1.5_f64);
+    let m = 2.0 * PI * r * h;
+    holds(
+        "r = 0.4\nh = 1.5\ns(u, z0) = (r*cos(u), r*sin(u), z0) on u in [0, 2*pi], z0 in [0, h]\na = inertia(s)",
+        &[m * (r * r / 2.0 + h * h / 12.0), m * (r * r / 2.0 + h * h / 12.0), m * r * r, 0.0, 0.0, 0.0],
+    );
+    // Cone without base: area pi r l, centroid a third of the height above the base, I_axis = m r^2/2.
+    let (r, h) = (3.0_f64, 4.0_f64);
+    let m = PI * r * 5.0;
+    let cone = "r = 3\nh = 4\ns(u, t) = (r*t*cos(u), r*t*sin(u), h*(1 - t)) on u in [0, 2*pi], t in [0, 1]\n";
+    holds(&format!("{cone}a = area(s)"), &[m]);
+    holds(&format!("{cone}a = centroid(s)"), &[0.0, 0.0, h / 3.0]);
+    holds(&format!("{cone}a = inertia(s, (0, 0, 0)).zz"), &[m * r * r / 2.0]);
+    // Hemispherical shell: centroid at r/2.
+    holds(
+        "r = 2\ns(v, u) = (r*sin(v)*cos(u), r*sin(v)*sin(u), r*cos(v)) on v in [0, pi/2], u in [0, 2*pi]\na = centroid(s)",
+        &[0.0, 0.0, 1.0],
+    );
+    // Spherical cap of height h: 2 pi r h (Archimedes).
+    holds(
+        "r = 2\ns(v, u) = (r*sin(v)*cos(u), r*sin(v)*sin(u), r*cos(v)) on v in [0, acos(3/4)], u in [0, 2*pi]\na = area(s)",
+        &[2.0 * PI * 2.0 * 0.5],
+    );
+}
+
+/// Pappus-Guldinus: a torus has area 4 pi^2 R r and volume 2 pi^2 R r^2.
+#[test]
+fn pappus_guldinus() {
+    holds(&format!("{TORUS}a = area(s)"), &[12.0 * PI * PI]);
+    holds(&format!("{TORUS}a = volume(s)"), &[6.0 * PI * PI]);
+}
+
+/// Gauss-Bonnet: the integral of K over a closed surface is 2 pi times its Euler characteristic.
+#[test]
+fn gauss_bonnet() {
+    holds(&format!("r = 5/3\n{SPHERE}a = integral(K, s)"), &[4.0 * PI]);
+    holds(&format!("{TORUS}a = integral(K, s)"), &[0.0]);
+    holds(
+        "s(u, v) = (cos(v)*cos(u), 3/2*cos(v)*sin(u), 9/4*sin(v)) on u in [0, 2*pi], v in [-pi/2, pi/2]\na = integral(K, s)",
+        &[4.0 * PI],
+    );
+}
+
+/// The sign of H follows the normal: with the outward normal a sphere of radius r has H = -1/r.
+#[test]
+fn mean_curvature_follows_the_normal() {
+    holds(&format!("r = 2\n{OUTWARD}a = integral(H, s)"), &[-0.5 * 16.0 * PI]);
+    holds(&format!("r = 2\n{OUTWARD}a = integral(H, -s)"), &[0.5 * 16.0 * PI]);
+    holds(&format!("r = 2\n{SPHERE}a = integral(H^2, s)"), &[4.0 * PI]);
+}
+
+/// Divergence theorem: the flux of any field with divergence 1 is the volume.
+#[test]
+fn divergence_theorem() {
+    let volume = 4.0 / 3.0 * PI * 2.0 * 2.5 / 3.0;
+    let ellipsoid = "s(u, v) = (2*cos(v)*cos(u), 5/2*cos(v)*sin(u), sin(v)/3) on u in [0, 2*pi], v in [-pi/2, pi/2]\n";
+    for field in ["(x, y, z)/3", "(x, 0, 0)", "(0, y, 0)", "(y^2, x*z, z)", "(x + sin(y), z^3, x*y)"] {
+        let scale = if field == "(x, y, z)/3" { "" } else { "1*" };
+        holds(&format!("{ellipsoid}a = {scale}flux({field}, s)"), &[volume]);
+    }
+    holds(&format!("{ellipsoid}a = volume(s)"), &[volume]);
+    holds(&format!("{ellipsoid}a = volume(-s)"), &[-volume]);
+    // A constant field has no flux through a closed surface.
+    holds(&format!("{ellipsoid}a = flux((1, 2, 3), s)"), &[0.0]);
+}
+
+/// Ellipsoid 3, 2, 1: Legendre's formula with incomplete elliptic integrals, evaluated with mpmath at 30 digits
+/// (48.8821463025820596957195457288).
+#[test]
+fn ellipsoid_by_elliptic_integrals() {
+    holds(
+        "s(u, v) = (3*sin(v)*cos(u), 2*sin(v)*sin(u), cos(v)) on v in [0, pi], u in [0, 2*pi]\na = area(s)",
+        &[48.882_146_302_582_06],
+    );
+}
+
+/// Geodetic Reference System 1980 (Moritz 1980, published tables): mean radii of the ellipsoid. R3, the radius of the sphere
+/// of equal volume, is printed as 6371000.7900 m; R2, of equal surface, as 6371007.1810 m (its last digit is 1 too high).
+#[test]
+fn geodetic_constants() {
+    let sheet = "a = 6378137\nf = 1/298.257222101\n\
+        s(v, u) = (a*cos(v)*cos(u), a*cos(v)*sin(u), a*(1 - f)*sin(v)) on v in [-pi/2, pi/2], u in [0, 2*pi]\n";
+    let radius = |question: &str| answers(&format!("{sheet}{question}"))[0].components[0].value;
+    assert_relative_eq!(radius("R2 = sqrt(area(s)/(4*pi))"), 6_371_007.181_0, max_relative = 2e-11);
+    assert_relative_eq!(radius("R3 = cbrt(3*abs(volume(s))/(4*pi))"), 6_371_000.790_0, max_relative = 1e-11);
+}
+
+/// Viviani's window: the part of a sphere of diameter 2a inside a cylinder through its center has the area
+/// (2 pi - 4) a^2 on the upper half (Viviani 1692); Steinmetz: two crossed cylinders of radius r share 16 r^2 of surface.
+#[test]
+fn classical_windows() {
+    holds(
+        "a = 2\ns(t, rho) = (rho*cos(t), rho*sin(t), sqrt(a^2 - rho^2)) on t in [-pi/2, pi/2], rho in [0, a*cos(t)]\nw = integral(z, s)",
+        // The integral of z over a piece of a sphere is its radius times the area of the projection, a disc of radius a/2.
+        &[2.0 * PI],
+    );
+    holds(
+        "r = 5/3\ns(u, y0) = (r*cos(u), y0, r*sin(u)) on u in [-pi/2, pi/2], y0 in [-r*cos(u), r*cos(u)]\na = 4*area(s)",
+        &[16.0 * 25.0 / 9.0],
+    );
+}
+
+/// Rigid motions, mirror images and multiplicities change nothing but what they say.
+#[test]
+fn moved_copies() {
+    let sheet =
+        format!("{TORUS}t = translate(s, (10, 0, 0))\nm = mirror(s, (1, 2, 2))\nq = rotate(s, (1, 1, 0), pi/3)\n");
+    let volume = 6.0 * PI * PI;
+    for chain in ["t", "m", "q"] {
+        holds(&format!("{sheet}a = volume({chain})"), &[volume]);
+        holds(&format!("{sheet}a = area({chain})"), &[12.0 * PI * PI]);
+    }
+    holds(&format!("{sheet}a = volume(2*s - t)"), &[volume]);
+    holds(&format!("{sheet}a = area(2*s)"), &[24.0 * PI * PI]);
+    holds(&format!("{sheet}a = centroid(t)"), &[10.0, 0.0, 0.0]);
+}
+
+/// Units: the same surface in mm and m; answers combine with correlated errors.
+#[test]
+fn units_and_combinations() {
+    let square = |unit: &str, side: &str| {
+        format!("b = {side} [{unit}]\ns(u, v) = (b*u, b*v, 0 [m]) on u in [0, 1], v in [0, 1]\na = area(s)")
+    };
+    holds(&square("mm", "2500"), &[6.25]);
+    holds(&square("m", "2.5"), &[6.25]);
+    let found = answers(&format!("{TORUS}one = area(s)/area(s)"));
+    assert!((found[0].components[0].value - 1.0).abs() <= found[0].components[0].error);
+    assert!(found[0].components[0].error < 1e-14, "equal integrals cancel: {:e}", found[0].components[0].error);
+}
+
+/// A surface is a surface whatever its parametrization: five charts of one sphere.
+#[test]
+fn rival_parametrizations() {
+    let area = 4.0 * PI * 25.0 / 16.0;
+    for map in [
+        "s(u, v) = (r*sin(v)*cos(u), r*sin(v)*sin(u), r*cos(v)) on u in [0, 2*pi], v in [0, pi]",
+        "s(u, v) = (r*sqrt(1 - v^2)*cos(u), r*sqrt(1 - v^2)*sin(u), r*v) on u in [0, 2*pi], v in [-1, 1]",
+        "s(u, v) = (r*cos(u)/cosh(v), r*sin(u)/cosh(v), r*tanh(v)) on u in [0, 2*pi], v in (-inf, inf)",
+        "s(u, v) = (2*r*u/(1 + u^2 + v^2), 2*r*v/(1 + u^2 + v^2), r*(u^2 + v^2 - 1)/(1 + u^2 + v^2)) on u in (-inf, inf), v in (-inf, inf)",
+    ] {
+        holds(&format!("r = 5/4\n{map}\na = area(s)"), &[area]);
+    }
+}
+
+/// An open or one-sided surface under a flux is warned about; a closed one is not.
+#[test]
+fn open_and_one_sided_surfaces_are_noticed() {
+    let warnings = |sheet: &str| answers(sheet)[0].warnings.join("\n");
+    assert!(warnings("s(u, v) = (u, v, 0) on u in [0, 1], v in [0, 1]\na = flux((0, 0, 1), s)").contains("open"));
+    let band = "s(u, v) = ((1 + v*cos(u/2))*cos(u), (1 + v*cos(u/2))*sin(u), v*sin(u/2)) on u in [0, 2*pi], v in [-1/4, 1/4]\n";
+    assert!(warnings(&format!("{band}a = flux((0, 0, 1), s)")).contains("one-sided"));
+    assert_eq!(warnings(&format!("{TORUS}a = volume(s)")), "");
+    assert_eq!(warnings(&format!("r = 1\n{OUTWARD}a = volume(s)")), "");
+}
+
+/// What is undefined or does not exist is refused with its place.
+#[test]
+fn undefined_and_divergent_integrals_are_refused() {
+    let failure = |sheet: &str| {
+        let model = check(Source::new("test.sheet", sheet)).unwrap();
+        answer(&model, &model.bind(&[]).unwrap(), &[], &Settings::default(), &NoProgress).unwrap_err()
+    };
+    let error = failure("s(u, v) = (u, v, sqrt(1 - u^2 - v^2)) on u in [-1, 1], v in [-1, 1]\na = area(s)");
+    assert_eq!(error.code, "undefined");
+    assert!(error.place.is_some(), "{error}");
+    let error = failure("s(u, v) = (u, v, 0) on u in [0, 1], v in [0, 1]\na = integral(1/u, s)");
+    assert_eq!(error.code, "divergent");
+    let error = failure("s(u, v) = (u, v, 0) on u in [0, 1], v in [0, 1]\na = integral(1/v^2, s)");
+    assert_eq!(error.code, "divergent");
+}
