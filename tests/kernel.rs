@@ -124,7 +124,7 @@ fn interpreter_and_machine_code_give_the_same_bits() {
         let interpreted = Kernel::interpreted(program.clone());
         let compiled = Kernel::compiled(program).unwrap();
         assert_eq!(compiled.engine(), Engine::MachineCode);
-        let count = [1, 3, 64, 257, 515][random.below(5)];
+        let count = [1, 3, 64, 257, 2_051, 4_100][random.below(6)];
         let (u, v) = points(&mut random, count);
         let p = [random.number()];
         let (mut a, mut b) = (vec![0.0; count], vec![0.0; count]);

@@ -119,3 +119,9 @@ fn honest_at_1e_6() {
     let rows: Vec<Row> = cases().iter().map(|case| run(case, 1e-6)).collect();
     check_rows(&rows, 66);
 }
+
+#[test]
+fn honest_at_1e_12() {
+    let rows: Vec<Row> = cases().iter().map(|case| run(case, 1e-12)).collect();
+    check_rows(&rows, 40);
+}

@@ -2,7 +2,7 @@
 
 use super::interpreter::run;
 use super::kernel::Kernel;
-use super::machine_code::{BLOCK, Buffers, Code, Sink, TURN};
+use super::machine_code::{Buffers, Code, Sink, TURN};
 use super::program::{KernelError, Program, Stage, ValueId};
 use rayon::prelude::*;
 
@@ -154,7 +154,7 @@ impl<'a> CompiledGrid<'a> {
             let mut partial = vec![[0.0; TURN]; outputs];
             let mut start = 0;
             while start < size {
-                let end = (start + BLOCK).min(size);
+                let end = (start + code.block()).min(size);
                 let arrays: Vec<&[f64]> = self.tables.iter().map(|table| &table[start..end]).collect();
                 let mut sums: Vec<&mut [f64]> = partial.iter_mut().map(|sums| &mut sums[..]).collect();
                 code.run(&mut buffers, &arrays, &self.weights[start..end], &mut sums);

@@ -2,7 +2,7 @@
 
 use super::grid::RowCode;
 use super::interpreter::run;
-use super::machine_code::{BLOCK, Code, Sink, TURN};
+use super::machine_code::{Code, Sink, TURN};
 use super::program::{Instruction, KernelError, Program, Stage, ValueId};
 use std::sync::OnceLock;
 use std::sync::atomic::{AtomicU64, Ordering};
@@ -159,11 +159,12 @@ impl Kernel {
             position.map_or(f64::NAN, |position| uniforms[position])
         });
         let is_first = |value: &ValueId| matches!(self.program.instructions()[value.index()], Instruction::Variable(0));
-        let mut padded = [[0.0; BLOCK]; 2];
-        let mut tail = vec![0.0; BLOCK * self.program.outputs().len()];
+        let block = code.block();
+        let mut padded = [vec![0.0; block], vec![0.0; block]];
+        let mut tail = vec![0.0; block * self.program.outputs().len()];
         let mut start = 0;
         while start < count {
-            let length = BLOCK.min(count - start);
+            let length = block.min(count - start);
             let whole = length.is_multiple_of(TURN);
             let size = length.next_multiple_of(TURN);
             let mut blocks = [&u[start..start + length], &v[start..start + length]];
@@ -189,9 +190,9 @@ impl Kernel {
                     out.chunks_exact_mut(count).map(|output| &mut output[start..start + length]).collect();
                 code.run(&mut buffers, &arrays, &[], &mut outputs);
             } else {
-                let mut outputs: Vec<&mut [f64]> = tail.chunks_exact_mut(BLOCK).collect();
+                let mut outputs: Vec<&mut [f64]> = tail.chunks_exact_mut(block).collect();
                 code.run(&mut buffers, &arrays, &[], &mut outputs);
-                for (output, values) in out.chunks_exact_mut(count).zip(tail.chunks_exact(BLOCK)) {
+                for (output, values) in out.chunks_exact_mut(count).zip(tail.chunks_exact(block)) {
                     output[start..start + length].copy_from_slice(&values[..length]);
                 }
             }

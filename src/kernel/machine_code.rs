@@ -25,8 +25,11 @@ use cranelift_module::{Linkage, Module};
 use rustc_hash::FxHashMap;
 use std::mem::ManuallyDrop;
 
-/// Points in one block; scratch arrays have this length.
-pub(super) const BLOCK: usize = 256;
+/// Points in one block where values go through scratch arrays, which have this length.
+const SCRATCH_BLOCK: usize = 256;
+
+/// Points in one block otherwise: enough to forget the cost of a call, few enough for tables to stay in the cache.
+const PLAIN_BLOCK: usize = 2048;
 
 /// Points in one turn of the loop: two vectors of two.
 pub(super) const TURN: usize = 4;
@@ -149,6 +152,11 @@ impl Code {
         }
     }
 
+    /// Largest number of points in one block.
+    pub(super) fn block(&self) -> usize {
+        if self.scratch == 0 { PLAIN_BLOCK } else { SCRATCH_BLOCK }
+    }
+
     /// Values that are given as one number for the block.
     pub(super) fn uniforms(&self) -> &[ValueId] {
         &self.uniforms
@@ -161,7 +169,7 @@ impl Code {
 
     /// Buffers for calls of this code.
     pub(super) fn buffers(&self) -> Buffers {
-        Buffers { scratch: vec![0.0; self.scratch * BLOCK], uniforms: vec![0.0; 2 * self.uniforms.len()] }
+        Buffers { scratch: vec![0.0; self.scratch * SCRATCH_BLOCK], uniforms: vec![0.0; 2 * self.uniforms.len()] }
     }
 
     /// Sets the uniform values for the following blocks; `value(id)` gives each.
@@ -179,11 +187,13 @@ impl Code {
     /// If the lengths do not fit or are no multiple of [`TURN`].
     pub(super) fn run(&self, buffers: &mut Buffers, arrays: &[&[f64]], weights: &[f64], outputs: &mut [&mut [f64]]) {
         let points = arrays.first().map_or(weights.len(), |array| array.len());
-        assert!(points <= BLOCK && points.is_multiple_of(TURN), "a block is whole turns");
+        assert!(points <= self.block() && points.is_multiple_of(TURN), "a block is whole turns");
         assert_eq!(arrays.len(), self.arrays.len(), "every array is given");
         assert!(arrays.iter().all(|array| array.len() == points), "arrays are as long as the block");
         assert_eq!(outputs.len(), self.outputs, "every output is given");
-        assert!(buffers.scratch.len() >= self.scratch * BLOCK && buffers.uniforms.len() >= 2 * self.uniforms.len());
+        assert!(
+            buffers.scratch.len() >= self.scratch * SCRATCH_BLOCK && buffers.uniforms.len() >= 2 * self.uniforms.len()
+        );
         let room = if self.sink == Sink::Store { points } else { TURN };
         assert!(outputs.iter().all(|output| output.len() >= room), "outputs have room");
         assert!(self.sink == Sink::Store || weights.len() == points, "a weight for each point");
@@ -191,7 +201,7 @@ impl Code {
         let output_pointers: Vec<*mut f64> = outputs.iter_mut().map(|output| output.as_mut_ptr()).collect();
         // SAFETY: `entry` was finalized for exactly this signature and lives as long as `self`. It reads `points` numbers
         // from each array and the weights, two from each uniform, and writes `points` (or TURN) numbers to each output and
-        // BLOCK numbers to each scratch array; the lengths were checked above. The outputs are exclusive borrows, so
+        // as many to each scratch array, which has room for a block; the lengths were checked above. The outputs are exclusive borrows, so
         // nothing that is read is written.
         unsafe {
             (self.entry)(
@@ -440,7 +450,7 @@ impl Emitter<'_> {
     }
 
     fn slot_base(&mut self, slot: usize) -> Value {
-        self.builder.ins().iadd_imm_s(self.pointers.scratch, (8 * BLOCK * slot) as i64)
+        self.builder.ins().iadd_imm_s(self.pointers.scratch, (8 * SCRATCH_BLOCK * slot) as i64)
     }
 
     fn splat(&mut self, number: f64) -> Value {
