@@ -12,14 +12,19 @@ pub(super) fn sign_changes(segment: Segment, f: &mut dyn FnMut(&[f64]) -> Vec<f6
     let mut x = vec![ends[0]];
     x.extend(points);
     x.push(ends[1]);
-    let values = f(&x);
+    let mut values = f(&x);
+    // A sample that hits a root is moved a little, so that the sign on either side decides.
+    for i in 1..x.len() - 1 {
+        if values[i] == 0.0 {
+            x[i] += 1e-5 * (x[i + 1] - x[i]);
+            values[i] = f(&[x[i]])[0];
+        }
+    }
     let mut roots = Vec::new();
     for i in 0..x.len() - 1 {
         let (a, b) = (values[i], values[i + 1]);
         if a * b < 0.0 {
             roots.push(bisect(x[i], x[i + 1], a, f));
-        } else if b == 0.0 && i + 2 < x.len() && a * values[i + 2] < 0.0 {
-            roots.push(x[i + 1]);
         } else if i > 0 && dips(values[i - 1], a, b) {
             roots.extend(pair_between([x[i - 1], x[i], x[i + 1]], a, f));
         }
