@@ -1,9 +1,9 @@
 //! Sums over product grids: what depends on one variable only is tabled once, the inner loop does mixed arithmetic.
 
-use super::interpreter::run;
+use super::interpreter::{Interpreter, run};
 use super::kernel::Kernel;
 use super::machine_code::{Buffers, Code, Sink, TURN};
-use super::program::{KernelError, Program, Stage, ValueId};
+use super::program::{KernelError, MixedPart, Program, Stage, ValueId};
 use rayon::prelude::*;
 
 /// Rows that are summed by one thread at a time; the shape of the sum does not depend on how many threads there are.
@@ -52,7 +52,8 @@ impl Kernel {
     /// Sums over a product grid: sum over i, j of `wu[i] * wv[j] * f_k(u[i], v[j])` for each output k.
     ///
     /// The order of summation is fixed: four partial sums along a row, rows one after the other in blocks of 16, blocks in
-    /// order with compensation. So the bits do not depend on the number of threads.
+    /// order with compensation. So the bits depend neither on the number of threads nor on the engine. A sum is NaN where
+    /// a value is not finite.
     ///
     /// # Panics
     /// If weights and nodes differ in number, or parameter values are missing.
@@ -69,7 +70,10 @@ impl Kernel {
                 let grid = CompiledGrid::new(code, parameters, u, v, wv);
                 Box::new(move |block| grid.block(block, wu, outputs))
             }
-            None => Box::new(move |block| self.interpreted_block(block, parameters, u, wu, v, wv)),
+            None => {
+                let grid = InterpretedGrid::new(self.program().mixed_part(), parameters, u, v, wv);
+                Box::new(move |block| grid.block(block, wu))
+            }
         };
         let blocks = u.len().div_ceil(ROWS);
         let sums: Vec<Vec<f64>> = if u.len().saturating_mul(v.len()) >= PARALLEL_POINTS {
@@ -79,33 +83,6 @@ impl Kernel {
         };
         (0..outputs).map(|output| compensated(sums.iter().map(|sum| sum[output]))).collect()
     }
-
-    fn interpreted_block(
-        &self,
-        block: usize,
-        parameters: &[f64],
-        u: &[f64],
-        wu: &[f64],
-        v: &[f64],
-        wv: &[f64],
-    ) -> Vec<f64> {
-        let outputs = self.program().outputs().len();
-        let mut totals = vec![0.0; outputs];
-        let range = block * ROWS..((block + 1) * ROWS).min(u.len());
-        for (&u, &wu) in u[range.clone()].iter().zip(&wu[range]) {
-            let mut partial = vec![[0.0; TURN]; outputs];
-            let fixed = vec![u; v.len()];
-            run(self.program(), parameters, &fixed, v, &mut |output, start, values| {
-                for (i, value) in values.iter().enumerate() {
-                    partial[output][(start + i) % TURN] += value * wv[start + i];
-                }
-            });
-            for (total, partial) in totals.iter_mut().zip(&partial) {
-                *total += wu * row_sum(partial);
-            }
-        }
-        totals
-    }
 }
 
 /// The four partial sums of a row.
@@ -113,7 +90,47 @@ fn row_sum(partial: &[f64; TURN]) -> f64 {
     (partial[0] + partial[1]) + (partial[2] + partial[3])
 }
 
-/// A grid whose tables are filled.
+/// A grid whose tables are filled, for the interpreter.
+struct InterpretedGrid {
+    mixed: Program,
+    /// Parameters of the inner loop: one list for each, as long as the first variable.
+    row_values: Vec<Vec<f64>>,
+    tables: Vec<Vec<f64>>,
+    weights: Vec<f64>,
+}
+
+impl InterpretedGrid {
+    fn new(part: MixedPart, parameters: &[f64], u: &[f64], v: &[f64], wv: &[f64]) -> Self {
+        Self {
+            row_values: tabulate(&part.row_values, parameters, u, &vec![0.0; u.len()]),
+            tables: tabulate(&part.table_values, parameters, &vec![0.0; v.len()], v),
+            weights: wv.to_vec(),
+            mixed: part.program,
+        }
+    }
+
+    fn block(&self, block: usize, wu: &[f64]) -> Vec<f64> {
+        let outputs = self.mixed.outputs().len();
+        let interpreter = Interpreter::new(&self.mixed);
+        let tables: Vec<&[f64]> = self.tables.iter().map(Vec::as_slice).collect();
+        let mut totals = vec![0.0; outputs];
+        for (row, &row_weight) in wu.iter().enumerate().skip(block * ROWS).take(ROWS) {
+            let row_values: Vec<f64> = self.row_values.iter().map(|values| values[row]).collect();
+            let mut partial = vec![[0.0; TURN]; outputs];
+            interpreter.run(&row_values, &tables, self.weights.len(), &mut |output, start, values| {
+                for (i, (value, weight)) in values.iter().zip(&self.weights[start..]).enumerate() {
+                    partial[output][(start + i) % TURN] += value * weight;
+                }
+            });
+            for (total, partial) in totals.iter_mut().zip(&partial) {
+                *total += row_weight * row_sum(partial);
+            }
+        }
+        totals
+    }
+}
+
+/// A grid whose tables are filled, for machine code.
 struct CompiledGrid<'a> {
     code: &'a RowCode,
     /// Uniform values: one list for each value, as long as the first variable.

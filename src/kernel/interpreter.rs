@@ -32,46 +32,66 @@ type Sink<'a> = &'a mut dyn FnMut(usize, usize, &[f64]);
 
 /// Runs `program` at the points (`u[i]`, `v[i]`); values that depend on no variable are computed once.
 pub(super) fn run(program: &Program, parameters: &[f64], u: &[f64], v: &[f64], sink: Sink<'_>) {
+    Interpreter::new(program).run(parameters, &[u, v], u.len(), sink);
+}
+
+/// A program with its slots laid out.
+pub(super) struct Interpreter<'a> {
+    program: &'a Program,
+    plan: Plan,
+}
+
+impl<'a> Interpreter<'a> {
+    pub(super) fn new(program: &'a Program) -> Self {
+        Self { program, plan: Plan::new(program) }
+    }
+
+    /// Runs the program at `count` points; variable k has the values `variables[k]`, as many.
+    pub(super) fn run(&self, parameters: &[f64], variables: &[&[f64]], count: usize, sink: Sink<'_>) {
+        #[cfg(target_arch = "x86_64")]
+        if fused() {
+            // SAFETY: `fused` has just asked the processor for both features.
+            return unsafe { self.run_on_fused_processor(parameters, variables, count, sink) };
+        }
+        if fused() {
+            self.run_blocks::<true>(parameters, variables, count, sink);
+        } else {
+            self.run_blocks::<false>(parameters, variables, count, sink);
+        }
+    }
+
     #[cfg(target_arch = "x86_64")]
-    if fused() {
-        // SAFETY: `fused` has just asked the processor for both features.
-        return unsafe { run_on_fused_processor(program, parameters, u, v, sink) };
+    #[target_feature(enable = "avx2,fma")]
+    fn run_on_fused_processor(&self, parameters: &[f64], variables: &[&[f64]], count: usize, sink: Sink<'_>) {
+        self.run_blocks::<true>(parameters, variables, count, sink);
     }
-    if fused() {
-        run_blocks::<true>(program, parameters, u, v, sink);
-    } else {
-        run_blocks::<false>(program, parameters, u, v, sink);
-    }
-}
 
-#[cfg(target_arch = "x86_64")]
-#[target_feature(enable = "avx2,fma")]
-fn run_on_fused_processor(program: &Program, parameters: &[f64], u: &[f64], v: &[f64], sink: Sink<'_>) {
-    run_blocks::<true>(program, parameters, u, v, sink);
-}
-
-#[inline(always)]
-fn run_blocks<const FUSED: bool>(program: &Program, parameters: &[f64], u: &[f64], v: &[f64], sink: Sink<'_>) {
-    let plan = Plan::new(program);
-    let mut scratch = vec![0.0; plan.slots * STRIDE];
-    let uniform = uniform_values::<FUSED>(program, parameters);
-    let mut start = 0;
-    while start < u.len() {
-        let count = BLOCK.min(u.len() - start);
-        let (u, v) = (&u[start..start + count], &v[start..start + count]);
-        for (index, instruction) in program.instructions().iter().enumerate() {
-            let slot = plan.slot[index];
-            if program.stages()[index] <= Stage::Parameter {
-                scratch[slot * STRIDE..slot * STRIDE + count].fill(uniform[index]);
-            } else {
-                step::<FUSED>(instruction, &plan.slot, &mut scratch, slot, count, u, v);
+    #[inline(always)]
+    fn run_blocks<const FUSED: bool>(&self, parameters: &[f64], variables: &[&[f64]], count: usize, sink: Sink<'_>) {
+        let (program, plan) = (self.program, &self.plan);
+        let mut scratch = vec![0.0; plan.slots * STRIDE];
+        let uniform = uniform_values::<FUSED>(program, parameters);
+        let mut start = 0;
+        while start < count {
+            let size = BLOCK.min(count - start);
+            for (index, instruction) in program.instructions().iter().enumerate() {
+                let slot = plan.slot[index];
+                let target = slot * STRIDE;
+                if program.stages()[index] <= Stage::Parameter {
+                    scratch[target..target + size].fill(uniform[index]);
+                } else if let Instruction::Variable(position) = *instruction {
+                    let values = &variables[position as usize][start..start + size];
+                    scratch[target..target + size].copy_from_slice(values);
+                } else {
+                    step::<FUSED>(instruction, &plan.slot, &mut scratch, slot, size);
+                }
             }
+            for (output, value) in program.outputs().iter().enumerate() {
+                let slot = plan.slot[value.index()];
+                sink(output, start, &scratch[slot * STRIDE..slot * STRIDE + size]);
+            }
+            start += size;
         }
-        for (output, value) in program.outputs().iter().enumerate() {
-            let slot = plan.slot[value.index()];
-            sink(output, start, &scratch[slot * STRIDE..slot * STRIDE + count]);
-        }
-        start += count;
     }
 }
 
@@ -160,15 +180,7 @@ fn scalar<const FUSED: bool>(instruction: &Instruction, parameters: &[f64], at: 
 
 /// One instruction on a block.
 #[inline(always)]
-fn step<const FUSED: bool>(
-    instruction: &Instruction,
-    slots: &[usize],
-    scratch: &mut [f64],
-    slot: usize,
-    count: usize,
-    u: &[f64],
-    v: &[f64],
-) {
+fn step<const FUSED: bool>(instruction: &Instruction, slots: &[usize], scratch: &mut [f64], slot: usize, count: usize) {
     use Instruction::*;
     let place = |value: super::program::ValueId| slots[value.index()] * STRIDE;
     let target = slot * STRIDE;
@@ -178,9 +190,7 @@ fn step<const FUSED: bool>(
         }
     };
     match *instruction {
-        Constant(_) | Parameter(_) => unreachable!("uniform values are filled in by the caller"),
-        Variable(0) => scratch[target..target + count].copy_from_slice(u),
-        Variable(_) => scratch[target..target + count].copy_from_slice(v),
+        Constant(_) | Parameter(_) | Variable(_) => unreachable!("given values are filled in by the caller"),
         Negate(a) => each(scratch, target, [place(a)], count, |[x]| -x),
         Add(a, b) => each(scratch, target, [place(a), place(b)], count, |[x, y]| x + y),
         Subtract(a, b) => each(scratch, target, [place(a), place(b)], count, |[x, y]| x - y),

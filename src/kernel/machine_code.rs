@@ -28,6 +28,9 @@ use std::mem::ManuallyDrop;
 /// Points in one block where values go through scratch arrays, which have this length.
 const SCRATCH_BLOCK: usize = 256;
 
+/// Distance of two scratch arrays: a little more than a block, so that they do not fall on the same cache lines.
+const STRIDE: usize = SCRATCH_BLOCK + 8;
+
 /// Points in one block otherwise: enough to forget the cost of a call, few enough for tables to stay in the cache.
 const PLAIN_BLOCK: usize = 2048;
 
@@ -122,7 +125,15 @@ impl Code {
         let fail = |error: &dyn std::fmt::Display| KernelError::CodeGeneration(error.to_string());
         let mut flags = settings::builder();
         let allocator = if body.len() > SINGLE_PASS_ABOVE { "single_pass" } else { "backtracking" };
-        for (name, value) in [("opt_level", "none"), ("regalloc_algorithm", allocator), ("enable_verifier", "false")] {
+        let choices = [
+            ("opt_level", "none"),
+            ("regalloc_algorithm", allocator),
+            ("enable_verifier", "false"),
+            // Long bodies spill tens of kilobytes: a frame that does not fit must meet the guard page of the stack.
+            ("enable_probestack", "true"),
+            ("probestack_strategy", "inline"),
+        ];
+        for (name, value) in choices {
             flags.set(name, value).map_err(|error| fail(&error))?;
         }
         let isa = cranelift_native::builder()
@@ -169,7 +180,7 @@ impl Code {
 
     /// Buffers for calls of this code.
     pub(super) fn buffers(&self) -> Buffers {
-        Buffers { scratch: vec![0.0; self.scratch * SCRATCH_BLOCK], uniforms: vec![0.0; 2 * self.uniforms.len()] }
+        Buffers { scratch: vec![0.0; self.scratch * STRIDE], uniforms: vec![0.0; 2 * self.uniforms.len()] }
     }
 
     /// Sets the uniform values for the following blocks; `value(id)` gives each.
@@ -191,9 +202,7 @@ impl Code {
         assert_eq!(arrays.len(), self.arrays.len(), "every array is given");
         assert!(arrays.iter().all(|array| array.len() == points), "arrays are as long as the block");
         assert_eq!(outputs.len(), self.outputs, "every output is given");
-        assert!(
-            buffers.scratch.len() >= self.scratch * SCRATCH_BLOCK && buffers.uniforms.len() >= 2 * self.uniforms.len()
-        );
+        assert!(buffers.scratch.len() >= self.scratch * STRIDE && buffers.uniforms.len() >= 2 * self.uniforms.len());
         let room = if self.sink == Sink::Store { points } else { TURN };
         assert!(outputs.iter().all(|output| output.len() >= room), "outputs have room");
         assert!(self.sink == Sink::Store || weights.len() == points, "a weight for each point");
@@ -450,7 +459,7 @@ impl Emitter<'_> {
     }
 
     fn slot_base(&mut self, slot: usize) -> Value {
-        self.builder.ins().iadd_imm_s(self.pointers.scratch, (8 * SCRATCH_BLOCK * slot) as i64)
+        self.builder.ins().iadd_imm_s(self.pointers.scratch, (8 * STRIDE * slot) as i64)
     }
 
     fn splat(&mut self, number: f64) -> Value {

@@ -50,8 +50,8 @@ pub enum Instruction {
     Constant(f64),
     /// The parameter at this position of the parameter slice.
     Parameter(u32),
-    /// The first (0) or second (1) variable.
-    Variable(u8),
+    /// The first (0) or second (1) variable; in the mixed part of a program, a table of the second variable.
+    Variable(u32),
     /// `-a`
     Negate(ValueId),
     /// `a + b`
@@ -170,7 +170,7 @@ impl Program {
             let value = match graph.node(id) {
                 Node::Symbol(symbol) => {
                     let instruction = if let Some(position) = variables.iter().position(|&v| v == symbol) {
-                        Instruction::Variable(position as u8)
+                        Instruction::Variable(position as u32)
                     } else if let Some(position) = parameters.iter().position(|&p| p == symbol) {
                         Instruction::Parameter(position as u32)
                     } else {
@@ -190,6 +190,38 @@ impl Program {
     /// The part of the program that computes `outputs`.
     pub(super) fn restricted(&self, outputs: Vec<ValueId>) -> Program {
         prune(self.instructions.clone(), outputs, self.parameter_count)
+    }
+
+    /// What stands in the inner loop of a product grid, as a program of its own.
+    pub(super) fn mixed_part(&self) -> MixedPart {
+        let mut needed = vec![false; self.len()];
+        for (index, instruction) in self.instructions.iter().enumerate() {
+            if self.stages[index] == Stage::Mixed {
+                instruction.operands().for_each(|operand| needed[operand.index()] = true);
+            }
+        }
+        self.outputs.iter().for_each(|output| needed[output.index()] = true);
+        let (mut row_values, mut table_values) = (Vec::new(), Vec::new());
+        let mut instructions = self.instructions.clone();
+        for (index, instruction) in instructions.iter_mut().enumerate().filter(|&(index, _)| needed[index]) {
+            let value = ValueId(index as u32);
+            match self.stages[index] {
+                Stage::Parameter | Stage::First => {
+                    *instruction = Instruction::Parameter(row_values.len() as u32);
+                    row_values.push(value);
+                }
+                Stage::Second => {
+                    *instruction = Instruction::Variable(table_values.len() as u32);
+                    table_values.push(value);
+                }
+                Stage::Constant | Stage::Mixed => {}
+            }
+        }
+        MixedPart {
+            program: prune(instructions, self.outputs.clone(), row_values.len()),
+            row_values: self.restricted(row_values),
+            table_values: self.restricted(table_values),
+        }
     }
 
     /// The steps, operands before users.
@@ -226,6 +258,17 @@ impl Program {
     pub fn mixed_count(&self) -> usize {
         self.stages.iter().filter(|stage| **stage == Stage::Mixed).count()
     }
+}
+
+/// A program cut for a product grid.
+#[derive(Clone, PartialEq, Debug)]
+pub(super) struct MixedPart {
+    /// The inner loop: its parameters are the outputs of `row_values`, its variables those of `table_values`.
+    pub(super) program: Program,
+    /// Values that are fixed along a row.
+    pub(super) row_values: Program,
+    /// Values that depend on the second variable only.
+    pub(super) table_values: Program,
 }
 
 /// Instructions with equal ones shared.
