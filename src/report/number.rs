@@ -1,7 +1,13 @@
 //! Numbers with their errors, in the unit they are shown in, with the digits the error supports.
 
 use crate::integrals::{Answer, Component};
-use crate::language::Unit;
+use crate::language::{Dimension, Unit};
+
+/// m kg s^-2, shown as N.
+const FORCE: Dimension = Dimension::of([1, 1, -2, 0, 0, 0, 0]);
+
+/// m^-1 kg s^-2, shown as Pa.
+const PRESSURE: Dimension = Dimension::of([-1, 1, -2, 0, 0, 0, 0]);
 
 /// Value and error of a component in the shown unit; the error covers the conversion.
 pub fn in_shown_unit(component: &Component, unit: Option<&Unit>) -> (f64, f64) {
@@ -17,6 +23,8 @@ pub fn unit_text(answer: &Answer) -> String {
     match &answer.shown_as {
         Some(unit) => unit.text.clone(),
         None if answer.dimension.is_none() => String::new(),
+        None if answer.dimension == FORCE => "N".to_owned(),
+        None if answer.dimension == PRESSURE => "Pa".to_owned(),
         None => answer.dimension.to_string(),
     }
 }
