@@ -31,6 +31,11 @@ pub(super) fn run(options: &NodesOptions) -> Result<Exit, Failure> {
     if options.rule == RuleOption::Gauss && first.max(second) > 20_000 {
         return Err(Failure::Usage("--rule gauss takes at most 20000 nodes along a variable".to_owned()));
     }
+    if options.output == Path::new("-") && rows as u64 * 256 > MEMORY_BYTES {
+        return Err(Failure::Usage(format!(
+            "--grid {first}x{second} is too large for standard output: write a file with -o"
+        )));
+    }
     let rule = |n: usize| match options.rule {
         RuleOption::Midpoint => {
             ((0..n).map(|i| (2 * i + 1) as f64 / n as f64 - 1.0).collect(), vec![2.0 / n as f64; n])

@@ -6,7 +6,7 @@ use crate::integrals::SpeedRun;
 use serde_json::json;
 
 /// Largest grid and largest number of scattered points.
-const MOST_POINTS: usize = 1 << 27;
+const MOST_POINTS: usize = 1 << 26;
 
 pub(super) fn run(options: &SpeedOptions) -> Result<Exit, Failure> {
     let (model, bindings) = load(&options.sheet, &options.set)?;

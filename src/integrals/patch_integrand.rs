@@ -18,7 +18,7 @@ pub(super) struct PatchIntegrand {
     /// Splits of every inner line.
     breaks: Vec<f64>,
     /// Formulas whose sign changes split an inner line at places that depend on the outer variable.
-    kinks: Option<Kernel>,
+    kinks: Vec<Kernel>,
     trim: Option<Kernel>,
     /// Where densities have decayed to nothing before their formula overflows: (outer, inner).
     decayed: [Segment; 2],
@@ -88,7 +88,7 @@ impl Question<'_> {
             parameters: parameters.iter().map(|&symbol| self.bindings.value(symbol)).collect(),
             limits,
             breaks: Vec::new(),
-            kinks: None,
+            kinks: Vec::new(),
             trim: self.trim.map(|trim| compile(graph, &[trim])).transpose()?,
             decayed: [Segment::new(f64::NEG_INFINITY, f64::INFINITY); 2],
             sides: Sides {
@@ -217,8 +217,8 @@ impl Question<'_> {
             }
         }
         if !mixed.is_empty() || integrand.trim.is_some() {
-            if !mixed.is_empty() {
-                integrand.kinks = Some(compile(graph, &mixed)?);
+            for kink in mixed {
+                integrand.kinks.push(compile(graph, &[kink])?);
             }
             outer_breaks.extend(integrand.structure_changes(outer_segment));
         }
@@ -413,18 +413,13 @@ impl PatchIntegrand {
 
     /// Sign changes of the mixed kink formulas on one inner line: (which formula, where), ascending.
     fn splits(&self, outer: f64) -> Vec<(usize, f64)> {
-        let Some(kinks) = &self.kinks else { return Vec::new() };
         let segment = self.limits_at(outer);
         if segment.from >= segment.to {
             return Vec::new();
         }
-        let count = kinks.program().outputs().len();
         let mut found = Vec::new();
-        for kink in 0..count {
-            let mut f = |x: &[f64]| {
-                let all = values(kinks, &self.parameters, &vec![outer; x.len()], x);
-                all[kink * x.len()..(kink + 1) * x.len()].to_vec()
-            };
+        for (kink, kernel) in self.kinks.iter().enumerate() {
+            let mut f = |x: &[f64]| values(kernel, &self.parameters, &vec![outer; x.len()], x);
             found.extend(sign_changes(segment, &mut f).into_iter().map(|at| (kink, at)));
         }
         found.sort_by(|a, b| a.1.total_cmp(&b.1));

@@ -6,6 +6,9 @@
 
 use crate::expression::{BinaryFunction, ExpressionId, Function, Graph, Node, SymbolId, evaluate};
 
+/// Kinks and features that are followed; a formula with more is left to the adaptive rule.
+const MOST: usize = 24;
+
 /// Formulas whose zero sets hold the kinks and jumps of `roots`: arguments of abs and sign, differences of the two sides
 /// of min, max and comparisons. Only formulas that depend on a variable are returned.
 pub(super) fn kink_formulas(graph: &mut Graph, roots: &[ExpressionId], variables: [SymbolId; 2]) -> Vec<ExpressionId> {
@@ -20,6 +23,9 @@ pub(super) fn kink_formulas(graph: &mut Graph, roots: &[ExpressionId], variables
         };
         if !formulas.contains(&formula) && variables.iter().any(|&variable| graph.depends_on(formula, variable)) {
             formulas.push(formula);
+        }
+        if formulas.len() > MOST {
+            return Vec::new();
         }
     }
     formulas
@@ -56,6 +62,9 @@ pub(super) fn features(graph: &Graph, roots: &[ExpressionId], variables: [Symbol
         };
         if !found.contains(&feature) && variables.iter().any(|&variable| graph.depends_on(formula, variable)) {
             found.push(feature);
+        }
+        if found.len() > MOST {
+            return Vec::new();
         }
     }
     found
