@@ -36,21 +36,41 @@ fn rust_files(folder: &Path, found: &mut Vec<PathBuf>) {
     }
 }
 
-/// Stages mentioned as `crate::stage` in code (comments do not count).
+/// Stages mentioned as `crate::stage` or within `crate::{...}` in code (comments do not count).
 fn used_stages(text: &str) -> Vec<(usize, String)> {
+    let code: String = text.lines().map(|line| line.split("//").next().unwrap_or("")).collect::<Vec<_>>().join("\n");
     let mut used = Vec::new();
-    for (number, line) in text.lines().enumerate() {
-        let code = line.split("//").next().unwrap_or("");
-        let mut rest = code;
-        while let Some(at) = rest.find("crate::") {
-            rest = &rest[at + 7..];
-            let name: String = rest.chars().take_while(|c| c.is_alphanumeric() || *c == '_').collect();
-            if ORDER.contains(&name.as_str()) {
-                used.push((number + 1, name));
-            }
-        }
+    for (at, found) in code.match_indices("crate::") {
+        let rest = &code[at + found.len()..];
+        let line = code[..at].matches('\n').count() + 1;
+        let names = if rest.starts_with('{') { group_heads(rest) } else { vec![leading_name(rest)] };
+        used.extend(names.into_iter().filter(|name| ORDER.contains(&name.as_str())).map(|name| (line, name)));
     }
     used
+}
+
+fn leading_name(text: &str) -> String {
+    text.trim_start().chars().take_while(|c| c.is_alphanumeric() || *c == '_').collect()
+}
+
+/// First names of the paths directly inside a group that opens `text`.
+fn group_heads(text: &str) -> Vec<String> {
+    let mut depth = 0;
+    let mut heads = Vec::new();
+    for (at, c) in text.char_indices() {
+        match c {
+            '{' => depth += 1,
+            '}' => depth -= 1,
+            _ => {}
+        }
+        if depth == 0 {
+            break;
+        }
+        if depth == 1 && (c == '{' || c == ',') {
+            heads.push(leading_name(&text[at + 1..]));
+        }
+    }
+    heads
 }
 
 #[test]
@@ -114,4 +134,6 @@ fn unsafe_code_stands_in_its_files_only() {
 fn a_wrong_way_use_would_be_seen() {
     let text = "use crate::cli::main; // crate::report\nfn f() { crate::kernel::Kernel; }";
     assert_eq!(used_stages(text), vec![(1, "cli".to_owned()), (2, "kernel".to_owned())]);
+    let grouped = "use crate::{\n    cli::{main, report},\n    kernel,\n};";
+    assert_eq!(used_stages(grouped), vec![(1, "cli".to_owned()), (1, "kernel".to_owned())]);
 }
