@@ -107,6 +107,25 @@ fn chains_of_the_largest_formula() {
     }
 }
 
+/// A long part that depends on one variable only: a row of a grid is short, scattered points are not. Compiling is
+/// refused as a whole, so that `engine` tells what runs `evaluate` too.
+#[test]
+fn a_long_table_is_refused_for_scattered_points_too() {
+    let mut plane = plane();
+    let mut x = plane.u;
+    for _ in 0..5_000 {
+        let half = plane.graph.fraction(1, 2);
+        let product = plane.graph.multiply(x, half);
+        x = plane.graph.add(product, plane.u);
+    }
+    let root = plane.graph.multiply(x, plane.v);
+    let program = plane.program(root);
+    assert_eq!(program.mixed_count(), 1);
+    assert!(matches!(Kernel::compiled(program.clone()), Err(KernelError::TooLargeToCompile(_))));
+    // x -> x/2 + u from x = u has the limit 2 u; at u = 1, v = 1/2 the value is 1.
+    assert_eq!(by_best_engine(program, 1.0, 0.5), (Engine::Interpreter, 1.0, 15.0));
+}
+
 /// A chain of calls: each call is a loop of its own with its scratch array.
 #[test]
 fn chains_of_calls() {

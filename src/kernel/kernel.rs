@@ -2,7 +2,7 @@
 
 use super::grid::RowCode;
 use super::interpreter::run;
-use super::machine_code::{Code, Sink, TURN};
+use super::machine_code::{Code, MAXIMUM_BODY, Sink, TURN};
 use super::program::{Instruction, KernelError, Program, Stage, ValueId};
 use std::sync::OnceLock;
 use std::sync::atomic::{AtomicU64, Ordering};
@@ -66,6 +66,10 @@ impl Kernel {
     /// # Errors
     /// If the program is too large to compile or the code generator refuses.
     pub fn compiled(program: Program) -> Result<Self, KernelError> {
+        let body = point_body(&program).count();
+        if body > MAXIMUM_BODY {
+            return Err(KernelError::TooLargeToCompile(body));
+        }
         let kernel = Self { compile: true, ..Self::interpreted(program) };
         match kernel.rows() {
             Some(_) => Ok(kernel),
@@ -78,7 +82,9 @@ impl Kernel {
 
     /// A kernel for about `expected_points` evaluations: machine code where compiling pays and succeeds.
     pub fn new(program: Program, expected_points: u64) -> Self {
-        Self { compile: expected_points >= COMPILE_ABOVE, ..Self::interpreted(program) }
+        // Scattered points have the larger body: where it fits, rows fit too, and one engine runs all of the kernel.
+        let fits = point_body(&program).count() <= MAXIMUM_BODY;
+        Self { compile: fits && expected_points >= COMPILE_ABOVE, ..Self::interpreted(program) }
     }
 
     /// The program that is evaluated.
@@ -111,12 +117,8 @@ impl Kernel {
         }
         let compile = || {
             let program = &self.program;
-            let is_variable =
-                |value: ValueId| matches!(program.instructions()[value.index()], Instruction::Variable(_));
-            let body: Vec<ValueId> = (0..program.len())
-                .map(|index| ValueId(index as u32))
-                .filter(|&value| program.stages()[value.index()] > Stage::Parameter && !is_variable(value))
-                .collect();
+            let is_variable = |value: ValueId| is_variable(program, value);
+            let body: Vec<ValueId> = point_body(program).collect();
             Code::compile(program, &body, program.outputs(), is_variable, Sink::Store)
         };
         self.points.get_or_init(|| self.timed(compile)).as_ref().ok()
@@ -199,6 +201,17 @@ impl Kernel {
             start += length;
         }
     }
+}
+
+fn is_variable(program: &Program, value: ValueId) -> bool {
+    matches!(program.instructions()[value.index()], Instruction::Variable(_))
+}
+
+/// What is computed at each scattered point: all that depends on a variable and is not one.
+fn point_body(program: &Program) -> impl Iterator<Item = ValueId> + '_ {
+    (0..program.len())
+        .map(|index| ValueId(index as u32))
+        .filter(|&value| program.stages()[value.index()] > Stage::Parameter && !is_variable(program, value))
 }
 
 /// Values that depend on no variable.

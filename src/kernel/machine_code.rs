@@ -38,7 +38,7 @@ const PLAIN_BLOCK: usize = 2048;
 pub(super) const TURN: usize = 4;
 
 /// Largest body that is worth compiling: register allocation is superlinear.
-const MAXIMUM_BODY: usize = 4_000;
+pub(super) const MAXIMUM_BODY: usize = 4_000;
 
 /// Above this many instructions the fast allocator is used.
 const SINGLE_PASS_ABOVE: usize = 1_000;
