@@ -160,6 +160,16 @@ fn check(text: &str) -> Result<(), TestCaseError> {
     Ok(())
 }
 
+/// Pieces that once panicked: a hint looked for text between two brackets that enclose nothing.
+#[test]
+fn empty_brackets_after_an_operand() {
+    for text in ["東[\n}", "a = b[]", "a = 2*b[ ]", "a = f()[]", "a = (1)[", "a[]", "s = sum()[]", "a = 1 on u in []"]
+    {
+        let (_, diagnostics) = parse(&Source::new("any.sheet", text));
+        assert!(!diagnostics.is_empty(), "{text:?}");
+    }
+}
+
 #[test]
 fn the_valid_sheet_is_valid() {
     for text in [VALID.to_owned(), VALID.replace('\n', "\r\n")] {

@@ -57,9 +57,10 @@ impl<'a> Context<'a> {
         matches!(self.before().0, Some(Number | Name | Unit | Close))
     }
 
-    /// The text of tokens `from..=to`, if it is short enough to be repeated in a hint.
+    /// The text of tokens `from..=to`, if there is one (a pair of brackets may enclose nothing) and it is short enough to
+    /// be repeated in a hint.
     pub fn short(&self, from: usize, to: usize) -> Option<&'a str> {
-        let text = &self.text[self.tokens.get(from)?.span.start..self.tokens.get(to)?.span.end];
+        let text = self.text.get(self.tokens.get(from)?.span.start..self.tokens.get(to)?.span.end)?;
         (text.len() <= 40 && !text.contains(['\n', '#'])).then_some(text)
     }
 
