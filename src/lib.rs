@@ -32,6 +32,7 @@ pub mod calculus;
 pub mod language;
 
 pub mod geometry;
+pub mod simplify;
 
 pub mod kernel;
 

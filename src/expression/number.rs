@@ -117,6 +117,11 @@ impl Exact {
         }
     }
 
+    /// The number as a general-purpose rational number.
+    pub(crate) fn as_rational(&self) -> &RBig {
+        &self.0
+    }
+
     /// `-self`.
     pub fn negate(&self) -> Self {
         Self(-self.0.clone())

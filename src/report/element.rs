@@ -21,9 +21,9 @@ pub struct ElementReport {
 
 impl ElementReport {
     /// Derives the forms of a patch.
-    pub fn new(model: &Model, patch: PatchId) -> Self {
+    pub fn new(model: &Model, id: PatchId) -> Self {
         let mut graph = model.graph.clone();
-        let patch = &model.patches[patch.0];
+        let patch = &model.patches[id.0];
         let surface = Surface::new(&mut graph, patch);
         let first = surface.first_form(&mut graph);
         let second = surface.second_form(&mut graph);
@@ -46,6 +46,7 @@ impl ElementReport {
             ("K", vec![gauss]),
             ("H", vec![mean]),
         ];
+        let closed = crate::simplify::closed_forms(model, id);
         let operations = operations(&graph, surface.element);
         let shown = |id: &ExpressionId| {
             let text = print_limited(&graph, *id, LONGEST);
@@ -55,7 +56,15 @@ impl ElementReport {
                 text
             }
         };
-        let forms = formulas.into_iter().map(|(name, ids)| (name, ids.iter().map(shown).collect())).collect();
+        let mut forms: Vec<(&'static str, Vec<String>)> =
+            formulas.into_iter().map(|(name, ids)| (name, ids.iter().map(shown).collect())).collect();
+        if let Some(form) = closed.element {
+            for (name, texts) in &mut forms {
+                if *name == "dA" {
+                    *texts = vec![form.text()];
+                }
+            }
+        }
         Self { patch: patch.name.clone(), forms, operations }
     }
 }

@@ -1,0 +1,461 @@
+//! The closed forms of a patch: tangents, fundamental forms, area element, normal, curvatures.
+//!
+//! Factors that the components of a tangent share come out before the cross product, and those of the cross product
+//! before its norm: N = g n with a primitive n, |N| = |g| sqrt(n.n). With P = n.n and l = phi_uu.n, ...
+//!
+//!   L = sgn(g) l/sqrt(P),   K = (l n2 - m^2)/(g P)^2,   H = sgn(g) (E n2 - 2 F m + G l)/(2 g^2 P sqrt(P)).
+//!
+//! Squares come out of P, each factor pulled out with its proved sign or between bars.
+
+use super::factor::{factor, split_square};
+use super::form::Form;
+use super::fraction::{Fraction, common_denominator, raised};
+use super::gcd::gcd;
+use super::meter::{Exhausted, Step};
+use super::plan::{Laurent, Printer, single_generator};
+use super::polynomial::{GENERATORS, Polynomial};
+use super::product::{Exponent, flipped, is_negative, product, ratio};
+use super::read::{Arguments, Reader};
+use super::region::{self, guesses};
+use super::ring::{Directions, Kind, Ring};
+use super::sign::{Ranges, sign};
+use crate::calculus::{Vector, differentiate_vector};
+use crate::expression::{ExpressionId, Graph};
+use crate::language::{Model, Patch};
+use dashu_base::{Abs, Signed};
+use dashu_int::IBig;
+use dashu_ratio::RBig;
+
+/// The most sums that the search for the shortest form of one formula explores.
+const NODES: usize = 600;
+
+/// A value `outside * root^(power/2)`: the polynomial under the root is square-free, power is 1, 0 or -1.
+#[derive(Clone, Debug)]
+pub(super) struct Rooted {
+    pub outside: Fraction,
+    /// Factors of unknown sign that stand between bars, with their exponents.
+    pub bars: Vec<(Polynomial, i32)>,
+    pub root: Polynomial,
+    pub power: i8,
+}
+
+/// The geometry of a patch as elements of a ring.
+pub(super) struct Elements<'a> {
+    pub reader: Reader<'a>,
+    pub ranges: Ranges,
+    pub tangents: [[Fraction; 3]; 2],
+    pub first: [Fraction; 3],
+    /// g
+    pub content: Fraction,
+    /// n
+    pub direction: [Polynomial; 3],
+    /// P = n.n
+    pub square: Polynomial,
+    /// Conditions that signs were proved under, beyond those of the sheet.
+    pub conditions: Vec<String>,
+    /// Factors whose sign could not be proved.
+    pub unproved: Vec<Polynomial>,
+    model: &'a Model,
+    second: [Vector; 3],
+}
+
+/// The formulas that the forms are made of, in the graph.
+pub(super) struct Formulas {
+    pub tangents: [Vector; 2],
+    pub second: [Vector; 3],
+}
+
+impl Formulas {
+    pub fn new(graph: &mut Graph, patch: &Patch) -> Self {
+        let tangents = patch.variables.map(|variable| differentiate_vector(graph, &patch.position, variable));
+        let [u, v] = patch.variables;
+        let second = [
+            differentiate_vector(graph, &tangents[0], u),
+            differentiate_vector(graph, &tangents[0], v),
+            differentiate_vector(graph, &tangents[1], v),
+        ];
+        Self { tangents, second }
+    }
+
+    fn roots(&self) -> Vec<ExpressionId> {
+        self.tangents.iter().chain(&self.second).flatten().copied().collect()
+    }
+
+    pub fn has_sums(&self, graph: &Graph) -> bool {
+        Reader::has_sums(graph, &self.roots())
+    }
+}
+
+impl<'a> Elements<'a> {
+    /// Reads a patch; `reversed` turns N around.
+    pub fn new(
+        graph: &'a Graph,
+        model: &'a Model,
+        patch: &Patch,
+        formulas: &Formulas,
+        arguments: Arguments,
+    ) -> Step<Self> {
+        let mut roots = formulas.roots();
+        roots.extend(region::formulas(model, patch));
+        let mut reader = Reader::new(graph, &roots, arguments)?;
+        let ranges = region::read(&mut reader, model, patch);
+        let prove = |ring: &Ring, polynomial: &Polynomial| sign(ring, graph, &ranges, polynomial);
+        let mut tangents = [(); 2].map(|()| [(); 3].map(|()| Fraction::zero()));
+        for (tangent, vector) in tangents.iter_mut().zip(&formulas.tangents) {
+            for (component, &formula) in tangent.iter_mut().zip(vector) {
+                *component = reader.read(formula, &prove)?;
+            }
+        }
+        let ring = &reader.ring;
+        let first = [
+            dot(ring, &tangents[0], &tangents[0])?,
+            dot(ring, &tangents[0], &tangents[1])?,
+            dot(ring, &tangents[1], &tangents[1])?,
+        ];
+        let (content_u, u) = take_content(ring, &tangents[0])?;
+        let (content_v, v) = take_content(ring, &tangents[1])?;
+        let cross = [(1, 2), (2, 0), (0, 1)];
+        let mut normal = [(); 3].map(|()| Polynomial::zero());
+        for (component, (i, j)) in normal.iter_mut().zip(cross) {
+            *component = ring.canonical(&u[i].times(&v[j])?.minus(&u[j].times(&v[i])?))?;
+        }
+        let (content_n, mut direction) = take_content(ring, &normal.map(Fraction::whole))?;
+        if patch.orientation < 0 {
+            direction = direction.map(|component| component.negated());
+        }
+        let content = ring.multiply(&ring.multiply(&content_u, &content_v)?, &content_n)?;
+        let mut square = Polynomial::zero();
+        for component in &direction {
+            square = square.plus(&component.times(component)?);
+        }
+        let square = ring.canonical(&square)?;
+        Ok(Self {
+            reader,
+            ranges,
+            tangents,
+            first,
+            content,
+            direction,
+            square,
+            conditions: Vec::new(),
+            unproved: Vec::new(),
+            model,
+            second: formulas.second,
+        })
+    }
+
+    fn ring(&self) -> &Ring {
+        &self.reader.ring
+    }
+
+    /// The sign of a polynomial: from what the sheet says, else under a condition that its values fulfil.
+    fn sign(&mut self, polynomial: &Polynomial) -> Step<Option<i8>> {
+        let graph = self.reader.graph;
+        if let Some(sign) = sign(&self.reader.ring, graph, &self.ranges, polynomial) {
+            return Ok(Some(sign));
+        }
+        if self.unproved.contains(polynomial) {
+            return Ok(None);
+        }
+        let used: Vec<usize> = (0..self.ring().generators.len())
+            .filter(|&generator| match self.ring().generators[generator] {
+                Kind::Symbol(symbol) => {
+                    polynomial.generators().into_iter().any(|g| self.ring().depends_on(g, symbol, graph))
+                }
+                _ => false,
+            })
+            .collect();
+        for guess in guesses(&mut self.reader, self.model, &self.ranges, &used)? {
+            if let Some(sign) = sign(&self.reader.ring, graph, &guess.ranges, polynomial) {
+                if !self.conditions.contains(&guess.text) {
+                    self.conditions.push(guess.text);
+                }
+                return Ok(Some(sign));
+            }
+        }
+        self.unproved.push(polynomial.clone());
+        Ok(None)
+    }
+
+    /// |g| sqrt(P), the area element.
+    pub fn element(&mut self) -> Step<Vec<Rooted>> {
+        let content = self.content.clone();
+        let mut candidates = Vec::new();
+        for (outside, root) in self.squares(&self.square.clone())? {
+            let mut factors: Vec<(Polynomial, i32)> = Vec::new();
+            let divisor = content.divisor.clone();
+            let mut number = IBig::ONE;
+            let above = self.shortest_factors(&content.numerator)?;
+            number = number * above.unit.abs();
+            for (factor, exponent) in above.factors.iter().chain(&outside.factors) {
+                include(&mut factors, factor, *exponent as i32);
+            }
+            number = number * &outside.unit;
+            for (factor, exponent) in &content.denominator {
+                include(&mut factors, factor, -(*exponent as i32));
+            }
+            factors.retain(|(_, exponent)| *exponent != 0);
+            let mut value = Fraction::whole(Polynomial::one());
+            let mut bars = Vec::new();
+            for (factor, exponent) in &factors {
+                let proved = if exponent % 2 == 0 { Some(1) } else { self.sign(factor)? };
+                match proved {
+                    Some(sign) => {
+                        let factor = if sign < 0 { factor.negated() } else { factor.clone() };
+                        if *exponent > 0 {
+                            value.numerator = value.numerator.times(&factor.power(*exponent as u32)?)?;
+                        } else {
+                            value.denominator.push((factor, exponent.unsigned_abs()));
+                        }
+                    }
+                    None => bars.push((factor.clone(), *exponent)),
+                }
+            }
+            value.numerator = value.numerator.scaled(&number)?;
+            value.divisor = divisor;
+            let mut root = root;
+            let outside = self.ring().cancelled(value)?;
+            let outside = self.without_roots(outside, &mut root)?;
+            candidates.push(Rooted { outside, bars, power: if root.is_one() { 0 } else { 1 }, root });
+        }
+        Ok(candidates)
+    }
+
+    /// 1/q sqrt(P) = sqrt(P/radicand) for a root q whose radicand divides P.
+    fn without_roots(&self, mut outside: Fraction, root: &mut Polynomial) -> Step<Fraction> {
+        for (place, kind) in self.ring().generators.iter().enumerate() {
+            let Kind::Root(2, radicand) = kind else { continue };
+            let generator = Polynomial::generator(place);
+            let Some(at) = outside.denominator.iter().position(|(factor, _)| *factor == generator) else { continue };
+            if let Some(quotient) = self.ring().quotient(root, radicand)? {
+                *root = quotient;
+                outside.denominator[at].1 -= 1;
+                outside.denominator.retain(|(_, exponent)| *exponent > 0);
+            }
+        }
+        Ok(outside)
+    }
+
+    /// A polynomial as squares outside and a square-free rest under the root, in the ways that look shortest.
+    fn squares(&self, polynomial: &Polynomial) -> Step<Vec<(super::factor::Factored, Polynomial)>> {
+        let mut found: Vec<(usize, super::factor::Factored, Polynomial)> = Vec::new();
+        for directions in self.ring().directions(&[polynomial]) {
+            let factored = factor(&self.ring().reduced(polynomial, directions)?)?;
+            let (whole, rest) = split_square(&factored.unit.clone().abs());
+            let mut outside = super::factor::Factored { unit: whole, factors: Vec::new() };
+            let mut root = Polynomial::constant(rest);
+            for (factor, exponent) in factored.factors {
+                if exponent > 1 {
+                    outside.factors.push((factor.clone(), exponent / 2));
+                }
+                if exponent % 2 == 1 {
+                    root = root.times(&factor)?;
+                }
+            }
+            // P is not negative, so a negative unit belongs to an odd factor.
+            let root = if factored.unit.is_negative() { root.negated() } else { root };
+            let root = self.ring().canonical(&root)?;
+            let size = 3 * root.terms().len()
+                + outside.factors.iter().map(|(factor, _)| factor.terms().len()).sum::<usize>();
+            if !found.iter().any(|(_, known, r)| *known == outside && *r == root) {
+                found.push((size, outside, root));
+            }
+        }
+        found.sort_by_key(|(size, ..)| *size);
+        let least = found.first().map_or(0, |(size, ..)| *size);
+        found.retain(|(size, ..)| *size <= least + 2);
+        Ok(found.into_iter().take(3).map(|(_, outside, root)| (outside, root)).collect())
+    }
+
+    /// Factors in the directions that give the fewest terms.
+    fn shortest_factors(&self, polynomial: &Polynomial) -> Step<super::factor::Factored> {
+        let mut best: Option<(usize, super::factor::Factored)> = None;
+        for directions in self.ring().directions(&[polynomial]) {
+            let factored = factor(&self.ring().reduced(polynomial, directions)?)?;
+            let size = factored.factors.iter().map(|(factor, _)| factor.terms().len()).sum();
+            if best.as_ref().is_none_or(|(least, _)| size < *least) {
+                best = Some((size, factored));
+            }
+        }
+        best.map(|(_, factored)| factored).ok_or(Exhausted)
+    }
+
+    /// l, m, n2: the second derivatives along n.
+    pub fn second(&mut self) -> Step<[Fraction; 3]> {
+        let graph = self.reader.graph;
+        let ranges = self.ranges.clone();
+        let prove = |ring: &Ring, polynomial: &Polynomial| sign(ring, graph, &ranges, polynomial);
+        let mut along = [(); 3].map(|()| Fraction::zero());
+        for (sum, vector) in along.iter_mut().zip(self.second) {
+            for (&formula, component) in vector.iter().zip(&self.direction.clone()) {
+                let second = self.reader.read(formula, &prove)?;
+                let term = self.reader.ring.multiply(&second, &Fraction::whole(component.clone()))?;
+                *sum = self.reader.ring.add(sum, &term)?;
+            }
+        }
+        Ok(along)
+    }
+}
+
+fn include(factors: &mut Vec<(Polynomial, i32)>, factor: &Polynomial, exponent: i32) {
+    match factors.iter_mut().find(|(known, _)| known == factor) {
+        Some((_, total)) => *total += exponent,
+        None => factors.push((factor.clone(), exponent)),
+    }
+}
+
+pub(super) fn dot(ring: &Ring, a: &[Fraction; 3], b: &[Fraction; 3]) -> Step<Fraction> {
+    let mut sum = Fraction::zero();
+    for (a, b) in a.iter().zip(b) {
+        sum = ring.add(&sum, &ring.multiply(a, b)?)?;
+    }
+    Ok(sum)
+}
+
+/// A factor and polynomials without a common one; tried in all directions of the pairs.
+fn take_content(ring: &Ring, vector: &[Fraction; 3]) -> Step<(Fraction, [Polynomial; 3])> {
+    let (denominator, divisor) = common_denominator(&[&vector[0], &vector[1], &vector[2]]);
+    let mut numerators = [(); 3].map(|()| Polynomial::zero());
+    for (numerator, fraction) in numerators.iter_mut().zip(vector) {
+        if !fraction.is_zero() {
+            *numerator = raised(fraction, &denominator, &divisor)?;
+        }
+    }
+    let mut content = Fraction { numerator: Polynomial::one(), divisor, denominator };
+    loop {
+        let all: Vec<&Polynomial> = numerators.iter().collect();
+        let mut best: Option<(Polynomial, Directions)> = None;
+        for directions in ring.directions(&all) {
+            let mut divisor = Polynomial::zero();
+            for numerator in &numerators {
+                divisor = gcd(&divisor, &ring.reduced(numerator, directions)?)?;
+            }
+            let better = best.as_ref().is_none_or(|(known, _)| known.is_constant() && !divisor.is_constant());
+            if better && !divisor.is_zero() {
+                best = Some((divisor, directions));
+            }
+        }
+        let Some((divisor, directions)) = best else { break };
+        if divisor.is_one() {
+            break;
+        }
+        for numerator in &mut numerators {
+            let reduced = ring.reduced(numerator, directions)?;
+            *numerator = ring.canonical(&super::gcd::exact(&reduced, &divisor)?)?;
+        }
+        content.numerator = content.numerator.times(&divisor)?;
+        if divisor.is_constant() {
+            break;
+        }
+    }
+    content.numerator = ring.canonical(&content.numerator)?;
+    Ok((ring.cancelled(content)?, numerators))
+}
+
+impl Printer<'_> {
+    /// A value with a root, in its shortest form.
+    pub fn rooted(&mut self, value: &Rooted) -> Step<Form> {
+        let mut number = ratio(IBig::ONE, value.outside.divisor.clone());
+        let mut exponents = [0i8; GENERATORS];
+        let mut others: Vec<(Form, Exponent)> = Vec::new();
+        let above = factor_for_print(&self.ring, &value.outside.numerator)?;
+        number *= RBig::from(above.unit.clone());
+        let mut negative = is_negative(&number);
+        let all = above.factors.iter().map(|(factor, exponent)| (factor, *exponent as i32));
+        let below = value.outside.denominator.iter().map(|(factor, exponent)| (factor, -(*exponent as i32)));
+        for (factor, exponent) in all.chain(below) {
+            match single_generator(factor) {
+                Some(generator) => exponents[generator] += i8::try_from(exponent).map_err(|_| Exhausted)?,
+                None => {
+                    let (minus, mut form) = self.sum(&Laurent::of(factor)?)?;
+                    if minus && exponent % 2 != 0 {
+                        negative = !negative;
+                    }
+                    if negative && exponent % 2 != 0 && let Some(turned) = flipped(&form) {
+                        form = turned;
+                        negative = false;
+                    }
+                    others.push((form, (i64::from(exponent), 1)));
+                }
+            }
+        }
+        for (factor, exponent) in &value.bars {
+            let (_, inner) = self.sum(&Laurent::of(factor)?)?;
+            others.push((Form::Call("abs".to_owned(), vec![inner]), (i64::from(*exponent), 1)));
+        }
+        let number = number.abs();
+        let mut best: Option<Form> = None;
+        for (moved_number, moved) in movable(&number, &exponents, value.power == 1 && value.bars.is_empty()) {
+            // What moves under the root does so as its square.
+            let inside = Laurent::of(&value.root)?.times(&(&moved_number * &moved_number), &moved.map(|e| 2 * e))?;
+            let mut factors = others.clone();
+            let mut left = exponents;
+            left.iter_mut().zip(moved).for_each(|(left, moved)| *left -= moved);
+            factors.extend(self.generator_powers(&left)?);
+            if value.power != 0 {
+                let (minus, form) = self.sum(&inside)?;
+                let form = match (minus, flipped(&form)) {
+                    (false, _) => form,
+                    (true, Some(turned)) => turned,
+                    (true, None) => Form::Negate(Box::new(form)),
+                };
+                push_root(&mut factors, form, i64::from(value.power));
+            }
+            let form = product(&(&number / &moved_number), factors);
+            if best.as_ref().is_none_or(|known| form.operations() < known.operations()) {
+                best = Some(form);
+            }
+        }
+        let best = best.ok_or(Exhausted)?;
+        Ok(if negative { Form::Negate(Box::new(best)) } else { best })
+    }
+}
+
+/// A root beside other factors: f sqrt(f) is f^(3/2), 1/(f sqrt(f)) is 1/f^(3/2).
+fn push_root(factors: &mut Vec<(Form, Exponent)>, form: Form, power: i64) {
+    match factors.iter_mut().find(|(known, (_, root))| *known == form && *root == 1) {
+        Some((_, exponent)) => *exponent = (2 * exponent.0 + power, 2),
+        None => factors.push((form, (power, 2))),
+    }
+}
+
+/// What may move under the root: nothing, what stands below the bar, the numbers, or everything.
+fn movable(number: &RBig, exponents: &[i8; GENERATORS], may: bool) -> Vec<(RBig, [i8; GENERATORS])> {
+    let none = [0i8; GENERATORS];
+    let mut choices = vec![(RBig::ONE, none)];
+    if !may {
+        return choices;
+    }
+    let below = exponents.map(|e| e.min(0));
+    let divisor = ratio(IBig::ONE, IBig::from(number.denominator().clone()));
+    for choice in [
+        (divisor.clone(), none),
+        (divisor.clone(), below),
+        (RBig::ONE, below),
+        (number.clone(), none),
+        (number.clone(), below),
+        (number.clone(), *exponents),
+    ] {
+        if !choices.contains(&choice) {
+            choices.push(choice);
+        }
+    }
+    choices
+}
+
+fn factor_for_print(ring: &Ring, polynomial: &Polynomial) -> Step<super::factor::Factored> {
+    let mut best: Option<(usize, super::factor::Factored)> = None;
+    for directions in ring.directions(&[polynomial]) {
+        let factored = factor(&ring.reduced(polynomial, directions)?)?;
+        let size = factored.factors.iter().map(|(factor, _)| factor.terms().len()).sum();
+        if best.as_ref().is_none_or(|(least, _)| size < *least) {
+            best = Some((size, factored));
+        }
+    }
+    best.map(|(_, factored)| factored).ok_or(Exhausted)
+}
+
+/// The nodes that the search for one form may explore.
+pub(super) fn node_allowance() -> usize {
+    NODES
+}

@@ -1,0 +1,23 @@
+//! Closed forms: the area element, the fundamental forms and the curvatures of a patch as a paper would print them.
+//!
+//! Formulas become elements of a ring of polynomials with known relations (`ring`, `read`); factors, squares and signs are
+//! found there by exact arithmetic (`gcd`, `factor`, `sign`); a bounded search writes the result in its shortest form
+//! (`plan`, `product`).
+
+mod closed;
+mod factor;
+mod form;
+mod forms;
+mod fraction;
+mod gcd;
+mod meter;
+mod plan;
+mod polynomial;
+mod product;
+mod read;
+mod region;
+mod ring;
+mod sign;
+
+pub use form::{Form, NameKind};
+pub use forms::{ClosedForms, closed_forms};

@@ -1,0 +1,219 @@
+//! Products and sums for the page: which factor stands where, and which powers are merged.
+
+use super::form::{Form, NameKind};
+use dashu_base::{Signed, UnsignedAbs};
+use dashu_int::{IBig, UBig};
+use dashu_ratio::RBig;
+
+/// An exponent p/q, q 1 or 2.
+pub(super) type Exponent = (i64, i64);
+
+/// The product of a positive rational number and powers of forms, shortest merging of equal exponents included.
+pub(super) fn product(number: &RBig, factors: Vec<(Form, Exponent)>) -> Form {
+    let mut number = number.clone();
+    let mut flat = Vec::new();
+    for (form, exponent) in factors {
+        dissolve(form, exponent, &mut number, &mut flat);
+    }
+    let (p, q) = (number.numerator().clone().unsigned_abs(), number.denominator().clone());
+    let mut factors: Vec<(Form, Exponent)> = flat.into_iter().filter(|(_, (p, _))| *p != 0).collect();
+    factors.sort_by_key(|(form, _)| rank(form));
+    let plain = build(&p, &q, &factors);
+    let mut best = plain;
+    let mut powers: Vec<i64> = factors.iter().filter(|(_, e)| e.1 == 1).map(|(_, e)| e.0.abs()).filter(|e| *e > 1).collect();
+    powers.sort_unstable();
+    powers.dedup();
+    for power in powers {
+        let belongs = |(form, exponent): &(Form, Exponent)| {
+            exponent.1 == 1 && exponent.0.abs() == power && !matches!(form, Form::Sum(_))
+        };
+        if factors.iter().filter(|factor| belongs(factor)).count() < 2 {
+            continue;
+        }
+        let (members, mut others): (Vec<_>, Vec<_>) = factors.iter().cloned().partition(belongs);
+        let members: Vec<_> = members.into_iter().map(|(form, (e, _))| (form, (e.signum(), 1))).collect();
+        // Numbers that are such a power go inside.
+        let root = |value: &UBig| exact_root(value, power as usize);
+        let (inner_p, outer_p) = root(&p).map_or((UBig::ONE, p.clone()), |root| (root, UBig::ONE));
+        let (inner_q, outer_q) = root(&q).map_or((UBig::ONE, q.clone()), |root| (root, UBig::ONE));
+        let inner = build(&inner_p, &inner_q, &members);
+        others.push((inner, (power, 1)));
+        others.sort_by_key(|(form, _)| rank(form));
+        let merged = build(&outer_p, &outer_q, &others);
+        if merged.operations() < best.operations() {
+            best = merged;
+        }
+    }
+    best
+}
+
+/// Factors of products and numbers go where they belong, equal bases together.
+fn dissolve(form: Form, exponent: Exponent, number: &mut RBig, flat: &mut Vec<(Form, Exponent)>) {
+    let (power, root) = exponent;
+    match form {
+        Form::Product(above, below) if root == 1 => {
+            above.into_iter().for_each(|form| dissolve(form, (power, 1), number, flat));
+            below.into_iter().for_each(|form| dissolve(form, (-power, 1), number, flat));
+        }
+        Form::Number(text) if root == 1 && text.len() <= 9 && text.parse::<u64>().is_ok_and(|n| n > 0) => {
+            let value = RBig::from(text.parse::<u64>().expect("just parsed"));
+            let value = value.pow(power.abs() as isize);
+            *number = if power < 0 { &*number / value } else { &*number * value };
+        }
+        Form::Power(base, inner) if root == 1 => match &*inner {
+            Form::Number(n) if n.parse::<i64>().is_ok_and(|n| n < 1_000) => {
+                let inner = n.parse::<i64>().expect("just parsed");
+                dissolve(*base, (power * inner, 1), number, flat);
+            }
+            _ => flat.push((Form::Power(base, inner), exponent)),
+        },
+        form => match flat.iter_mut().find(|(known, (_, own))| *known == form && *own == 1 && root == 1) {
+            Some((_, (total, _))) => *total += power,
+            None => flat.push((form, exponent)),
+        },
+    }
+}
+
+fn exact_root(value: &UBig, index: usize) -> Option<UBig> {
+    if *value == UBig::ONE {
+        return Some(UBig::ONE);
+    }
+    let root = value.nth_root(index);
+    (root.pow(index) == *value).then_some(root)
+}
+
+fn build(p: &UBig, q: &UBig, factors: &[(Form, Exponent)]) -> Form {
+    let (mut above, mut below) = (Vec::new(), Vec::new());
+    if *p != UBig::ONE {
+        above.push(Form::Number(p.to_string()));
+    }
+    if *q != UBig::ONE {
+        below.push(Form::Number(q.to_string()));
+    }
+    for (form, (exponent, root)) in factors {
+        let side = if *exponent > 0 { &mut above } else { &mut below };
+        match powered(form, exponent.abs(), *root) {
+            // A product inside a product is written out.
+            Form::Product(numerator, denominator) if *exponent > 0 && *root == 1 && exponent.abs() == 1 => {
+                above.extend(numerator);
+                below.extend(denominator);
+            }
+            Form::Number(one) if one == "1" => {}
+            other => side.push(other),
+        }
+    }
+    fraction(above, below)
+}
+
+/// `above/below`, without empty products.
+pub(super) fn fraction(mut above: Vec<Form>, below: Vec<Form>) -> Form {
+    above.sort_by_key(rank);
+    match (above.len(), below.len()) {
+        (0, 0) => Form::integer(1),
+        (1, 0) => above.remove(0),
+        _ => Form::Product(above, below),
+    }
+}
+
+/// A form to the power `exponent/root`.
+pub(super) fn powered(form: &Form, exponent: i64, root: i64) -> Form {
+    let number = |value: i64| Form::integer(value.unsigned_abs());
+    match (exponent, root) {
+        (1, 1) => form.clone(),
+        (_, 1) => match form {
+            Form::Power(base, inner) => match &**inner {
+                Form::Number(n) if n.parse::<i64>().is_ok_and(|n| n * exponent < 1_000) => {
+                    let total = n.parse::<i64>().expect("just parsed") * exponent;
+                    Form::Power(base.clone(), Box::new(number(total)))
+                }
+                _ => Form::Power(Box::new(form.clone()), Box::new(number(exponent))),
+            },
+            _ => Form::Power(Box::new(form.clone()), Box::new(number(exponent))),
+        },
+        (1, _) => Form::Call("sqrt".to_owned(), vec![form.clone()]),
+        _ => {
+            let quotient = Form::Product(vec![number(exponent)], vec![number(root)]);
+            Form::Power(Box::new(form.clone()), Box::new(quotient))
+        }
+    }
+}
+
+/// The sum of terms with signs: numbers and parameters first, a positive term in front.
+pub(super) fn sum(terms: Vec<(bool, Form)>) -> Form {
+    let mut flat = Vec::with_capacity(terms.len());
+    for (negative, term) in terms {
+        match term {
+            Form::Sum(inner) => flat.extend(inner.into_iter().map(|(n, term)| (n != negative, term))),
+            Form::Negate(inner) => flat.push((!negative, *inner)),
+            other => flat.push((negative, other)),
+        }
+    }
+    flat.sort_by_key(|(_, term)| weight(term));
+    if let Some(first) = flat.iter().position(|(negative, _)| !negative) {
+        let leader = flat.remove(first);
+        flat.insert(0, leader);
+    }
+    match flat.len() {
+        0 => Form::integer(0),
+        1 => {
+            let (negative, term) = flat.remove(0);
+            if negative { Form::Negate(Box::new(term)) } else { term }
+        }
+        _ => Form::Sum(flat),
+    }
+}
+
+/// The sum with all signs turned, if that costs nothing: `a - b` becomes `b - a`.
+pub(super) fn flipped(form: &Form) -> Option<Form> {
+    match form {
+        Form::Sum(terms) if terms.iter().any(|(negative, _)| *negative) => {
+            Some(sum(terms.iter().map(|(negative, term)| (!negative, term.clone())).collect()))
+        }
+        _ => None,
+    }
+}
+
+/// Order of factors: numbers, parameters, variables, functions, sums, roots.
+pub(super) fn rank(form: &Form) -> (u8, u8) {
+    match form {
+        Form::Number(_) => (0, 0),
+        Form::Pi => (1, 0),
+        Form::Name(_, NameKind::Parameter) => (2, 0),
+        Form::Name(_, NameKind::Variable) => (3, 0),
+        Form::Call(name, _) if name == "sqrt" => (8, 0),
+        Form::Call(..) => (5, 0),
+        Form::Power(base, _) => match rank(base) {
+            (place, 0) => (place, 0),
+            other => other,
+        },
+        Form::Product(above, below) => above.iter().chain(below).map(rank).max().unwrap_or((4, 0)),
+        Form::Sum(_) => (6, 0),
+        Form::Negate(_) | Form::Relation(..) | Form::Not(_) => (7, 0),
+    }
+}
+
+/// Order of terms: what varies least comes first.
+fn weight(form: &Form) -> u8 {
+    match form {
+        Form::Number(_) => 0,
+        Form::Pi => 1,
+        Form::Name(_, NameKind::Parameter) => 2,
+        Form::Name(_, NameKind::Variable) => 4,
+        Form::Call(_, arguments) => arguments.iter().map(weight).max().unwrap_or(0).max(3) + 1,
+        Form::Sum(terms) => terms.iter().map(|(_, term)| weight(term)).max().unwrap_or(0),
+        Form::Product(above, below) => above.iter().chain(below).map(weight).max().unwrap_or(0),
+        Form::Power(base, _) => weight(base),
+        Form::Negate(inner) | Form::Not(inner) => weight(inner),
+        Form::Relation(_, left, right) => weight(left).max(weight(right)),
+    }
+}
+
+/// Whether a rational number is below 0.
+pub(super) fn is_negative(value: &RBig) -> bool {
+    value.is_negative()
+}
+
+/// A rational number from integers, the divisor positive.
+pub(super) fn ratio(numerator: IBig, divisor: IBig) -> RBig {
+    RBig::from_parts_signed(numerator, divisor)
+}

@@ -1,0 +1,186 @@
+//! The ring that closed forms live in: polynomials in generators with known relations.
+//!
+//! A generator is a symbol, a sine, an exponential, a root, or any other function value that stands for itself. Sines
+//! and cosines of commensurate arguments become polynomials in one pair (s, c) with s^2 + c^2 = 1, likewise sinh and cosh
+//! with c^2 - s^2 = 1; a root q of index n has q^n equal to its radicand. The relations are true, so a polynomial that reduces to
+//! zero is zero as a function; the converse needs the generators to be otherwise independent, which they nearly always are.
+
+use super::fraction::Fraction;
+use super::meter::{Exhausted, Step};
+use super::polynomial::{GENERATORS, Polynomial};
+use crate::expression::{Exact, ExpressionId, SymbolId};
+use dashu_int::IBig;
+
+/// What a generator stands for.
+#[derive(Clone, PartialEq, Debug)]
+pub(super) enum Kind {
+    Symbol(SymbolId),
+    Pi,
+    /// A number of the sheet that acts as a named constant.
+    Literal(Exact),
+    /// The sine of an angle; its cosine is the next generator.
+    Sin(AngleId),
+    Cos(AngleId),
+    /// The hyperbolic sine of an angle; its hyperbolic cosine is the next generator.
+    Sinh(AngleId),
+    Cosh(AngleId),
+    Exp(AngleId),
+    /// The principal root of given index of a polynomial.
+    Root(u8, Polynomial),
+    /// Any other function value.
+    Opaque(ExpressionId),
+}
+
+/// Index of an argument in [`Ring::angles`].
+#[derive(Clone, Copy, PartialEq, Eq, Hash, Debug)]
+pub(super) struct AngleId(pub usize);
+
+/// The generators of one simplification and their relations.
+#[derive(Clone, Debug, Default)]
+pub(super) struct Ring {
+    pub generators: Vec<Kind>,
+    /// Base arguments of sines, hyperbolic sines and exponentials.
+    pub angles: Vec<Fraction>,
+}
+
+/// For each pair (s, c), in order, whether s stays and c^2 is replaced; otherwise c stays and s^2 is replaced.
+#[derive(Clone, Copy, PartialEq, Eq, Hash, Debug, Default)]
+pub(super) struct Directions(pub u32);
+
+impl Directions {
+    pub fn keeps_sine(self, pair: usize) -> bool {
+        self.0 >> pair & 1 == 1
+    }
+}
+
+/// A pair (s, c) = (sin, cos) or (sinh, cosh).
+#[derive(Clone, Copy, PartialEq, Eq, Debug)]
+pub(super) struct Pair {
+    pub sine: usize,
+    pub cosine: usize,
+    pub hyperbolic: bool,
+    pub angle: AngleId,
+}
+
+impl Ring {
+    /// The generator of a kind, added if it is new.
+    pub fn generator(&mut self, kind: Kind) -> Step<usize> {
+        if let Some(known) = self.generators.iter().position(|known| *known == kind) {
+            return Ok(known);
+        }
+        if self.generators.len() == GENERATORS {
+            return Err(Exhausted);
+        }
+        self.generators.push(kind);
+        Ok(self.generators.len() - 1)
+    }
+
+    /// The pairs (s, c), in order.
+    pub fn pairs(&self) -> Vec<Pair> {
+        let pair = |(sine, kind): (usize, &Kind)| match kind {
+            Kind::Sin(angle) => Some(Pair { sine, cosine: sine + 1, hyperbolic: false, angle: *angle }),
+            Kind::Sinh(angle) => Some(Pair { sine, cosine: sine + 1, hyperbolic: true, angle: *angle }),
+            _ => None,
+        };
+        self.generators.iter().enumerate().filter_map(pair).collect()
+    }
+
+    /// All directions for the pairs that polynomials use; the first replaces every s^2.
+    pub fn directions(&self, polynomials: &[&Polynomial]) -> Vec<Directions> {
+        let used: Vec<usize> = self
+            .pairs()
+            .iter()
+            .enumerate()
+            .filter(|(_, pair)| polynomials.iter().any(|p| p.degree(pair.sine) > 1 || p.degree(pair.cosine) > 1))
+            .map(|(place, _)| place)
+            .take(4)
+            .collect();
+        (0..1u32 << used.len())
+            .map(|choice| {
+                Directions(used.iter().enumerate().map(|(bit, place)| (choice >> bit & 1) << place).sum())
+            })
+            .collect()
+    }
+
+    /// The normal form for given directions: roots below their index, one generator of each pair at most linear.
+    pub fn reduced(&self, polynomial: &Polynomial, directions: Directions) -> Step<Polynomial> {
+        let mut result = self.without_root_powers(polynomial)?;
+        for (place, pair) in self.pairs().into_iter().enumerate() {
+            let keeps_sine = directions.keeps_sine(place);
+            let (gone, kept) = if keeps_sine { (pair.cosine, pair.sine) } else { (pair.sine, pair.cosine) };
+            if result.degree(gone) < 2 {
+                continue;
+            }
+            let square = Polynomial::generator(kept).power(2)?;
+            let one = Polynomial::one();
+            // s^2 = 1 - c^2, c^2 = 1 - s^2; sinh^2 = cosh^2 - 1, cosh^2 = 1 + sinh^2.
+            let replacement = match (pair.hyperbolic, keeps_sine) {
+                (false, _) => one.minus(&square),
+                (true, false) => square.minus(&one),
+                (true, true) => one.plus(&square),
+            };
+            result = replace_power(&result, gone, 2, &replacement)?;
+        }
+        Ok(result)
+    }
+
+    /// The normal form that keeps cosines.
+    pub fn canonical(&self, polynomial: &Polynomial) -> Step<Polynomial> {
+        self.reduced(polynomial, Directions::default())
+    }
+
+    /// The product in normal form.
+    pub fn product(&self, a: &Polynomial, b: &Polynomial) -> Step<Polynomial> {
+        self.canonical(&a.times(b)?)
+    }
+
+    fn without_root_powers(&self, polynomial: &Polynomial) -> Step<Polynomial> {
+        let mut result = polynomial.clone();
+        // Radicands contain earlier generators only.
+        for (place, kind) in self.generators.iter().enumerate().rev() {
+            if let Kind::Root(index, radicand) = kind
+                && result.degree(place) >= *index
+            {
+                result = replace_power(&result, place, *index, radicand)?;
+            }
+        }
+        Ok(result)
+    }
+
+    /// Whether a generator's value depends on a symbol.
+    pub fn depends_on(&self, generator: usize, symbol: SymbolId, graph: &crate::expression::Graph) -> bool {
+        let in_polynomial = |p: &Polynomial| p.generators().into_iter().any(|g| self.depends_on(g, symbol, graph));
+        match &self.generators[generator] {
+            Kind::Symbol(own) => *own == symbol,
+            Kind::Pi | Kind::Literal(_) => false,
+            Kind::Sin(angle) | Kind::Cos(angle) | Kind::Sinh(angle) | Kind::Cosh(angle) | Kind::Exp(angle) => {
+                let argument = &self.angles[angle.0];
+                in_polynomial(&argument.numerator) || argument.denominator.iter().any(|(p, _)| in_polynomial(p))
+            }
+            Kind::Root(_, radicand) => in_polynomial(radicand),
+            Kind::Opaque(expression) => graph.depends_on(*expression, symbol),
+        }
+    }
+}
+
+/// Replaces `generator^index` as often as it divides.
+fn replace_power(polynomial: &Polynomial, generator: usize, index: u8, replacement: &Polynomial) -> Step<Polynomial> {
+    let coefficients = polynomial.coefficients(generator);
+    let mut sum = Polynomial::zero();
+    let mut power = Polynomial::one();
+    for (whole, block) in coefficients.chunks(usize::from(index)).enumerate() {
+        if whole > 0 {
+            power = power.times(replacement)?;
+        }
+        for (rest, coefficient) in block.iter().enumerate() {
+            let low = super::polynomial::Monomial::generator(generator, rest as u8);
+            sum = sum.plus(&coefficient.times(&power)?.times_monomial(&low)?);
+        }
+    }
+    Ok(sum)
+}
+
+/// A small integer as a polynomial coefficient.
+pub(super) fn integer(value: i64) -> IBig {
+    IBig::from(value)
+}

@@ -1,0 +1,623 @@
+//! Proof that a polynomial keeps its sign on the region, under the ranges of the parameters and the assumptions.
+//!
+//! Each generator is written as a rational function of a variable that runs over [0, inf): x in [a, b] is
+//! (a + b t)/(1 + t), x > a is a + t, a sine is put into the box of its values. If the numerator that results has
+//! coefficients of one sign only, the polynomial has that sign (the criterion of Polya and Bernstein; sufficient, not
+//! necessary). Exact arithmetic throughout. Directions of the pairs, factors, and halves of the region are tried in turn.
+
+use super::factor::factor;
+use super::fraction::Fraction;
+use super::meter::Step;
+use super::polynomial::{GENERATORS, Monomial, Polynomial};
+use super::ring::{AngleId, Kind, Ring};
+use crate::expression::{Exact, ExpressionId, Function, Graph, Node};
+use dashu_int::IBig;
+use dashu_ratio::RBig;
+use std::f64::consts::PI;
+
+/// Bounds of a symbol, as elements of the ring; several lower or upper ones may be known.
+#[derive(Clone, Debug, Default)]
+pub(super) struct Range {
+    pub lower: Vec<Fraction>,
+    pub upper: Vec<Fraction>,
+}
+
+/// What is known of the symbols.
+#[derive(Clone, Debug, Default)]
+pub(super) struct Ranges {
+    /// By generator; a generator that is missing is any real number.
+    pub symbols: Vec<(usize, Range)>,
+    /// The generators that are halved when a first attempt fails: the variables of the patch.
+    pub variables: Vec<usize>,
+}
+
+/// How often the region is halved in each variable.
+const HALVINGS: u32 = 3;
+
+/// The largest number of choices between several bounds of one symbol.
+const CHOICES: usize = 12;
+
+impl Ranges {
+    pub fn of(&self, generator: usize) -> Option<&Range> {
+        self.symbols.iter().find(|(own, _)| *own == generator).map(|(_, range)| range)
+    }
+
+    pub fn entry(&mut self, generator: usize) -> &mut Range {
+        let place = match self.symbols.iter().position(|(own, _)| *own == generator) {
+            Some(place) => place,
+            None => {
+                self.symbols.push((generator, Range::default()));
+                self.symbols.len() - 1
+            }
+        };
+        &mut self.symbols[place].1
+    }
+}
+
+/// 1 if the polynomial is proved nonnegative, -1 if nonpositive.
+pub(super) fn sign(ring: &Ring, graph: &Graph, ranges: &Ranges, polynomial: &Polynomial) -> Option<i8> {
+    Prover { ring, graph, ranges }.sign(polynomial, HALVINGS).ok().flatten()
+}
+
+struct Prover<'a> {
+    ring: &'a Ring,
+    graph: &'a Graph,
+    ranges: &'a Ranges,
+}
+
+/// Pairs, by their sines, whose generators stand for the functions of twice the angle in a polynomial.
+type Doubled = Vec<usize>;
+
+/// A generator as numerator/denominator in the variable that takes its place; the denominator is positive.
+struct Cover {
+    numerator: Polynomial,
+    denominator: Polynomial,
+}
+
+impl Prover<'_> {
+    fn sign(&self, polynomial: &Polynomial, halvings: u32) -> Step<Option<i8>> {
+        let canonical = self.ring.canonical(polynomial)?;
+        if let Some(sign) = self.at_once(&canonical)? {
+            return Ok(Some(sign));
+        }
+        let factored = factor(&canonical)?;
+        if factored.factors.len() > 1 || factored.factors.iter().any(|(_, exponent)| *exponent > 1) {
+            let mut sign = if factored.unit < IBig::ZERO { -1 } else { 1 };
+            let mut complete = true;
+            for (factor, _) in factored.factors.iter().filter(|(_, exponent)| exponent % 2 == 1) {
+                match self.sign(factor, 0)? {
+                    Some(own) => sign *= own,
+                    None => complete = false,
+                }
+            }
+            if complete {
+                return Ok(Some(sign));
+            }
+        }
+        if halvings == 0 {
+            return Ok(None);
+        }
+        self.by_halves(&canonical, halvings)
+    }
+
+    fn at_once(&self, polynomial: &Polynomial) -> Step<Option<i8>> {
+        for directions in self.ring.directions(&[polynomial]) {
+            let reduced = self.ring.reduced(polynomial, directions)?;
+            if let Some(sign) = self.with_choices(&reduced, &Doubled::new())? {
+                return Ok(Some(sign));
+            }
+        }
+        let (lifted, doubled) = self.lifted(polynomial)?;
+        if doubled.is_empty() { Ok(None) } else { self.with_choices(&lifted, &doubled) }
+    }
+
+    fn with_choices(&self, polynomial: &Polynomial, doubled: &Doubled) -> Step<Option<i8>> {
+        for choice in 0..CHOICES {
+            match self.attempt(polynomial, doubled, choice)? {
+                Attempt::Proved(sign) => return Ok(Some(sign)),
+                Attempt::Open { more: false } => break,
+                Attempt::Open { more: true } => {}
+            }
+        }
+        Ok(None)
+    }
+
+    /// A positive multiple of the polynomial in the double angle of each pair that has even degrees only: 2 s^2 is
+    /// 1 - C, 2 c^2 is 1 + C, 2 s c is S. The sines and cosines of an angle are boxed one by one, which loses that
+    /// 2 c^2 - 1 is a single cosine.
+    fn lifted(&self, polynomial: &Polynomial) -> Step<(Polynomial, Doubled)> {
+        let mut lifted = polynomial.clone();
+        let mut doubled = Doubled::new();
+        for pair in self.ring.pairs() {
+            let degrees = |monomial: &Monomial| monomial.0[pair.sine] + monomial.0[pair.cosine];
+            let highest = lifted.terms().iter().map(|(monomial, _)| degrees(monomial)).max().unwrap_or(0);
+            let even = lifted.terms().iter().all(|(monomial, _)| degrees(monomial) % 2 == 0);
+            if pair.hyperbolic || !even || highest == 0 || highest > 8 {
+                continue;
+            }
+            let cosine = Polynomial::generator(pair.cosine);
+            let (minus, plus) = (Polynomial::one().minus(&cosine), Polynomial::one().plus(&cosine));
+            let mut sum = Polynomial::zero();
+            for (monomial, x) in lifted.terms() {
+                let (i, j) = (monomial.0[pair.sine], monomial.0[pair.cosine]);
+                let mut rest = *monomial;
+                rest.0[pair.sine] = i % 2;
+                rest.0[pair.cosine] = 0;
+                let missing = u32::from(highest - i - j) / 2;
+                let term = Polynomial::term(rest, x * IBig::from(2).pow(missing as usize));
+                sum = sum.plus(&term.times(&minus.power(u32::from(i / 2))?)?.times(&plus.power(u32::from(j / 2))?)?);
+            }
+            lifted = sum;
+            doubled.push(pair.sine);
+        }
+        Ok((lifted, doubled))
+    }
+
+    /// Both halves of the region, in the first variable that occurs, directly or in a function.
+    fn by_halves(&self, polynomial: &Polynomial, halvings: u32) -> Step<Option<i8>> {
+        for &variable in &self.ranges.variables {
+            let Kind::Symbol(symbol) = self.ring.generators[variable] else { continue };
+            let occurs = polynomial.generators().iter().any(|&g| self.ring.depends_on(g, symbol, self.graph));
+            let Some(range) = self.ranges.of(variable).filter(|_| occurs) else { continue };
+            let ([lower, ..], [upper, ..]) = (&range.lower[..], &range.upper[..]) else { continue };
+            let half = Fraction { divisor: IBig::from(2), ..Fraction::whole(Polynomial::one()) };
+            let middle = self.ring.multiply(&self.ring.add(lower, upper)?, &half)?;
+            let mut signs = [None; 2];
+            for (place, (lower, upper)) in [(lower, &middle), (&middle, upper)].into_iter().enumerate() {
+                let mut ranges = self.ranges.clone();
+                *ranges.entry(variable) = Range { lower: vec![lower.clone()], upper: vec![upper.clone()] };
+                // The next halving takes the other variable.
+                ranges.variables.rotate_left(1);
+                let part = Prover { ranges: &ranges, ..*self };
+                signs[place] = match part.at_once(polynomial)? {
+                    Some(sign) => Some(sign),
+                    None if halvings > 1 => part.by_halves(polynomial, halvings - 1)?,
+                    None => None,
+                };
+                if signs[place].is_none() {
+                    return Ok(None);
+                }
+            }
+            if signs[0] == signs[1] {
+                return Ok(signs[0]);
+            }
+            return Ok(None);
+        }
+        Ok(None)
+    }
+
+    /// One substitution; `choice` picks among several bounds of the symbols.
+    fn attempt(&self, polynomial: &Polynomial, doubled: &Doubled, choice: usize) -> Step<Attempt> {
+        let mut rest = polynomial.clone();
+        let mut done = [false; GENERATORS];
+        let mut spare = GENERATORS;
+        let mut choices = Choices { left: choice, more: false };
+        // Functions first, then symbols, each before those that its bounds mention.
+        let functions = (0..self.ring.generators.len()).filter(|&g| !matches!(self.ring.generators[g], Kind::Symbol(_)));
+        let numbers = |g: &usize| matches!(self.ring.generators[*g], Kind::Pi | Kind::Literal(_));
+        for generator in functions.clone().filter(|g| !numbers(g)) {
+            let Some(next) = self.replaced(&rest, generator, doubled, &mut spare, &mut choices)? else {
+                return Ok(Attempt::Open { more: choices.more });
+            };
+            rest = next;
+        }
+        while let Some(generator) = self.next_symbol(&rest, &done) {
+            let Some(next) = self.replaced(&rest, generator, doubled, &mut spare, &mut choices)? else {
+                return Ok(Attempt::Open { more: choices.more });
+            };
+            rest = next;
+            done[generator] = true;
+        }
+        for generator in functions.filter(numbers) {
+            let Some(next) = self.replaced(&rest, generator, doubled, &mut spare, &mut choices)? else {
+                return Ok(Attempt::Open { more: choices.more });
+            };
+            rest = next;
+        }
+        Ok(match rest.common_sign() {
+            Some(sign) => Attempt::Proved(sign),
+            None => Attempt::Open { more: choices.more },
+        })
+    }
+
+    /// A symbol that occurs and that no bound of another one mentions.
+    fn next_symbol(&self, polynomial: &Polynomial, done: &[bool; GENERATORS]) -> Option<usize> {
+        let waiting: Vec<usize> = (0..self.ring.generators.len())
+            .filter(|&g| !done[g] && matches!(self.ring.generators[g], Kind::Symbol(_)) && polynomial.uses(g))
+            .collect();
+        let mentioned = |g: usize| waiting.iter().any(|&other| other != g && self.mentions(other, g));
+        waiting.iter().copied().find(|&g| !mentioned(g)).or(waiting.first().copied())
+    }
+
+    fn mentions(&self, symbol: usize, other: usize) -> bool {
+        let uses = |fraction: &Fraction| {
+            fraction.numerator.uses(other) || fraction.denominator.iter().any(|(factor, _)| factor.uses(other))
+        };
+        self.ranges.of(symbol).is_some_and(|range| range.lower.iter().chain(&range.upper).any(uses))
+    }
+
+    /// The polynomial with a generator covered; `None` if nothing is known that helps.
+    fn replaced(
+        &self,
+        polynomial: &Polynomial,
+        generator: usize,
+        doubled: &Doubled,
+        spare: &mut usize,
+        choices: &mut Choices,
+    ) -> Step<Option<Polynomial>> {
+        if !polynomial.uses(generator) {
+            return Ok(Some(polynomial.clone()));
+        }
+        let even = polynomial.terms().iter().all(|(monomial, _)| monomial.0[generator] % 2 == 0);
+        if even && let Some(cover) = self.square_cover(generator, doubled)? {
+            let halved = Polynomial::collect(polynomial.terms().iter().map(|(monomial, x)| {
+                let mut half = *monomial;
+                half.0[generator] /= 2;
+                (half, x.clone())
+            }));
+            return Ok(Some(halved.substituted_fraction(generator, &cover.numerator, &cover.denominator)?));
+        }
+        let cover = match self.cover(generator, doubled, choices)? {
+            Some(cover) => cover,
+            None => {
+                // Any real number: the difference of two that are not negative.
+                *spare -= 1;
+                if *spare < self.ring.generators.len() {
+                    return Ok(None);
+                }
+                let difference = Polynomial::generator(generator).minus(&Polynomial::generator(*spare));
+                Cover { numerator: difference, denominator: Polynomial::one() }
+            }
+        };
+        Ok(Some(polynomial.substituted_fraction(generator, &cover.numerator, &cover.denominator)?))
+    }
+
+    fn cover(&self, generator: usize, doubled: &Doubled, choices: &mut Choices) -> Step<Option<Cover>> {
+        let t = Polynomial::generator(generator);
+        let whole = |numerator| Ok(Some(Cover { numerator, denominator: Polynomial::one() }));
+        match &self.ring.generators[generator] {
+            Kind::Symbol(_) => match self.ranges.of(generator) {
+                Some(range) => self.symbol_cover(range, t, choices),
+                None => Ok(None),
+            },
+            // 333/106 < pi < 355/113
+            Kind::Pi => between(&RBig::from_parts(333.into(), 106u8.into()), &RBig::from_parts(355.into(), 113u8.into()), &t),
+            Kind::Literal(value) => {
+                let value = exact_rational(value);
+                between(&value, &value, &t)
+            }
+            Kind::Sin(angle) | Kind::Cos(angle) => {
+                let (lower, upper) = self.circular_box(*angle, generator, doubled);
+                between(&lower, &upper, &t)
+            }
+            Kind::Cosh(_) => whole(t.plus(&Polynomial::one())),
+            Kind::Sinh(angle) => {
+                let (lower, upper) = self.numeric(&self.ring.angles[angle.0], 4);
+                if lower >= 0.0 {
+                    whole(t)
+                } else if upper <= 0.0 {
+                    whole(t.negated())
+                } else {
+                    Ok(None)
+                }
+            }
+            Kind::Exp(_) => whole(t),
+            Kind::Root(index, _) if index % 2 == 0 => whole(t),
+            Kind::Root(..) | Kind::Opaque(_) => {
+                let (lower, upper) = self.numeric_generator(generator, 4);
+                if lower >= 0.0 {
+                    whole(t)
+                } else if upper <= 0.0 {
+                    whole(t.negated())
+                } else {
+                    Ok(None)
+                }
+            }
+        }
+    }
+
+    /// The square of a generator, where its range is known.
+    fn square_cover(&self, generator: usize, doubled: &Doubled) -> Step<Option<Cover>> {
+        let t = Polynomial::generator(generator);
+        match &self.ring.generators[generator] {
+            Kind::Sin(angle) | Kind::Cos(angle) => {
+                let (lower, upper) = self.circular_box(*angle, generator, doubled);
+                let (a, b) = (&lower * &lower, &upper * &upper);
+                let straddles = lower < RBig::ZERO && upper > RBig::ZERO;
+                let least = if straddles { RBig::ZERO } else { a.clone().min(b.clone()) };
+                between(&least, &a.max(b), &t)
+            }
+            Kind::Sinh(_) => Ok(Some(Cover { numerator: t, denominator: Polynomial::one() })),
+            Kind::Opaque(_) | Kind::Root(..) => Ok(Some(Cover { numerator: t, denominator: Polynomial::one() })),
+            Kind::Symbol(_) => match self.ranges.of(generator) {
+                // Symmetric limits: the square runs from 0 to the square of the end.
+                Some(range) => match (&range.lower[..], &range.upper[..]) {
+                    ([lower], [upper]) if *lower == upper.negated() => {
+                        let square = self.ring.multiply(upper, upper)?;
+                        let numerator = square.numerator.times(&t)?;
+                        let below = square.denominator_product()?;
+                        Ok(Some(Cover { numerator, denominator: below.times(&t.plus(&Polynomial::one()))? }))
+                    }
+                    ([], _) | (_, []) if range.lower.is_empty() && range.upper.is_empty() => {
+                        Ok(Some(Cover { numerator: t, denominator: Polynomial::one() }))
+                    }
+                    _ => Ok(None),
+                },
+                None => Ok(Some(Cover { numerator: t, denominator: Polynomial::one() })),
+            },
+            _ => Ok(None),
+        }
+    }
+
+    fn symbol_cover(&self, range: &Range, t: Polynomial, choices: &mut Choices) -> Step<Option<Cover>> {
+        let mut known = Vec::new();
+        for bounds in [&range.lower, &range.upper] {
+            let mut usable = Vec::new();
+            for bound in bounds {
+                // A denominator must be known to be positive.
+                let mut positive = true;
+                for (factor, exponent) in &bound.denominator {
+                    positive &= exponent % 2 == 0 || self.at_once(factor)? == Some(1);
+                }
+                if positive {
+                    usable.push(bound);
+                }
+            }
+            known.push(usable);
+        }
+        let lower = choices.pick(&known[0]);
+        let upper = choices.pick(&known[1]);
+        Ok(match (lower, upper) {
+            (Some(lower), Some(upper)) => {
+                let (below, above) = (lower.denominator_product()?, upper.denominator_product()?);
+                let numerator =
+                    lower.numerator.times(&above)?.plus(&upper.numerator.times(&below)?.times(&t)?);
+                let denominator = below.times(&above)?.times(&t.plus(&Polynomial::one()))?;
+                Some(Cover { numerator, denominator })
+            }
+            (Some(lower), None) => {
+                let denominator = lower.denominator_product()?;
+                Some(Cover { numerator: lower.numerator.plus(&t.times(&denominator)?), denominator })
+            }
+            (None, Some(upper)) => {
+                let denominator = upper.denominator_product()?;
+                Some(Cover { numerator: upper.numerator.minus(&t.times(&denominator)?), denominator })
+            }
+            (None, None) => None,
+        })
+    }
+
+    /// A box for the sine or cosine that a generator stands for.
+    fn circular_box(&self, angle: AngleId, generator: usize, doubled: &Doubled) -> (RBig, RBig) {
+        let sine = matches!(self.ring.generators[generator], Kind::Sin(_));
+        let twice = doubled.contains(&if sine { generator } else { generator - 1 });
+        let factor = if twice { 2u8 } else { 1 };
+        let argument = &self.ring.angles[angle.0];
+        let whole = (-RBig::ONE, RBig::ONE);
+        if let Ok(Some((from, to))) = self.turns(argument) {
+            // In units of a quarter turn; the sine is the cosine a quarter turn earlier.
+            let shift = if sine { RBig::ONE } else { RBig::ZERO };
+            let quarter = |turns: &RBig| turns * RBig::from(2 * factor) - &shift;
+            return cosine_range(&quarter(&from), &quarter(&to));
+        }
+        let (lower, upper) = self.numeric(argument, 4);
+        let (lower, upper) = (lower * f64::from(factor), upper * f64::from(factor));
+        if !(upper - lower < 6.0 && lower.abs() < 1e6) {
+            return whole;
+        }
+        // A margin far above the rounding errors; the ends are then exact in the quarter-turn arithmetic.
+        let quarter = |x: f64| x / (PI / 2.0);
+        let shift = if sine { 1.0 } else { 0.0 };
+        let from = RBig::try_from(quarter(lower) - shift - 1e-9).unwrap_or(RBig::ZERO);
+        let to = RBig::try_from(quarter(upper) - shift + 1e-9).unwrap_or(RBig::ZERO);
+        cosine_range(&from, &to)
+    }
+
+    /// The range of an argument as multiples of pi, where it is known to be such.
+    fn turns(&self, argument: &Fraction) -> Step<Option<(RBig, RBig)>> {
+        let symbols: Vec<usize> = (0..self.ring.generators.len())
+            .filter(|&g| self.uses(argument, g) && !matches!(self.ring.generators[g], Kind::Pi))
+            .collect();
+        if symbols.is_empty() {
+            return Ok(self.multiple_of_pi(argument).map(|turns| (turns.clone(), turns)));
+        }
+        for &symbol in &symbols {
+            // argument = slope * symbol
+            let Some(range) = self.ranges.of(symbol) else { continue };
+            let inverse = Fraction::whole(Polynomial::generator(symbol));
+            let Some(slope) = self.ring.divide(argument, &inverse)? else { continue };
+            if self.uses(&slope, symbol) {
+                continue;
+            }
+            for lower in &range.lower {
+                for upper in &range.upper {
+                    let from = self.multiple_of_pi(&self.ring.multiply(&slope, lower)?);
+                    let to = self.multiple_of_pi(&self.ring.multiply(&slope, upper)?);
+                    if let (Some(from), Some(to)) = (from, to) {
+                        return Ok(Some(if from <= to { (from, to) } else { (to, from) }));
+                    }
+                }
+            }
+        }
+        Ok(None)
+    }
+
+    fn uses(&self, fraction: &Fraction, generator: usize) -> bool {
+        fraction.numerator.uses(generator) || fraction.denominator.iter().any(|(factor, _)| factor.uses(generator))
+    }
+
+    fn multiple_of_pi(&self, fraction: &Fraction) -> Option<RBig> {
+        if fraction.is_zero() {
+            return Some(RBig::ZERO);
+        }
+        let pi = self.ring.generators.iter().position(|kind| *kind == Kind::Pi)?;
+        match fraction.numerator.terms() {
+            [(monomial, x)] if fraction.denominator.is_empty() => {
+                let mut rest = *monomial;
+                rest.0[pi] = rest.0[pi].checked_sub(1)?;
+                rest.is_one().then(|| RBig::from_parts_signed(x.clone(), fraction.divisor.clone()))
+            }
+            _ => None,
+        }
+    }
+
+    /// Bounds in double precision with a margin; infinite where nothing is known.
+    fn numeric(&self, fraction: &Fraction, depth: u32) -> (f64, f64) {
+        let mut value = self.numeric_polynomial(&fraction.numerator, depth);
+        for (factor, exponent) in &fraction.denominator {
+            let below = self.numeric_polynomial(factor, depth);
+            if below.0 <= 0.0 && below.1 >= 0.0 && !(below.0 == 0.0 && below.1 > 0.0) {
+                return (f64::NEG_INFINITY, f64::INFINITY);
+            }
+            for _ in 0..*exponent {
+                value = times(value, (1.0 / below.1, if below.0 == 0.0 { f64::INFINITY } else { 1.0 / below.0 }));
+            }
+        }
+        let divisor = RBig::from_parts_signed(IBig::ONE, fraction.divisor.clone()).to_f64().value();
+        widened(times(value, (divisor, divisor)))
+    }
+
+    fn numeric_polynomial(&self, polynomial: &Polynomial, depth: u32) -> (f64, f64) {
+        let mut sum = (0.0, 0.0);
+        for (monomial, x) in polynomial.terms() {
+            let x = RBig::from(x.clone()).to_f64().value();
+            let mut product = (x, x);
+            for generator in 0..self.ring.generators.len() {
+                for _ in 0..monomial.0[generator] {
+                    product = times(product, self.numeric_generator(generator, depth));
+                }
+            }
+            sum = widened((sum.0 + product.0, sum.1 + product.1));
+        }
+        sum
+    }
+
+    fn numeric_generator(&self, generator: usize, depth: u32) -> (f64, f64) {
+        let anything = (f64::NEG_INFINITY, f64::INFINITY);
+        let Some(depth) = depth.checked_sub(1) else { return anything };
+        match &self.ring.generators[generator] {
+            Kind::Pi => (PI, PI.next_up()),
+            Kind::Literal(value) => widened((value.to_f64(), value.to_f64())),
+            Kind::Sin(_) | Kind::Cos(_) => (-1.0, 1.0),
+            Kind::Cosh(_) => (1.0, f64::INFINITY),
+            Kind::Exp(_) => (0.0, f64::INFINITY),
+            Kind::Sinh(_) => anything,
+            Kind::Root(2, radicand) => {
+                let (lower, upper) = self.numeric_polynomial(radicand, depth);
+                widened((lower.max(0.0).sqrt(), upper.max(0.0).sqrt()))
+            }
+            Kind::Root(..) => anything,
+            Kind::Opaque(expression) => match self.graph.node(*expression) {
+                Node::Call(Function::Asin | Function::Atan, _) => (-PI / 2.0 - 1e-15, PI / 2.0 + 1e-15),
+                Node::Call(Function::Acos, _) => (0.0, PI + 1e-15),
+                Node::Call(Function::Acosh | Function::Abs | Function::Erfc, _) => (0.0, f64::INFINITY),
+                _ => anything,
+            },
+            Kind::Symbol(_) => match self.ranges.of(generator) {
+                Some(range) => {
+                    let bound = |bound: &Fraction| self.numeric(bound, depth);
+                    let lower = range.lower.iter().map(|b| bound(b).0).fold(f64::NEG_INFINITY, f64::max);
+                    let upper = range.upper.iter().map(|b| bound(b).1).fold(f64::INFINITY, f64::min);
+                    (lower, upper)
+                }
+                None => anything,
+            },
+        }
+    }
+}
+
+enum Attempt {
+    Proved(i8),
+    Open { more: bool },
+}
+
+/// Takes one of several bounds at each place, all combinations in turn.
+struct Choices {
+    left: usize,
+    more: bool,
+}
+
+impl Choices {
+    fn pick<'a>(&mut self, bounds: &[&'a Fraction]) -> Option<&'a Fraction> {
+        let count = bounds.len().max(1);
+        let place = self.left % count;
+        self.left /= count;
+        // Bounds that came last are the sharper ones: assumptions follow ranges.
+        self.more |= place + 1 < count;
+        bounds.len().checked_sub(1 + place).map(|at| bounds[at])
+    }
+}
+
+/// (a + b t)/(1 + t)
+fn between(lower: &RBig, upper: &RBig, t: &Polynomial) -> Step<Option<Cover>> {
+    let (a, b) = (lower.numerator(), IBig::from(lower.denominator().clone()));
+    let (c, d) = (upper.numerator(), IBig::from(upper.denominator().clone()));
+    let numerator = Polynomial::constant(a * &d).plus(&t.scaled(&(c * &b))?);
+    let denominator = t.plus(&Polynomial::one()).scaled(&(b * d))?;
+    Ok(Some(Cover { numerator, denominator }))
+}
+
+/// The range of the cosine for arguments between two numbers of quarter turns.
+fn cosine_range(from: &RBig, to: &RBig) -> (RBig, RBig) {
+    let contains = |residue: i64| {
+        // Some residue + 4k in [from, to]
+        let k = ((from - RBig::from(residue)) / RBig::from(4u8)).ceil();
+        RBig::from(residue) + RBig::from(4u8) * RBig::from(k) <= *to
+    };
+    let (first, second) = (cosine_box(from), cosine_box(to));
+    let mut lower = first.0.min(second.0);
+    let mut upper = first.1.max(second.1);
+    if contains(0) {
+        upper = RBig::ONE;
+    }
+    if contains(2) {
+        lower = -RBig::ONE;
+    }
+    (lower, upper)
+}
+
+/// A box for the cosine of a number of quarter turns; exact at multiples of a third.
+fn cosine_box(quarters: &RBig) -> (RBig, RBig) {
+    let thirds = quarters * RBig::from(3u8);
+    if thirds.is_int() {
+        let residue = thirds.numerator() % IBig::from(12);
+        let residue = i64::try_from(residue).expect("a residue is small").rem_euclid(12);
+        let half = RBig::from_parts(IBig::ONE, 2u8.into());
+        let exact = match residue {
+            0 => Some(RBig::ONE),
+            2 | 10 => Some(half),
+            3 | 9 => Some(RBig::ZERO),
+            4 | 8 => Some(-half),
+            6 => Some(-RBig::ONE),
+            _ => None,
+        };
+        if let Some(exact) = exact {
+            return (exact.clone(), exact);
+        }
+    }
+    let value = pxfm::f_cos(quarters.to_f64().value() * (PI / 2.0));
+    let end = |x: f64| RBig::try_from((x * 1e12).round()).unwrap_or(RBig::ZERO) / RBig::from(1_000_000_000_000u64);
+    (end(value - 1e-11).max(-RBig::ONE), end(value + 1e-11).min(RBig::ONE))
+}
+
+fn times(a: (f64, f64), b: (f64, f64)) -> (f64, f64) {
+    // An end that is 0 times an infinite one is 0: the infinity is not attained.
+    let product = |x: f64, y: f64| if x == 0.0 || y == 0.0 { 0.0 } else { x * y };
+    let products = [product(a.0, b.0), product(a.0, b.1), product(a.1, b.0), product(a.1, b.1)];
+    widened((products.iter().copied().fold(f64::INFINITY, f64::min), products.iter().copied().fold(f64::NEG_INFINITY, f64::max)))
+}
+
+/// One unit in the last place outward, except where an end is exactly 0.
+fn widened(range: (f64, f64)) -> (f64, f64) {
+    let lower = if range.0 == 0.0 { 0.0 } else { range.0.next_down() };
+    let upper = if range.1 == 0.0 { 0.0 } else { range.1.next_up() };
+    (lower, upper)
+}
+
+/// An exact number of the graph as a rational number.
+fn exact_rational(value: &Exact) -> RBig {
+    value.as_rational().clone()
+}
+
+/// Bounds of the symbols from formulas of the graph: the symbol, its lower and upper ends.
+pub(super) type Bounds = Vec<(ExpressionId, Vec<ExpressionId>, Vec<ExpressionId>)>;
