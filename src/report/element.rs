@@ -3,6 +3,7 @@
 use crate::expression::{ExpressionId, Graph, Node, print_limited};
 use crate::geometry::Surface;
 use crate::language::{Model, PatchId};
+use crate::simplify::{Fact, Quantity, closed_forms};
 use serde_json::{Map, Value, json};
 
 /// Longest formula that is written out in full; a longer one is given by its count of operations.
@@ -17,6 +18,10 @@ pub struct ElementReport {
     pub forms: Vec<(&'static str, Vec<String>)>,
     /// Operations of dA on the fully written form: each operator, minus sign and call counts 1.
     pub operations: u64,
+    /// What is proved of the patch.
+    pub facts: Vec<Fact>,
+    /// Remarks on how the forms are to be read.
+    pub notes: Vec<String>,
 }
 
 impl ElementReport {
@@ -30,47 +35,71 @@ impl ElementReport {
         let normal = surface.unit_normal(&mut graph);
         let gauss = surface.gauss_curvature(&mut graph);
         let mean = surface.mean_curvature(&mut graph);
-        let formulas: Vec<(&'static str, Vec<ExpressionId>)> = vec![
-            ("position", surface.position.to_vec()),
-            ("tangent_u", surface.tangents[0].to_vec()),
-            ("tangent_v", surface.tangents[1].to_vec()),
-            ("N", surface.normal.to_vec()),
-            ("dA", vec![surface.element]),
-            ("normal", normal.to_vec()),
-            ("E", vec![first.e]),
-            ("F", vec![first.f]),
-            ("G", vec![first.g]),
-            ("L", vec![second.l]),
-            ("M", vec![second.m]),
-            ("N2", vec![second.n]),
-            ("K", vec![gauss]),
-            ("H", vec![mean]),
-        ];
-        let closed = crate::simplify::closed_forms(model, id);
-        let operations = operations(&graph, surface.element);
-        let shown = |id: &ExpressionId| {
-            let text = print_limited(&graph, *id, LONGEST);
+        let closed = closed_forms(model, id);
+
+        let mut plain = Vec::new();
+        let mut shown = |name: &'static str, quantity: Option<Quantity>, raw: ExpressionId| {
+            if let Some(form) = quantity.and_then(|quantity| closed.forms.get(&quantity)) {
+                return (form.text(), form.operations() as u64);
+            }
+            if quantity.is_some() && plain.last() != Some(&name) {
+                plain.push(name);
+            }
+            let count = operations(&graph, raw);
+            let text = print_limited(&graph, raw, LONGEST);
             if text.ends_with("...") {
-                format!("{} operations, too long to print here", operations_text(&graph, *id))
+                (format!("{} operations, too long to print here", operations_text(count)), count)
             } else {
-                text
+                (text, count)
             }
         };
-        let mut forms: Vec<(&'static str, Vec<String>)> =
-            formulas.into_iter().map(|(name, ids)| (name, ids.iter().map(shown).collect())).collect();
-        if let Some(form) = closed.element {
-            for (name, texts) in &mut forms {
-                if *name == "dA" {
-                    *texts = vec![form.text()];
-                }
-            }
+        let mut forms: Vec<(&'static str, Vec<String>)> = Vec::new();
+        let axes = [0, 1, 2];
+        forms.push(("position", axes.map(|axis| shown("position", None, surface.position[axis]).0).to_vec()));
+        for (name, quantity, raw) in [
+            ("tangent_u", Quantity::TangentU as fn(usize) -> Quantity, &surface.tangents[0]),
+            ("tangent_v", Quantity::TangentV, &surface.tangents[1]),
+        ] {
+            forms.push((name, axes.map(|axis| shown(name, Some(quantity(axis)), raw[axis]).0).to_vec()));
         }
-        Self { patch: patch.name.clone(), forms, operations }
+        let (element, operations) = shown("dA", Some(Quantity::Element), surface.element);
+        forms.push(("dA", vec![element]));
+        let raw = axes.map(|axis| shown("normal", Some(Quantity::Normal(axis)), normal[axis]).0);
+        forms.push(("normal", raw.to_vec()));
+        for (name, quantity, raw) in [
+            ("E", Quantity::E, first.e),
+            ("F", Quantity::F, first.f),
+            ("G", Quantity::G, first.g),
+            ("L", Quantity::L, second.l),
+            ("M", Quantity::M, second.m),
+            ("N2", Quantity::N2, second.n),
+            ("K", Quantity::Gauss, gauss),
+            ("H", Quantity::Mean, mean),
+        ] {
+            forms.push((name, vec![shown(name, Some(quantity), raw).0]));
+        }
+
+        let mut notes = Vec::new();
+        for condition in &closed.conditions {
+            notes.push(format!("the signs hold for {condition}"));
+        }
+        for factor in &closed.unproved_signs {
+            let factor = factor.text();
+            notes.push(format!(
+                "the sign of {factor} is not known: abs stays; if it is positive, add `assume {factor} > 0`"
+            ));
+        }
+        if !plain.is_empty() {
+            notes.push(format!("no closed form was found within the allowance of steps for: {}", plain.join(", ")));
+        }
+        if !closed.failed.is_empty() {
+            notes.push("a form that was found failed its proof and is not shown; please report this sheet".to_owned());
+        }
+        Self { patch: patch.name.clone(), forms, operations, facts: closed.facts, notes }
     }
 }
 
-fn operations_text(graph: &Graph, id: ExpressionId) -> String {
-    let count = operations(graph, id);
+fn operations_text(count: u64) -> String {
     if count == u64::MAX { "more than 10^19".to_owned() } else { count.to_string() }
 }
 
@@ -108,7 +137,13 @@ pub fn element_text(report: &ElementReport) -> String {
             }
         }
     }
-    text + &format!("operations of dA = {}\n", report.operations)
+    text += &format!("operations of dA = {}\n", report.operations);
+    let facts: Vec<String> = report.facts.iter().map(Fact::to_string).collect();
+    text += &format!("facts = {}\n", if facts.is_empty() { "none".to_owned() } else { facts.join(", ") });
+    for note in &report.notes {
+        text += &format!("note: {note}\n");
+    }
+    text
 }
 
 /// The forms as a JSON document.
@@ -126,5 +161,7 @@ pub fn element_json(report: &ElementReport) -> Value {
             object.insert("operations".into(), json!(report.operations));
         }
     }
+    object.insert("facts".into(), json!(report.facts.iter().map(Fact::to_string).collect::<Vec<_>>()));
+    object.insert("notes".into(), json!(report.notes));
     Value::Object(object)
 }

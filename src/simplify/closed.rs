@@ -7,8 +7,9 @@
 //!
 //! Squares come out of P, each factor pulled out with its proved sign or between bars.
 
-use super::factor::{factor, split_square};
+use super::factor::{Factored, split_square};
 use super::form::Form;
+use super::forms::Quantity;
 use super::fraction::{Fraction, common_denominator, raised};
 use super::gcd::gcd;
 use super::meter::{Exhausted, Step};
@@ -20,14 +21,11 @@ use super::region::{self, guesses};
 use super::ring::{Directions, Kind, Ring};
 use super::sign::{Ranges, sign};
 use crate::calculus::{Vector, differentiate_vector};
-use crate::expression::{ExpressionId, Graph};
+use crate::expression::{ExpressionId, Graph, SymbolId};
 use crate::language::{Model, Patch};
 use dashu_base::{Abs, Signed};
 use dashu_int::IBig;
 use dashu_ratio::RBig;
-
-/// The most sums that the search for the shortest form of one formula explores.
-const NODES: usize = 600;
 
 /// A value `outside * root^(power/2)`: the polynomial under the root is square-free, power is 1, 0 or -1.
 #[derive(Clone, Debug)]
@@ -55,6 +53,8 @@ pub(super) struct Elements<'a> {
     pub conditions: Vec<String>,
     /// Factors whose sign could not be proved.
     pub unproved: Vec<Polynomial>,
+    /// The variables of the patch.
+    pub variables: [SymbolId; 2],
     model: &'a Model,
     second: [Vector; 3],
 }
@@ -139,6 +139,7 @@ impl<'a> Elements<'a> {
             square,
             conditions: Vec::new(),
             unproved: Vec::new(),
+            variables: patch.variables,
             model,
             second: formulas.second,
         })
@@ -185,7 +186,7 @@ impl<'a> Elements<'a> {
             let mut factors: Vec<(Polynomial, i32)> = Vec::new();
             let divisor = content.divisor.clone();
             let mut number = IBig::ONE;
-            let above = self.shortest_factors(&content.numerator)?;
+            let above = self.ring().factored(&content.numerator)?;
             number = number * above.unit.abs();
             for (factor, exponent) in above.factors.iter().chain(&outside.factors) {
                 include(&mut factors, factor, *exponent as i32);
@@ -237,12 +238,11 @@ impl<'a> Elements<'a> {
     }
 
     /// A polynomial as squares outside and a square-free rest under the root, in the ways that look shortest.
-    fn squares(&self, polynomial: &Polynomial) -> Step<Vec<(super::factor::Factored, Polynomial)>> {
-        let mut found: Vec<(usize, super::factor::Factored, Polynomial)> = Vec::new();
-        for directions in self.ring().directions(&[polynomial]) {
-            let factored = factor(&self.ring().reduced(polynomial, directions)?)?;
+    fn squares(&self, polynomial: &Polynomial) -> Step<Vec<(Factored, Polynomial)>> {
+        let mut found: Vec<(usize, Factored, Polynomial)> = Vec::new();
+        for factored in self.ring().factorings(polynomial)? {
             let (whole, rest) = split_square(&factored.unit.clone().abs());
-            let mut outside = super::factor::Factored { unit: whole, factors: Vec::new() };
+            let mut outside = Factored { unit: whole, factors: Vec::new() };
             let mut root = Polynomial::constant(rest);
             for (factor, exponent) in factored.factors {
                 if exponent > 1 {
@@ -267,19 +267,6 @@ impl<'a> Elements<'a> {
         Ok(found.into_iter().take(3).map(|(_, outside, root)| (outside, root)).collect())
     }
 
-    /// Factors in the directions that give the fewest terms.
-    fn shortest_factors(&self, polynomial: &Polynomial) -> Step<super::factor::Factored> {
-        let mut best: Option<(usize, super::factor::Factored)> = None;
-        for directions in self.ring().directions(&[polynomial]) {
-            let factored = factor(&self.ring().reduced(polynomial, directions)?)?;
-            let size = factored.factors.iter().map(|(factor, _)| factor.terms().len()).sum();
-            if best.as_ref().is_none_or(|(least, _)| size < *least) {
-                best = Some((size, factored));
-            }
-        }
-        best.map(|(_, factored)| factored).ok_or(Exhausted)
-    }
-
     /// l, m, n2: the second derivatives along n.
     pub fn second(&mut self) -> Step<[Fraction; 3]> {
         let graph = self.reader.graph;
@@ -294,6 +281,50 @@ impl<'a> Elements<'a> {
             }
         }
         Ok(along)
+    }
+}
+
+impl Elements<'_> {
+    /// Everything but the element, which stands below the bar of normal and curvatures.
+    pub fn quantities(&mut self, element: &Rooted) -> Step<Vec<(Quantity, Rooted)>> {
+        let plain = |outside: Fraction| Rooted { outside, bars: Vec::new(), root: Polynomial::one(), power: 0 };
+        let mut values = Vec::new();
+        for axis in 0..3 {
+            values.push((Quantity::TangentU(axis), plain(self.tangents[0][axis].clone())));
+            values.push((Quantity::TangentV(axis), plain(self.tangents[1][axis].clone())));
+        }
+        let [e, f, g] = self.first.clone();
+        for (quantity, value) in [(Quantity::E, &e), (Quantity::F, &f), (Quantity::G, &g)] {
+            values.push((quantity, plain(value.clone())));
+        }
+        // Over the element: value/(outside sqrt(root)).
+        let over = |ring: &Ring, value: &Fraction| -> Step<Rooted> {
+            let outside = ring.divide(value, &element.outside)?.ok_or(Exhausted)?;
+            let bars = element.bars.iter().map(|(factor, exponent)| (factor.clone(), -exponent)).collect();
+            Ok(Rooted { outside, bars, root: element.root.clone(), power: -element.power })
+        };
+        let along_content = |ring: &Ring, value: &Fraction, content: &Fraction| ring.multiply(value, content);
+        for axis in 0..3 {
+            let component = Fraction::whole(self.direction[axis].clone());
+            let component = along_content(self.ring(), &component, &self.content)?;
+            values.push((Quantity::Normal(axis), over(self.ring(), &component)?));
+        }
+        let [l, m, n] = self.second()?;
+        let ring = self.ring();
+        for (quantity, value) in [(Quantity::L, &l), (Quantity::M, &m), (Quantity::N2, &n)] {
+            values.push((quantity, over(ring, &along_content(ring, value, &self.content)?)?));
+        }
+        let root = ring.multiply(&self.content, &Fraction::whole(self.square.clone()))?;
+        let top = ring.subtract(&ring.multiply(&l, &n)?, &ring.multiply(&m, &m)?)?;
+        let gauss = ring.divide(&top, &ring.multiply(&root, &root)?)?.ok_or(Exhausted)?;
+        values.push((Quantity::Gauss, plain(gauss)));
+        // H = (E n2 - 2 F m + G l) g/(2 W^2 dA), W^2 = g^2 P
+        let two = Fraction::whole(Polynomial::integer(2));
+        let outer = ring.add(&ring.multiply(&e, &n)?, &ring.multiply(&g, &l)?)?;
+        let top = ring.subtract(&outer, &ring.multiply(&two, &ring.multiply(&f, &m)?)?)?;
+        let mean = ring.divide(&top, &ring.multiply(&two, &root)?)?.ok_or(Exhausted)?;
+        values.push((Quantity::Mean, over(ring, &mean)?));
+        Ok(values)
     }
 }
 
@@ -353,12 +384,25 @@ fn take_content(ring: &Ring, vector: &[Fraction; 3]) -> Step<(Fraction, [Polynom
 }
 
 impl Printer<'_> {
+    /// The shortest form of a value.
+    pub fn shortest(&mut self, value: &Rooted) -> Step<Form> {
+        if value.outside.is_zero() {
+            return Ok(Form::integer(0));
+        }
+        let form = self.rooted(value)?;
+        if value.power != 0 || !value.bars.is_empty() {
+            return Ok(form);
+        }
+        let termwise = self.fraction(&value.outside)?;
+        Ok(if termwise.operations() < form.operations() { termwise } else { form })
+    }
+
     /// A value with a root, in its shortest form.
     pub fn rooted(&mut self, value: &Rooted) -> Step<Form> {
         let mut number = ratio(IBig::ONE, value.outside.divisor.clone());
         let mut exponents = [0i8; GENERATORS];
         let mut others: Vec<(Form, Exponent)> = Vec::new();
-        let above = factor_for_print(&self.ring, &value.outside.numerator)?;
+        let above = self.ring.factored(&value.outside.numerator)?;
         number *= RBig::from(above.unit.clone());
         let mut negative = is_negative(&number);
         let all = above.factors.iter().map(|(factor, exponent)| (factor, *exponent as i32));
@@ -391,7 +435,8 @@ impl Printer<'_> {
             let mut factors = others.clone();
             let mut left = exponents;
             left.iter_mut().zip(moved).for_each(|(left, moved)| *left -= moved);
-            factors.extend(self.generator_powers(&left)?);
+            let mut left_number = &number / &moved_number;
+            factors.extend(self.generator_powers(&left, &mut left_number)?);
             if value.power != 0 {
                 let (minus, form) = self.sum(&inside)?;
                 let form = match (minus, flipped(&form)) {
@@ -401,7 +446,7 @@ impl Printer<'_> {
                 };
                 push_root(&mut factors, form, i64::from(value.power));
             }
-            let form = product(&(&number / &moved_number), factors);
+            let form = product(&left_number, factors);
             if best.as_ref().is_none_or(|known| form.operations() < known.operations()) {
                 best = Some(form);
             }
@@ -441,21 +486,4 @@ fn movable(number: &RBig, exponents: &[i8; GENERATORS], may: bool) -> Vec<(RBig,
         }
     }
     choices
-}
-
-fn factor_for_print(ring: &Ring, polynomial: &Polynomial) -> Step<super::factor::Factored> {
-    let mut best: Option<(usize, super::factor::Factored)> = None;
-    for directions in ring.directions(&[polynomial]) {
-        let factored = factor(&ring.reduced(polynomial, directions)?)?;
-        let size = factored.factors.iter().map(|(factor, _)| factor.terms().len()).sum();
-        if best.as_ref().is_none_or(|(least, _)| size < *least) {
-            best = Some((size, factored));
-        }
-    }
-    best.map(|(_, factored)| factored).ok_or(Exhausted)
-}
-
-/// The nodes that the search for one form may explore.
-pub(super) fn node_allowance() -> usize {
-    NODES
 }

@@ -7,6 +7,7 @@
 use super::gcd::{content, exact, square_free};
 use super::meter::Step;
 use super::polynomial::{Monomial, Polynomial};
+use super::ring::Ring;
 use dashu_base::{Abs, Gcd, SquareRootRem};
 use dashu_int::{IBig, UBig};
 
@@ -200,4 +201,78 @@ fn rational_root(polynomial: &Polynomial, generator: usize) -> Step<Option<Polyn
 fn divisors(value: &IBig) -> Vec<IBig> {
     let value = value.abs();
     (1..=1000).map(IBig::from).filter(|divisor| (&value % divisor) == IBig::ZERO).collect()
+}
+
+impl Ring {
+    /// Factors in each direction of the pairs, the shortest first: 1 - cos^2 is sin^2 in all of them.
+    pub fn factorings(&self, polynomial: &Polynomial) -> Step<Vec<Factored>> {
+        let mut found: Vec<(usize, Factored)> = Vec::new();
+        for directions in self.directions(&[polynomial]) {
+            let mut factored = factor(&self.reduced(polynomial, directions)?)?;
+            self.complete_squares(&mut factored);
+            let size = factored.factors.iter().map(|(factor, _)| factor.terms().len()).sum();
+            if !found.iter().any(|(_, known)| *known == factored) {
+                found.push((size, factored));
+            }
+        }
+        found.sort_by_key(|(size, _)| *size);
+        Ok(found.into_iter().map(|(_, factored)| factored).collect())
+    }
+
+    /// The shortest of [`Ring::factorings`].
+    pub fn factored(&self, polynomial: &Polynomial) -> Step<Factored> {
+        Ok(self.factorings(polynomial)?.into_iter().next().expect("one direction at least"))
+    }
+
+    /// (1 - c)(1 + c) = s^2 and (1 - s)(1 + s) = c^2; cosh^2 - 1 = sinh^2 and sinh^2 + 1 = cosh^2.
+    fn complete_squares(&self, factored: &mut Factored) {
+        let one = Polynomial::one();
+        for pair in self.pairs() {
+            for (own, other) in [(pair.cosine, pair.sine), (pair.sine, pair.cosine)] {
+                let (generator, root) = (Polynomial::generator(own), Polynomial::generator(other));
+                if pair.hyperbolic && own == pair.sine {
+                    let square = Polynomial::term(Monomial::generator(own, 2), IBig::ONE).plus(&one);
+                    if let Some(exponent) = factored.take(&square) {
+                        factored.include(root, 2 * exponent);
+                    }
+                    continue;
+                }
+                let (minus, plus) = (generator.minus(&one), generator.plus(&one));
+                if !factored.has(&minus) || !factored.has(&plus) {
+                    continue;
+                }
+                let below = factored.take(&minus).unwrap_or(0);
+                let above = factored.take(&plus).unwrap_or(0);
+                let shared = below.min(above);
+                factored.include(minus, below - shared);
+                factored.include(plus, above - shared);
+                factored.include(root, 2 * shared);
+                // c^2 - 1 is -s^2 for the circle, s^2 for the hyperbola.
+                if !pair.hyperbolic && shared % 2 == 1 {
+                    factored.unit = -factored.unit.clone();
+                }
+            }
+        }
+    }
+}
+
+impl Factored {
+    fn has(&self, factor: &Polynomial) -> bool {
+        self.factors.iter().any(|(known, _)| known == factor)
+    }
+
+    fn take(&mut self, factor: &Polynomial) -> Option<u32> {
+        let place = self.factors.iter().position(|(known, _)| known == factor)?;
+        Some(self.factors.remove(place).1)
+    }
+
+    fn include(&mut self, factor: Polynomial, exponent: u32) {
+        if exponent == 0 {
+            return;
+        }
+        match self.factors.iter_mut().find(|(known, _)| *known == factor) {
+            Some((_, total)) => *total += exponent,
+            None => self.factors.push((factor, exponent)),
+        }
+    }
 }

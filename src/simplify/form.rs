@@ -155,8 +155,9 @@ impl Form {
                 exponent.write_within(Binding::Atom, out);
             }
             Form::Negate(inner) => {
+                // -a*b is -(a*b) in value.
                 out.push('-');
-                inner.write_within(Binding::Negate, out);
+                inner.write_within(Binding::Product, out);
             }
             Form::Relation(operator, left, right) => {
                 let own = self.binding();

@@ -1,22 +1,71 @@
-//! All closed forms of a patch.
+//! All closed forms of a patch: derived, written, proved.
 
-use super::closed::{Elements, Formulas, node_allowance};
+use super::certificate::Certificate;
+use super::closed::{Elements, Formulas, Rooted};
+use super::facts::{Fact, facts};
 use super::form::Form;
-use super::meter::{Step, with_allowance};
+use super::meter::{Exhausted, Step, with_allowance};
 use super::plan::Printer;
 use super::read::Arguments;
 use crate::language::{Model, PatchId};
+use std::collections::BTreeMap;
 
-/// Steps for one manner of reading a patch.
-const ALLOWANCE: u64 = 20_000_000;
+/// Steps for the elements of one manner of reading a patch.
+const READING: u64 = 30_000_000;
 
-/// The closed forms of a patch.
-#[derive(Clone, Debug)]
+/// Steps for writing one formula.
+const WRITING: u64 = 6_000_000;
+
+/// Steps for proving all formulas.
+const PROVING: u64 = 60_000_000;
+
+/// The most sums that the search for the shortest form of one formula explores.
+const NODES: usize = 600;
+
+/// A quantity that has a closed form; components of vectors are counted from 0.
+#[derive(Clone, Copy, PartialEq, Eq, PartialOrd, Ord, Hash, Debug)]
+pub enum Quantity {
+    /// Component of phi_u.
+    TangentU(usize),
+    /// Component of phi_v.
+    TangentV(usize),
+    /// phi_u.phi_u
+    E,
+    /// phi_u.phi_v
+    F,
+    /// phi_v.phi_v
+    G,
+    /// dA = |phi_u x phi_v|
+    Element,
+    /// Component of n = N/|N|.
+    Normal(usize),
+    /// phi_uu.n
+    L,
+    /// phi_uv.n
+    M,
+    /// phi_vv.n
+    N2,
+    /// K
+    Gauss,
+    /// H
+    Mean,
+}
+
+/// The closed forms of a patch; a quantity that is missing has none that could be found and proved.
+#[derive(Clone, Debug, Default)]
 pub struct ClosedForms {
-    /// |phi_u x phi_v|
-    pub element: Option<Form>,
-    /// Conditions on the parameters, beyond those of the sheet, that the forms need.
+    /// The forms. Each was read back from its text and proved equal to what it stands for.
+    pub forms: BTreeMap<Quantity, Form>,
+    /// What is proved of the patch.
+    pub facts: Vec<Fact>,
+    /// Conditions on the parameters, beyond those of the sheet, under which the signs in the forms were proved.
     pub conditions: Vec<String>,
+    /// Factors of the area element whose sign could not be proved: they stand between bars.
+    pub unproved_signs: Vec<Form>,
+    /// Quantities for which the allowance of steps ran out: no form, or not the shortest one.
+    pub cut_short: Vec<Quantity>,
+    /// Quantities whose form was found and failed its proof: a defect of this program.
+    pub failed: Vec<Quantity>,
 }
 
 /// Derives the closed forms of a patch.
@@ -26,29 +75,78 @@ pub fn closed_forms(model: &Model, patch: PatchId) -> ClosedForms {
     let formulas = Formulas::new(&mut graph, patch);
     let manners: &[Arguments] =
         if formulas.has_sums(&graph) { &[Arguments::Split, Arguments::Whole] } else { &[Arguments::Split] };
-    let mut best: Option<(Form, Vec<String>)> = None;
+    let mut best = ClosedForms::default();
     for &manner in manners {
-        let found = with_allowance(ALLOWANCE, || -> Step<(Form, Vec<String>)> {
-            let mut elements = Elements::new(&graph, model, patch, &formulas, manner)?;
-            let candidates = elements.element()?;
-            let mut best: Option<Form> = None;
-            let mut printer = Printer::new(elements.reader.ring.clone(), &graph, patch.variables, node_allowance());
-            for candidate in &candidates {
-                let form = printer.rooted(candidate)?;
-                if best.as_ref().is_none_or(|known| form.operations() < known.operations()) {
-                    best = Some(form);
-                }
+        let mut found = ClosedForms::default();
+        let read = with_allowance(READING, || Elements::new(&graph, model, patch, &formulas, manner));
+        let Ok(mut elements) = read else {
+            best.cut_short.push(Quantity::Element);
+            continue;
+        };
+        if let Err(Exhausted) = write_all(&mut elements, &mut found) {
+            best.cut_short.push(Quantity::Element);
+        }
+        let proof = with_allowance(PROVING, || Certificate::new(model, patch, &formulas, &graph).check(&found.forms));
+        let proved = proof.unwrap_or_default();
+        found.failed = found.forms.keys().filter(|quantity| !proved.contains(quantity)).copied().collect();
+        found.forms.retain(|quantity, _| proved.contains(quantity));
+        found.facts = with_allowance(READING, || facts(&mut elements)).unwrap_or_default();
+        found.conditions = elements.conditions.clone();
+        merge(&mut best, found);
+    }
+    best.cut_short.retain(|quantity| !best.forms.contains_key(quantity));
+    best
+}
+
+/// The shorter form of each quantity; conditions go with the element.
+fn merge(best: &mut ClosedForms, found: ClosedForms) {
+    for (quantity, form) in found.forms {
+        let shorter = best.forms.get(&quantity).is_none_or(|known| form.operations() < known.operations());
+        if shorter {
+            best.forms.insert(quantity, form);
+            best.failed.retain(|failed| *failed != quantity);
+            if quantity == Quantity::Element {
+                best.unproved_signs = found.unproved_signs.clone();
+                best.conditions = found.conditions.clone();
             }
-            Ok((best.ok_or(super::meter::Exhausted)?, elements.conditions))
-        });
-        if let Ok((form, conditions)) = found
-            && best.as_ref().is_none_or(|(known, _)| form.operations() < known.operations())
-        {
-            best = Some((form, conditions));
         }
     }
-    match best {
-        Some((form, conditions)) => ClosedForms { element: Some(form), conditions },
-        None => ClosedForms { element: None, conditions: Vec::new() },
+    best.failed.extend(found.failed.into_iter().filter(|quantity| !best.forms.contains_key(quantity)));
+    for fact in found.facts {
+        if !best.facts.contains(&fact) {
+            best.facts.push(fact);
+        }
     }
+    best.facts.sort();
+}
+
+fn write_all(elements: &mut Elements<'_>, found: &mut ClosedForms) -> Step<()> {
+    let element = with_allowance(READING, || elements.element())?;
+    let mut printer = Printer::new(elements.reader.ring.clone(), elements.reader.graph, elements.variables, NODES);
+    let mut shortest: Option<(Form, &Rooted)> = None;
+    for candidate in &element {
+        let form = with_allowance(WRITING, || printer.rooted(candidate))?;
+        if shortest.as_ref().is_none_or(|(known, _)| form.operations() < known.operations()) {
+            shortest = Some((form, candidate));
+        }
+    }
+    let (form, element) = shortest.ok_or(Exhausted)?;
+    for (factor, _) in &element.bars {
+        found.unproved_signs.push(printer.polynomial(factor)?);
+    }
+    found.forms.insert(Quantity::Element, form);
+
+    let values = with_allowance(READING, || elements.quantities(element))?;
+    // Reading the second derivatives may have added generators; the printer adds its own.
+    let mut printer = Printer::new(elements.reader.ring.clone(), elements.reader.graph, elements.variables, NODES);
+    for (quantity, value) in values {
+        printer.refill(NODES);
+        match with_allowance(WRITING, || printer.shortest(&value)) {
+            Ok(form) => {
+                found.forms.insert(quantity, form);
+            }
+            Err(Exhausted) => found.cut_short.push(quantity),
+        }
+    }
+    Ok(())
 }

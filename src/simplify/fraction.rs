@@ -3,7 +3,7 @@
 //! Denominators stay products: a common denominator is then a matter of exponents, and a sum that loses a factor is
 //! divided by it at once.
 
-use super::factor::factor;
+use super::factor::{Factored, factor};
 use super::meter::Step;
 use super::polynomial::Polynomial;
 use super::ring::{Kind, Ring};
@@ -30,19 +30,6 @@ impl Fraction {
 
     pub fn is_zero(&self) -> bool {
         self.numerator.is_zero()
-    }
-
-    /// The polynomial, if the denominator is 1.
-    pub fn as_polynomial(&self) -> Option<&Polynomial> {
-        (self.denominator.is_empty() && self.divisor == IBig::ONE).then_some(&self.numerator)
-    }
-
-    /// Numerator and divisor of a number.
-    pub fn as_rational(&self) -> Option<(IBig, IBig)> {
-        if !self.denominator.is_empty() || !self.numerator.is_constant() {
-            return None;
-        }
-        Some((self.numerator.leading(), self.divisor.clone()))
     }
 
     pub fn negated(&self) -> Self {
@@ -99,7 +86,7 @@ impl Ring {
         if a.is_zero() {
             return Ok(None);
         }
-        let (unit, denominator) = self.split_denominator(&a.numerator)?;
+        let Factored { unit, factors: denominator } = self.factored(&a.numerator)?;
         let mut numerator = Polynomial::constant(a.divisor.clone());
         for (factor, exponent) in &a.denominator {
             numerator = self.canonical(&numerator.times(&factor.power(*exponent)?)?)?;
@@ -123,20 +110,6 @@ impl Ring {
             result = self.multiply(&result, &base)?;
         }
         Ok(Some(result))
-    }
-
-    /// A polynomial that is not zero as a product that may stand below a fraction: in the directions that give the
-    /// fewest terms, so that 1 - cos^2 stands there as sin^2.
-    fn split_denominator(&self, polynomial: &Polynomial) -> Step<(IBig, Vec<(Polynomial, u32)>)> {
-        let mut best = self.canonical(polynomial)?;
-        for directions in self.directions(&[polynomial]) {
-            let candidate = self.reduced(polynomial, directions)?;
-            if candidate.terms().len() < best.terms().len() {
-                best = candidate;
-            }
-        }
-        let factored = factor(&best)?;
-        Ok((factored.unit, factored.factors))
     }
 
     /// Divides common factors out.

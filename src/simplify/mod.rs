@@ -4,13 +4,16 @@
 //! found there by exact arithmetic (`gcd`, `factor`, `sign`); a bounded search writes the result in its shortest form
 //! (`plan`, `product`).
 
+mod certificate;
 mod closed;
+mod facts;
 mod factor;
 mod form;
 mod forms;
 mod fraction;
 mod gcd;
 mod meter;
+mod parse_back;
 mod plan;
 mod polynomial;
 mod product;
@@ -20,4 +23,5 @@ mod ring;
 mod sign;
 
 pub use form::{Form, NameKind};
-pub use forms::{ClosedForms, closed_forms};
+pub use forms::{ClosedForms, Quantity, closed_forms};
+pub use facts::Fact;

@@ -9,7 +9,7 @@ use super::form::{Form, NameKind};
 use super::fraction::Fraction;
 use super::meter::{Exhausted, Step, spend};
 use super::polynomial::{GENERATORS, Monomial, Polynomial};
-use super::product::{Exponent, is_negative, powered, product, ratio, sum};
+use super::product::{Exponent, is_negative, powered, product, ratio, signed_product, sum};
 use super::ring::{Kind, Pair, Ring};
 use crate::expression::{ExpressionId, Graph, SymbolId};
 use dashu_base::{Abs, Gcd, UnsignedAbs};
@@ -115,6 +115,11 @@ impl<'a> Printer<'a> {
     /// A printer that explores at most `nodes` sums.
     pub fn new(ring: Ring, graph: &'a Graph, variables: [SymbolId; 2], nodes: usize) -> Self {
         Self { ring, graph, variables, known: FxHashMap::default(), names: FxHashMap::default(), nodes }
+    }
+
+    /// Allows the search another number of sums.
+    pub fn refill(&mut self, nodes: usize) {
+        self.nodes = nodes;
     }
 
     /// A generator as a form.
@@ -265,9 +270,10 @@ impl<'a> Printer<'a> {
 
     fn with_content(&mut self, number: &RBig, exponents: &Exponents, inner: &Laurent) -> Step<Signed_> {
         let (negative, form) = self.sum(inner)?;
-        let mut factors = self.generator_powers(exponents)?;
+        let mut magnitude = number.clone().abs();
+        let mut factors = self.generator_powers(exponents, &mut magnitude)?;
         factors.push((form, (1, 1)));
-        Ok((negative != is_negative(number), product(&number.clone().abs(), factors)))
+        Ok(signed_product(negative != is_negative(number), &magnitude, factors))
     }
 
     /// Equal polynomials: either function of each pair eliminated, or both kept in terms of one degree.
@@ -434,7 +440,7 @@ impl<'a> Printer<'a> {
             negative ^= minus && exponent % 2 == 1;
             factors.push((form, (i64::from(*exponent), 1)));
         }
-        keep(best, (negative, product(&RBig::from(factored.unit.abs()), factors)));
+        keep(best, signed_product(negative, &RBig::from(factored.unit.abs()), factors));
         Ok(())
     }
 
@@ -498,14 +504,15 @@ impl<'a> Printer<'a> {
         let mut terms = Vec::new();
         for part in &plan.parts {
             let (negative, inner) = self.sum(&part.sum)?;
-            let form = if part.power == 1 && part.number.is_one() && part.factor == [0; GENERATORS] {
-                inner
-            } else {
-                let mut factors = self.generator_powers(&part.factor)?;
-                factors.push((inner, (i64::from(part.power), 1)));
-                product(&part.number.clone().abs(), factors)
-            };
-            terms.push(((negative && part.power % 2 == 1) != is_negative(&part.number), form));
+            let negative = (negative && part.power % 2 == 1) != is_negative(&part.number);
+            if part.power == 1 && part.number.clone().abs().is_one() && part.factor == [0; GENERATORS] {
+                terms.push((negative, inner));
+                continue;
+            }
+            let mut magnitude = part.number.clone().abs();
+            let mut factors = self.generator_powers(&part.factor, &mut magnitude)?;
+            factors.push((inner, (i64::from(part.power), 1)));
+            terms.push(signed_product(negative, &magnitude, factors));
         }
         Ok(signed_sum(terms))
     }
@@ -521,22 +528,36 @@ impl<'a> Printer<'a> {
 
     /// A monomial without its sign.
     fn monomial(&mut self, exponents: &Exponents, number: &RBig) -> Step<Form> {
-        let factors = self.generator_powers(exponents)?;
-        Ok(product(&number.clone().abs(), factors))
+        let mut magnitude = number.clone().abs();
+        let factors = self.generator_powers(exponents, &mut magnitude)?;
+        Ok(product(&magnitude, factors))
     }
 
-    /// Powers of generators; s^i/c^i becomes a power of the tangent.
-    pub fn generator_powers(&mut self, exponents: &Exponents) -> Step<Vec<(Form, Exponent)>> {
+    /// Powers of generators: s^i/c^i is a power of the tangent, and half angles are doubled where that is shorter. Numbers
+    /// that this brings in are multiplied into `number`.
+    pub fn generator_powers(&mut self, exponents: &Exponents, number: &mut RBig) -> Step<Vec<(Form, Exponent)>> {
         let mut rest = *exponents;
         let mut factors = Vec::new();
         for pair in self.ring.pairs() {
             let (i, j) = (rest[pair.sine], rest[pair.cosine]);
-            if i != 0 && i == -j {
+            if i == 0 && j == 0 {
+                continue;
+            }
+            rest[pair.sine] = 0;
+            rest[pair.cosine] = 0;
+            if i == -j {
                 let name = if pair.hyperbolic { "tanh" } else { "tan" };
                 let argument = self.argument(pair.angle.0)?;
                 factors.push((Form::Call(name.to_owned(), vec![argument]), (i64::from(i), 1)));
-                rest[pair.sine] = 0;
-                rest[pair.cosine] = 0;
+                continue;
+            }
+            let plain = self.plain_pair(&pair, i, j)?;
+            match self.doubled_pair(&pair, i, j)? {
+                Some((doubled, scale)) if cost(&doubled, &(&*number * &scale)) < cost(&plain, number) => {
+                    *number *= scale;
+                    factors.extend(doubled);
+                }
+                _ => factors.extend(plain),
             }
         }
         for (generator, &exponent) in rest.iter().enumerate().filter(|(_, exponent)| **exponent != 0) {
@@ -544,6 +565,53 @@ impl<'a> Printer<'a> {
         }
         Ok(factors)
     }
+
+    fn plain_pair(&mut self, pair: &Pair, i: i8, j: i8) -> Step<Vec<(Form, Exponent)>> {
+        let mut factors = Vec::new();
+        for (generator, exponent) in [(pair.sine, i), (pair.cosine, j)] {
+            if exponent != 0 {
+                factors.push((self.generator(generator)?, (i64::from(exponent), 1)));
+            }
+        }
+        Ok(factors)
+    }
+
+    /// s^i c^j in twice the angle: s c = S/2, then s^2 = (1 - C)/2 or c^2 = (1 + C)/2; `None` if an odd power is left.
+    fn doubled_pair(&mut self, pair: &Pair, i: i8, j: i8) -> Step<Option<(Vec<(Form, Exponent)>, RBig)>> {
+        let shared = if i.signum() == j.signum() { i.signum() * i.abs().min(j.abs()) } else { 0 };
+        let (i, j) = (i - shared, j - shared);
+        if i % 2 != 0 || j % 2 != 0 || (i != 0 && j != 0) {
+            return Ok(None);
+        }
+        let Pair { sine, cosine, .. } = self.double_pair(pair)?;
+        let mut factors = Vec::new();
+        if shared != 0 {
+            factors.push((self.generator(sine)?, (i64::from(shared), 1)));
+        }
+        let one = (false, Form::integer(1));
+        let squares = (i + j) / 2;
+        if squares != 0 {
+            let cosine = self.generator(cosine)?;
+            // sinh^2 = (cosh 2x - 1)/2
+            let terms = match (i != 0, pair.hyperbolic) {
+                (true, true) => vec![(false, cosine), (true, Form::integer(1))],
+                (true, false) => vec![one, (true, cosine)],
+                (false, _) => vec![one, (false, cosine)],
+            };
+            factors.push((Form::Sum(terms), (i64::from(squares), 1)));
+        }
+        let halvings = i64::from(shared) + i64::from(squares);
+        let two = RBig::from(2u8).pow(halvings.abs() as isize);
+        Ok(Some((factors, if halvings > 0 { RBig::ONE / two } else { two })))
+    }
+}
+
+/// Operations of factors and the number before them.
+fn cost(factors: &[(Form, Exponent)], number: &RBig) -> usize {
+    let powers = |(form, (power, _)): &(Form, Exponent)| 1 + form.operations() + usize::from(power.abs() > 1);
+    let one = dashu_int::UBig::ONE;
+    let numbers = usize::from(number.numerator() != &IBig::ONE) + usize::from(number.denominator() != &one);
+    factors.iter().map(powers).sum::<usize>() + numbers
 }
 
 /// Parts that add up to a sum: each a number times a monomial times a power of a sum.

@@ -311,16 +311,6 @@ impl Polynomial {
         self.coefficients(generator).pop().unwrap_or_default()
     }
 
-    /// Sum of `coefficients[k]` times the k-th power of `generator`.
-    pub fn from_coefficients(generator: usize, coefficients: &[Self]) -> Step<Self> {
-        let mut sum = Self::zero();
-        for (power, coefficient) in coefficients.iter().enumerate() {
-            let power = Monomial::generator(generator, u8::try_from(power).map_err(|_| Exhausted)?);
-            sum = sum.plus(&coefficient.times_monomial(&power)?);
-        }
-        Ok(sum)
-    }
-
     /// The partial derivative by one generator.
     pub fn derivative(&self, generator: usize) -> Self {
         let terms = self.terms.iter().filter(|(monomial, _)| monomial.0[generator] > 0).map(|(monomial, x)| {

@@ -47,6 +47,22 @@ pub(super) fn product(number: &RBig, factors: Vec<(Form, Exponent)>) -> Form {
     best
 }
 
+/// The product with a sign; a minus sign goes into a difference among the factors, where it costs nothing.
+pub(super) fn signed_product(negative: bool, number: &RBig, mut factors: Vec<(Form, Exponent)>) -> (bool, Form) {
+    if negative {
+        let turned = factors.iter_mut().find_map(|(form, (power, root))| {
+            if *root != 1 || *power % 2 == 0 {
+                return None;
+            }
+            flipped(form).map(|other| *form = other)
+        });
+        if turned.is_some() {
+            return (false, product(number, factors));
+        }
+    }
+    (negative, product(number, factors))
+}
+
 /// Factors of products and numbers go where they belong, equal bases together.
 fn dissolve(form: Form, exponent: Exponent, number: &mut RBig, flat: &mut Vec<(Form, Exponent)>) {
     let (power, root) = exponent;

@@ -5,7 +5,7 @@
 //! of taking apart exist, because either can give the shorter form: by terms, sin(u + v) = sin u cos v + cos u sin v, or
 //! whole, where u + v is a base of its own.
 
-use super::factor::{factor, split_square};
+use super::factor::{Factored, split_square};
 use super::fraction::Fraction;
 use super::meter::{Exhausted, Step, spend};
 use super::polynomial::Polynomial;
@@ -412,23 +412,17 @@ impl<'a> Reader<'a> {
     }
 
     fn root_of_polynomial(&mut self, radicand: &Polynomial, sign: SignOf<'_>) -> Step<Option<Fraction>> {
-        let mut radicand = radicand.clone();
-        let mut best = None;
         // A square may show in one direction of the pairs only: 1 - cos^2.
-        for directions in self.ring.directions(&[&radicand]) {
-            let candidate = factor(&self.ring.reduced(&radicand, directions)?)?;
-            let squares: u32 = candidate.factors.iter().map(|(_, exponent)| exponent / 2).sum();
-            if best.as_ref().is_none_or(|(most, _)| squares > *most) {
-                best = Some((squares, candidate));
-            }
-        }
-        let Some((_, factored)) = best else { return Ok(None) };
+        let squares = |factored: &Factored| factored.factors.iter().map(|(_, exponent)| exponent / 2).sum::<u32>();
+        let Some(factored) = self.ring.factorings(radicand)?.into_iter().rev().max_by_key(squares) else {
+            return Ok(None);
+        };
         let (whole, mut inside_unit) = split_square(&factored.unit.clone().abs());
         if factored.unit.is_negative() {
             inside_unit = -inside_unit;
         }
         let mut outside = Polynomial::constant(whole);
-        radicand = Polynomial::constant(inside_unit);
+        let mut radicand = Polynomial::constant(inside_unit);
         for (factor, exponent) in &factored.factors {
             let half = exponent / 2;
             let proved = if half % 2 == 0 { Some(1) } else { sign(&self.ring, factor) };

@@ -8,7 +8,7 @@
 use super::fraction::Fraction;
 use super::meter::{Exhausted, Step};
 use super::polynomial::{GENERATORS, Polynomial};
-use crate::expression::{Exact, ExpressionId, SymbolId};
+use crate::expression::{Exact, ExpressionId, Graph, SymbolId};
 use dashu_int::IBig;
 
 /// What a generator stands for.
@@ -147,8 +147,63 @@ impl Ring {
         Ok(result)
     }
 
+    /// The derivative by a symbol; `None` where a generator is opaque and may depend on it.
+    pub fn derivative(&self, fraction: &Fraction, symbol: SymbolId, graph: &Graph) -> Step<Option<Fraction>> {
+        // (n/d)' = (n' - n sum of e f'/f)/d
+        let Some(mut sum) = self.polynomial_derivative(&fraction.numerator, symbol, graph)? else { return Ok(None) };
+        for (factor, exponent) in &fraction.denominator {
+            let Some(slope) = self.polynomial_derivative(factor, symbol, graph)? else { return Ok(None) };
+            if slope.is_zero() {
+                continue;
+            }
+            let rate = self.multiply(&slope, &Fraction::whole(fraction.numerator.scaled(&IBig::from(*exponent))?))?;
+            let Some(rate) = self.divide(&rate, &Fraction::whole(factor.clone()))? else { return Ok(None) };
+            sum = self.subtract(&sum, &rate)?;
+        }
+        let below = Fraction { numerator: Polynomial::one(), ..fraction.clone() };
+        Ok(Some(self.multiply(&sum, &below)?))
+    }
+
+    fn polynomial_derivative(&self, polynomial: &Polynomial, symbol: SymbolId, graph: &Graph) -> Step<Option<Fraction>> {
+        let mut sum = Fraction::zero();
+        for generator in polynomial.generators() {
+            if !self.depends_on(generator, symbol, graph) {
+                continue;
+            }
+            let Some(slope) = self.generator_derivative(generator, symbol, graph)? else { return Ok(None) };
+            let term = self.multiply(&Fraction::whole(polynomial.derivative(generator)), &slope)?;
+            sum = self.add(&sum, &term)?;
+        }
+        Ok(Some(sum))
+    }
+
+    fn generator_derivative(&self, generator: usize, symbol: SymbolId, graph: &Graph) -> Step<Option<Fraction>> {
+        let whole = |generator| Fraction::whole(Polynomial::generator(generator));
+        let (outer, angle) = match &self.generators[generator] {
+            Kind::Symbol(own) => {
+                return Ok(Some(if *own == symbol { Fraction::whole(Polynomial::one()) } else { Fraction::zero() }));
+            }
+            Kind::Pi | Kind::Literal(_) => return Ok(Some(Fraction::zero())),
+            Kind::Sin(angle) | Kind::Sinh(angle) => (whole(generator + 1), angle),
+            Kind::Cos(angle) => (whole(generator - 1).negated(), angle),
+            Kind::Cosh(angle) => (whole(generator - 1), angle),
+            Kind::Exp(angle) => (whole(generator), angle),
+            Kind::Root(index, radicand) => {
+                // q' = r' q/(n r)
+                let Some(slope) = self.polynomial_derivative(radicand, symbol, graph)? else { return Ok(None) };
+                let below = Fraction::whole(radicand.scaled(&IBig::from(*index))?);
+                return self.divide(&self.multiply(&slope, &whole(generator))?, &below);
+            }
+            Kind::Opaque(_) => return Ok(None),
+        };
+        Ok(match self.derivative(&self.angles[angle.0], symbol, graph)? {
+            Some(inner) => Some(self.multiply(&outer, &inner)?),
+            None => None,
+        })
+    }
+
     /// Whether a generator's value depends on a symbol.
-    pub fn depends_on(&self, generator: usize, symbol: SymbolId, graph: &crate::expression::Graph) -> bool {
+    pub fn depends_on(&self, generator: usize, symbol: SymbolId, graph: &Graph) -> bool {
         let in_polynomial = |p: &Polynomial| p.generators().into_iter().any(|g| self.depends_on(g, symbol, graph));
         match &self.generators[generator] {
             Kind::Symbol(own) => *own == symbol,
@@ -180,7 +235,3 @@ fn replace_power(polynomial: &Polynomial, generator: usize, index: u8, replaceme
     Ok(sum)
 }
 
-/// A small integer as a polynomial coefficient.
-pub(super) fn integer(value: i64) -> IBig {
-    IBig::from(value)
-}

@@ -10,7 +10,7 @@ use super::fraction::Fraction;
 use super::meter::Step;
 use super::polynomial::{GENERATORS, Monomial, Polynomial};
 use super::ring::{AngleId, Kind, Ring};
-use crate::expression::{Exact, ExpressionId, Function, Graph, Node};
+use crate::expression::{Exact, Function, Graph, Node};
 use dashu_int::IBig;
 use dashu_ratio::RBig;
 use std::f64::consts::PI;
@@ -618,6 +618,3 @@ fn widened(range: (f64, f64)) -> (f64, f64) {
 fn exact_rational(value: &Exact) -> RBig {
     value.as_rational().clone()
 }
-
-/// Bounds of the symbols from formulas of the graph: the symbol, its lower and upper ends.
-pub(super) type Bounds = Vec<(ExpressionId, Vec<ExpressionId>, Vec<ExpressionId>)>;
