@@ -117,6 +117,11 @@ impl Exact {
         }
     }
 
+    /// A general-purpose rational number within the bound.
+    pub(crate) fn from_rational(value: RBig) -> Option<Self> {
+        Self::bounded(value)
+    }
+
     /// The number as a general-purpose rational number.
     pub(crate) fn as_rational(&self) -> &RBig {
         &self.0

@@ -46,7 +46,7 @@ impl<'a> Certificate<'a> {
             }
         }
         let mut proved = Vec::new();
-        for manner in [Arguments::Split, Arguments::Whole] {
+        for manner in [Arguments::Split, Arguments::Whole, Arguments::Written] {
             let open: Vec<_> = texts.iter().filter(|(quantity, _)| !proved.contains(quantity)).copied().collect();
             if open.is_empty() {
                 break;

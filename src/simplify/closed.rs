@@ -27,14 +27,14 @@ use dashu_base::{Abs, Signed};
 use dashu_int::IBig;
 use dashu_ratio::RBig;
 
-/// A value `outside * root^(power/2)`: the polynomial under the root is square-free, power is 1, 0 or -1.
+/// A value `outside * sqrt(root/below)`; the polynomials under the root are square-free.
 #[derive(Clone, Debug)]
 pub(super) struct Rooted {
     pub outside: Fraction,
     /// Factors of unknown sign that stand between bars, with their exponents.
     pub bars: Vec<(Polynomial, i32)>,
     pub root: Polynomial,
-    pub power: i8,
+    pub below: Polynomial,
 }
 
 /// The geometry of a patch as elements of a ring.
@@ -81,8 +81,8 @@ impl Formulas {
         self.tangents.iter().chain(&self.second).flatten().copied().collect()
     }
 
-    pub fn has_sums(&self, graph: &Graph) -> bool {
-        Reader::has_sums(graph, &self.roots())
+    pub fn manners(&self, graph: &Graph) -> Vec<Arguments> {
+        Reader::manners(graph, &self.roots())
     }
 }
 
@@ -217,7 +217,8 @@ impl<'a> Elements<'a> {
             let mut root = root;
             let outside = self.ring().cancelled(value)?;
             let outside = self.without_roots(outside, &mut root)?;
-            candidates.push(Rooted { outside, bars, power: if root.is_one() { 0 } else { 1 }, root });
+            let value = Rooted { outside, bars, root, below: Polynomial::one() };
+            candidates.push(self.balanced(value)?);
         }
         Ok(candidates)
     }
@@ -235,6 +236,35 @@ impl<'a> Elements<'a> {
             }
         }
         Ok(outside)
+    }
+
+    /// sqrt(f)/f = 1/sqrt(f) and f/sqrt(f) = sqrt(f) for the factors under the root.
+    fn balanced(&self, mut value: Rooted) -> Step<Rooted> {
+        if !value.root.is_one() {
+            for (factor, _) in self.ring().factored(&value.root)?.factors {
+                let place = value.outside.denominator.iter().position(|(known, _)| *known == factor);
+                if let Some(place) = place
+                    && let Some(rest) = self.ring().quotient(&value.root, &factor)?
+                {
+                    value.outside.denominator[place].1 -= 1;
+                    value.root = rest;
+                    value.below = value.below.times(&factor)?;
+                }
+            }
+            value.outside.denominator.retain(|(_, exponent)| *exponent > 0);
+        }
+        if !value.below.is_one() && !value.outside.is_zero() {
+            for (factor, _) in self.ring().factored(&value.below)?.factors {
+                if let Some(numerator) = self.ring().quotient(&value.outside.numerator, &factor)?
+                    && let Some(rest) = self.ring().quotient(&value.below, &factor)?
+                {
+                    value.outside.numerator = numerator;
+                    value.below = rest;
+                    value.root = value.root.times(&factor)?;
+                }
+            }
+        }
+        Ok(value)
     }
 
     /// A polynomial as squares outside and a square-free rest under the root, in the ways that look shortest.
@@ -287,7 +317,12 @@ impl<'a> Elements<'a> {
 impl Elements<'_> {
     /// Everything but the element, which stands below the bar of normal and curvatures.
     pub fn quantities(&mut self, element: &Rooted) -> Step<Vec<(Quantity, Rooted)>> {
-        let plain = |outside: Fraction| Rooted { outside, bars: Vec::new(), root: Polynomial::one(), power: 0 };
+        let plain = |outside: Fraction| Rooted {
+            outside,
+            bars: Vec::new(),
+            root: Polynomial::one(),
+            below: Polynomial::one(),
+        };
         let mut values = Vec::new();
         for axis in 0..3 {
             values.push((Quantity::TangentU(axis), plain(self.tangents[0][axis].clone())));
@@ -298,21 +333,20 @@ impl Elements<'_> {
             values.push((quantity, plain(value.clone())));
         }
         // Over the element: value/(outside sqrt(root)).
-        let over = |ring: &Ring, value: &Fraction| -> Step<Rooted> {
-            let outside = ring.divide(value, &element.outside)?.ok_or(Exhausted)?;
+        let over = |elements: &Self, value: &Fraction| -> Step<Rooted> {
+            let outside = elements.ring().divide(value, &element.outside)?.ok_or(Exhausted)?;
             let bars = element.bars.iter().map(|(factor, exponent)| (factor.clone(), -exponent)).collect();
-            Ok(Rooted { outside, bars, root: element.root.clone(), power: -element.power })
+            elements.balanced(Rooted { outside, bars, root: element.below.clone(), below: element.root.clone() })
         };
-        let along_content = |ring: &Ring, value: &Fraction, content: &Fraction| ring.multiply(value, content);
         for axis in 0..3 {
             let component = Fraction::whole(self.direction[axis].clone());
-            let component = along_content(self.ring(), &component, &self.content)?;
-            values.push((Quantity::Normal(axis), over(self.ring(), &component)?));
+            let component = self.ring().multiply(&component, &self.content)?;
+            values.push((Quantity::Normal(axis), over(self, &component)?));
         }
         let [l, m, n] = self.second()?;
         let ring = self.ring();
         for (quantity, value) in [(Quantity::L, &l), (Quantity::M, &m), (Quantity::N2, &n)] {
-            values.push((quantity, over(ring, &along_content(ring, value, &self.content)?)?));
+            values.push((quantity, over(self, &ring.multiply(value, &self.content)?)?));
         }
         let root = ring.multiply(&self.content, &Fraction::whole(self.square.clone()))?;
         let top = ring.subtract(&ring.multiply(&l, &n)?, &ring.multiply(&m, &m)?)?;
@@ -323,7 +357,7 @@ impl Elements<'_> {
         let outer = ring.add(&ring.multiply(&e, &n)?, &ring.multiply(&g, &l)?)?;
         let top = ring.subtract(&outer, &ring.multiply(&two, &ring.multiply(&f, &m)?)?)?;
         let mean = ring.divide(&top, &ring.multiply(&two, &root)?)?.ok_or(Exhausted)?;
-        values.push((Quantity::Mean, over(ring, &mean)?));
+        values.push((Quantity::Mean, over(self, &mean)?));
         Ok(values)
     }
 }
@@ -390,7 +424,7 @@ impl Printer<'_> {
             return Ok(Form::integer(0));
         }
         let form = self.rooted(value)?;
-        if value.power != 0 || !value.bars.is_empty() {
+        if !value.root.is_one() || !value.below.is_one() || !value.bars.is_empty() {
             return Ok(form);
         }
         let termwise = self.fraction(&value.outside)?;
@@ -429,7 +463,7 @@ impl Printer<'_> {
         }
         let number = number.abs();
         let mut best: Option<Form> = None;
-        for (moved_number, moved) in movable(&number, &exponents, value.power == 1 && value.bars.is_empty()) {
+        for (moved_number, moved) in movable(&number, &exponents, !value.root.is_one() && value.bars.is_empty()) {
             // What moves under the root does so as its square.
             let inside = Laurent::of(&value.root)?.times(&(&moved_number * &moved_number), &moved.map(|e| 2 * e))?;
             let mut factors = others.clone();
@@ -437,14 +471,23 @@ impl Printer<'_> {
             left.iter_mut().zip(moved).for_each(|(left, moved)| *left -= moved);
             let mut left_number = &number / &moved_number;
             factors.extend(self.generator_powers(&left, &mut left_number)?);
-            if value.power != 0 {
+            if !value.root.is_one() || !value.below.is_one() {
                 let (minus, form) = self.sum(&inside)?;
                 let form = match (minus, flipped(&form)) {
                     (false, _) => form,
                     (true, Some(turned)) => turned,
                     (true, None) => Form::Negate(Box::new(form)),
                 };
-                push_root(&mut factors, form, i64::from(value.power));
+                if value.below.is_one() {
+                    push_root(&mut factors, form, 1);
+                } else {
+                    let below = self.polynomial(&value.below)?;
+                    if value.root.is_one() {
+                        push_root(&mut factors, below, -1);
+                    } else {
+                        push_root(&mut factors, product(&RBig::ONE, vec![(form, (1, 1)), (below, (-1, 1))]), 1);
+                    }
+                }
             }
             let form = product(&left_number, factors);
             if best.as_ref().is_none_or(|known| form.operations() < known.operations()) {

@@ -79,6 +79,19 @@ impl Form {
         }
     }
 
+    /// The number of sums in the form.
+    pub(super) fn sums(&self) -> usize {
+        match self {
+            Form::Number(_) | Form::Pi | Form::Name(..) => 0,
+            Form::Call(_, arguments) => arguments.iter().map(Form::sums).sum(),
+            Form::Sum(terms) => 1 + terms.iter().map(|(_, term)| term.sums()).sum::<usize>(),
+            Form::Product(above, below) => above.iter().chain(below).map(Form::sums).sum(),
+            Form::Power(base, exponent) => base.sums() + exponent.sums(),
+            Form::Negate(inner) | Form::Not(inner) => inner.sums(),
+            Form::Relation(_, left, right) => left.sums() + right.sums(),
+        }
+    }
+
     fn binding(&self) -> Binding {
         match self {
             Form::Number(_) | Form::Pi | Form::Name(..) | Form::Call(..) => Binding::Atom,

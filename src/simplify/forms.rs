@@ -6,7 +6,6 @@ use super::facts::{Fact, facts};
 use super::form::Form;
 use super::meter::{Exhausted, Step, with_allowance};
 use super::plan::Printer;
-use super::read::Arguments;
 use crate::language::{Model, PatchId};
 use std::collections::BTreeMap;
 
@@ -73,10 +72,8 @@ pub fn closed_forms(model: &Model, patch: PatchId) -> ClosedForms {
     let mut graph = model.graph.clone();
     let patch = &model.patches[patch.0];
     let formulas = Formulas::new(&mut graph, patch);
-    let manners: &[Arguments] =
-        if formulas.has_sums(&graph) { &[Arguments::Split, Arguments::Whole] } else { &[Arguments::Split] };
     let mut best = ClosedForms::default();
-    for &manner in manners {
+    for manner in formulas.manners(&graph) {
         let mut found = ClosedForms::default();
         let read = with_allowance(READING, || Elements::new(&graph, model, patch, &formulas, manner));
         let Ok(mut elements) = read else {

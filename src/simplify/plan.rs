@@ -480,6 +480,7 @@ impl<'a> Printer<'a> {
             plans.extend(completed_square(laurent, generator, 1)?);
             plans.extend(completed_square(laurent, generator, 2)?);
         }
+        plans.extend(binomial_squares(laurent));
         for pair in self.ring.pairs() {
             plans.extend(grouped(laurent, |e| {
                 let mut key = [0; GENERATORS];
@@ -538,6 +539,7 @@ impl<'a> Printer<'a> {
     pub fn generator_powers(&mut self, exponents: &Exponents, number: &mut RBig) -> Step<Vec<(Form, Exponent)>> {
         let mut rest = *exponents;
         let mut factors = Vec::new();
+        self.merge_half_angles(&mut rest, number)?;
         for pair in self.ring.pairs() {
             let (i, j) = (rest[pair.sine], rest[pair.cosine]);
             if i == 0 && j == 0 {
@@ -560,10 +562,55 @@ impl<'a> Printer<'a> {
                 _ => factors.extend(plain),
             }
         }
+        if let Some(exponential) = self.joint_exponential(&mut rest)? {
+            factors.push((exponential, (1, 1)));
+        }
         for (generator, &exponent) in rest.iter().enumerate().filter(|(_, exponent)| **exponent != 0) {
             factors.push((self.generator(generator)?, (i64::from(exponent), 1)));
         }
         Ok(factors)
+    }
+
+    /// All exponentials as one: exp(a)^i exp(b)^j = exp(i a + j b).
+    fn joint_exponential(&mut self, rest: &mut Exponents) -> Step<Option<Form>> {
+        let mut argument = Fraction::zero();
+        for (generator, exponent) in rest.iter_mut().enumerate().filter(|(_, exponent)| **exponent != 0) {
+            let Some(Kind::Exp(angle)) = self.ring.generators.get(generator) else { continue };
+            let multiple = Fraction::whole(Polynomial::integer(i64::from(*exponent)));
+            let term = self.ring.multiply(&self.ring.angles[angle.0], &multiple)?;
+            argument = self.ring.add(&argument, &term)?;
+            *exponent = 0;
+        }
+        if argument.is_zero() {
+            return Ok(None);
+        }
+        Ok(Some(Form::Call("exp".to_owned(), vec![self.fraction(&argument)?])))
+    }
+
+    /// s^i c^i as (S/2)^i with the sine of twice the angle, where that is shorter or meets other powers of that angle.
+    fn merge_half_angles(&mut self, rest: &mut Exponents, number: &mut RBig) -> Step<()> {
+        let mut place = 0;
+        while let Some(pair) = self.ring.pairs().get(place).copied() {
+            place += 1;
+            let i = rest[pair.sine];
+            if i == 0 || i != rest[pair.cosine] {
+                continue;
+            }
+            let double = self.double_pair(&pair)?;
+            let meets = rest[double.sine] != 0 || rest[double.cosine] != 0;
+            let scale = RBig::from(2u8).pow(isize::from(i.abs()));
+            let scaled = if i > 0 { &*number / &scale } else { &*number * &scale };
+            let plain = self.plain_pair(&pair, i, i)?;
+            let doubled = self.plain_pair(&double, i, 0)?;
+            if meets || cost(&doubled, &scaled) < cost(&plain, number) {
+                (rest[pair.sine], rest[pair.cosine]) = (0, 0);
+                rest[double.sine] += i;
+                *number = scaled;
+                // The doubled pair may stand anywhere in the list.
+                place = 0;
+            }
+        }
+        Ok(())
     }
 
     fn plain_pair(&mut self, pair: &Pair, i: i8, j: i8) -> Step<Vec<(Form, Exponent)>> {
@@ -690,29 +737,75 @@ fn completed_square(laurent: &Laurent, generator: usize, step: i8) -> Step<Optio
     if b.len() == 0 || b.len() > 6 {
         return Ok(None);
     }
-    let inverse = square.map(|e| -e);
-    let half = b.times(&(RBig::ONE / (RBig::from(2u8) * number)), &inverse)?;
+    // A square a goes inside: (sqrt(a) x + b/(2 sqrt(a)))^2, which divides by less.
+    let root = crate::expression::Exact::from_rational(number.clone()).and_then(|number| number.square_root());
+    let (number, outside, inside) = match root {
+        Some(root) if square.iter().all(|e| e % 2 == 0) => {
+            (RBig::ONE, [0; GENERATORS], (root.as_rational().clone(), square.map(|e| e / 2)))
+        }
+        _ => (number.clone(), *square, (RBig::ONE, [0; GENERATORS])),
+    };
+    let mut below = outside;
+    below.iter_mut().zip(inside.1).for_each(|(below, e)| *below += e);
+    // No new division comes in: (x + y/z)^2 reads worse than what it replaces.
+    if (0..GENERATORS).any(|place| below[place] > 0 && b.terms.iter().any(|(e, _)| e[place] < below[place])) {
+        return Ok(None);
+    }
+    let half = b.times(&(RBig::ONE / (RBig::from(2u8) * &number * &inside.0)), &below.map(|e| -e))?;
     let mut rest = c.terms.clone();
     for (e, x) in &half.terms {
         for (f, y) in &half.terms {
-            let mut total = *square;
+            let mut total = outside;
             for (place, total) in total.iter_mut().enumerate() {
                 *total = total.checked_add(e[place]).and_then(|t| t.checked_add(f[place])).ok_or(Exhausted)?;
             }
-            rest.push((total, -(number * x * y)));
+            rest.push((total, -(&number * x * y)));
         }
     }
     let rest = Laurent::collect(rest);
     let mut base = half.terms;
-    let mut lead = [0; GENERATORS];
+    let mut lead = inside.1;
     lead[generator] = step;
-    base.push((lead, RBig::ONE));
-    let mut parts =
-        vec![Part { number: number.clone(), factor: *square, sum: Laurent::collect(base), power: 2 }];
+    base.push((lead, inside.0));
+    let mut parts = vec![Part { number, factor: outside, sum: Laurent::collect(base), power: 2 }];
     if rest.len() > 0 {
         parts.push(Part { number: RBig::ONE, factor: [0; GENERATORS], sum: rest, power: 1 });
     }
     Ok(Some(Plan { parts }))
+}
+
+/// Terms a^2, 2 a b, b^2 of a sum as (a + b)^2, numbers that the squares share outside.
+fn binomial_squares(laurent: &Laurent) -> Vec<Plan> {
+    let half = |e: &Exponents| e.iter().all(|e| e % 2 == 0).then(|| e.map(|e| e / 2));
+    let mut plans = Vec::new();
+    for (first, (e, x)) in laurent.terms.iter().enumerate() {
+        for (f, y) in &laurent.terms[first + 1..] {
+            let (Some(a), Some(b)) = (half(e), half(f)) else { continue };
+            let Some(ratio) = crate::expression::Exact::from_rational(y / x).and_then(|ratio| ratio.square_root()) else {
+                continue;
+            };
+            let mut mixed = a;
+            mixed.iter_mut().zip(b).for_each(|(mixed, b)| *mixed += b);
+            // x (a + r b)^2 = x a^2 + 2 x r a b + x r^2 b^2
+            let ratio = ratio.as_rational().clone();
+            let middle = RBig::from(2u8) * x * &ratio;
+            let Some((_, found)) = laurent.terms.iter().find(|(e, _)| *e == mixed) else { continue };
+            if found.clone().abs() != middle.clone().abs() {
+                continue;
+            }
+            let ratio = if *found == middle { ratio } else { -ratio };
+            let base = Laurent::collect([(a, RBig::ONE), (b, ratio)]);
+            let rest = laurent.terms.iter().filter(|(g, _)| g != e && g != f && *g != mixed).cloned();
+            let mut parts =
+                vec![Part { number: x.clone(), factor: [0; GENERATORS], sum: base, power: 2 }];
+            let rest = Laurent::collect(rest);
+            if rest.len() > 0 {
+                parts.push(Part { number: RBig::ONE, factor: [0; GENERATORS], sum: rest, power: 1 });
+            }
+            plans.push(Plan { parts });
+        }
+    }
+    plans
 }
 
 /// Terms of lower degree in a pair times s^2 + c^2 (or cosh^2 - sinh^2) until all have one degree.
@@ -769,7 +862,8 @@ fn signed_sum(terms: Vec<(bool, Form)>) -> Signed_ {
 
 /// Keeps the shorter form; a sign outside counts as an operation.
 fn keep(best: &mut Signed_, candidate: Signed_) {
-    let cost = |(negative, form): &Signed_| form.operations() + usize::from(*negative);
+    // Of equally long forms the one with fewer sums inside each other.
+    let cost = |(negative, form): &Signed_| (form.operations() + usize::from(*negative), form.sums());
     if cost(&candidate) < cost(best) {
         *best = candidate;
     }

@@ -15,8 +15,67 @@ pub(super) fn product(number: &RBig, factors: Vec<(Form, Exponent)>) -> Form {
     for (form, exponent) in factors {
         dissolve(form, exponent, &mut number, &mut flat);
     }
+    let flat: Vec<(Form, Exponent)> = flat.into_iter().filter(|(_, (p, _))| *p != 0).collect();
+    let mut best = arranged(&number, flat.clone());
+    if let Some((number, joined)) = double_angles(&number, &flat) {
+        let form = arranged(&number, joined);
+        if form.operations() < best.operations() {
+            best = form;
+        }
+    }
+    best
+}
+
+/// sin(x)^i cos(x)^i as (sin(2x)/2)^i.
+fn double_angles(number: &RBig, factors: &[(Form, Exponent)]) -> Option<(RBig, Vec<(Form, Exponent)>)> {
+    let (mut number, mut factors) = (number.clone(), factors.to_vec());
+    let mut changed = false;
+    for (sine, cosine) in [("sin", "cos"), ("sinh", "cosh")] {
+        while let Some((first, second, argument)) = matching(&factors, sine, cosine, |i, j| i == j) {
+            let exponent = factors[first].1;
+            let two = RBig::from(2u8).pow(exponent.0.abs() as isize);
+            number = if exponent.0 > 0 { number / two } else { number * two };
+            let doubled = product(&RBig::from(2u8), vec![(argument, (1, 1))]);
+            factors.remove(first.max(second));
+            factors.remove(first.min(second));
+            dissolve(Form::Call(sine.to_owned(), vec![doubled]), exponent, &mut number, &mut factors);
+            changed = true;
+        }
+    }
+    changed.then_some((number, factors))
+}
+
+/// Places of f(x)^i and g(x)^j with whole exponents that fulfil a condition, and x.
+fn matching(
+    factors: &[(Form, Exponent)],
+    f: &str,
+    g: &str,
+    condition: impl Fn(i64, i64) -> bool,
+) -> Option<(usize, usize, Form)> {
+    for (first, (form, (i, root))) in factors.iter().enumerate() {
+        let Form::Call(name, arguments) = form else { continue };
+        if name != f || *root != 1 {
+            continue;
+        }
+        let wanted = Form::Call(g.to_owned(), arguments.clone());
+        if let Some(second) = factors.iter().position(|(other, (j, root))| *root == 1 && *other == wanted && condition(*i, *j)) {
+            return Some((first, second, arguments[0].clone()));
+        }
+    }
+    None
+}
+
+/// The factors in order, equal exponents merged where that is shorter.
+fn arranged(number: &RBig, mut factors: Vec<(Form, Exponent)>) -> Form {
+    for (sine, cosine, tangent) in [("sin", "cos", "tan"), ("sinh", "cosh", "tanh")] {
+        while let Some((first, second, argument)) = matching(&factors, sine, cosine, |i, j| i == -j) {
+            let exponent = factors[first].1;
+            factors.remove(first.max(second));
+            factors.remove(first.min(second));
+            factors.push((Form::Call(tangent.to_owned(), vec![argument]), exponent));
+        }
+    }
     let (p, q) = (number.numerator().clone().unsigned_abs(), number.denominator().clone());
-    let mut factors: Vec<(Form, Exponent)> = flat.into_iter().filter(|(_, (p, _))| *p != 0).collect();
     factors.sort_by_key(|(form, _)| rank(form));
     let plain = build(&p, &q, &factors);
     let mut best = plain;

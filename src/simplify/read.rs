@@ -1,9 +1,10 @@
 //! From formulas of the graph to elements of the ring.
 //!
 //! Arguments of sines, hyperbolic sines and exponentials are taken apart into rational multiples of base arguments; for each
-//! base the largest common unit is found first, so that sin(u) and sin(u/2) become polynomials in one pair. Two manners
-//! of taking apart exist, because either can give the shorter form: by terms, sin(u + v) = sin u cos v + cos u sin v, or
-//! whole, where u + v is a base of its own.
+//! base the largest common unit is found first, so that sin(u) and sin(u/2) become polynomials in one pair. Manners
+//! of taking apart exist, because each can give the shorter form: by terms, sin(u + v) = sin u cos v + cos u sin v, or
+//! whole, where u + v is a base of its own. A third manner relates no two arguments, which keeps cos(8u) from being
+//! written out in cos(u).
 
 use super::factor::{Factored, split_square};
 use super::fraction::Fraction;
@@ -23,6 +24,8 @@ pub(super) enum Arguments {
     Split,
     /// Each argument, up to a rational factor, is a base.
     Whole,
+    /// Each argument is a base as it is written: sin u and sin 2u are unrelated.
+    Written,
 }
 
 /// A product of formulas with integer exponents, sorted.
@@ -73,8 +76,42 @@ impl<'a> Reader<'a> {
         Ok(reader)
     }
 
-    /// Whether some argument is a sum, so that the two manners of taking arguments apart differ.
-    pub fn has_sums(graph: &Graph, roots: &[ExpressionId]) -> bool {
+    /// The manners of taking arguments apart that differ for these formulas.
+    pub fn manners(graph: &Graph, roots: &[ExpressionId]) -> Vec<Arguments> {
+        let mut manners = vec![Arguments::Split];
+        if Self::has_sums(graph, roots) {
+            manners.push(Arguments::Whole);
+        }
+        if Self::has_multiples(graph, roots) {
+            manners.push(Arguments::Written);
+        }
+        manners
+    }
+
+    /// Whether some base occurs in one argument as a multiple, above 2, of what it is in another.
+    fn has_multiples(graph: &Graph, roots: &[ExpressionId]) -> bool {
+        let mut seen: Vec<(Key, RBig)> = Vec::new();
+        for id in graph.reachable(roots) {
+            let Node::Call(f, argument) = graph.node(id) else { continue };
+            if !circular(f) && !hyperbolic(f) {
+                continue;
+            }
+            let Ok(terms) = linear(graph, argument) else { continue };
+            for (key, x) in terms.into_iter().filter(|(key, _)| !is_phase(graph, key)) {
+                let x = x.abs();
+                let two = RBig::from(2u8);
+                let far = |y: &RBig| x > *y && &x / y > two || *y > x && y / &x > two;
+                if seen.iter().any(|(known, y)| *known == key && far(y)) {
+                    return true;
+                }
+                seen.push((key, x));
+            }
+        }
+        false
+    }
+
+    /// Whether some argument is a sum.
+    fn has_sums(graph: &Graph, roots: &[ExpressionId]) -> bool {
         graph.reachable(roots).into_iter().any(|id| match graph.node(id) {
             Node::Call(f, argument) if circular(f) || hyperbolic(f) => {
                 linear(graph, argument).is_ok_and(|l| l.iter().filter(|(key, _)| !is_phase(graph, key)).count() > 1)
@@ -112,7 +149,11 @@ impl<'a> Reader<'a> {
         let (phase, rest): (Linear, Linear) =
             terms.into_iter().partition(|(key, _)| family == Family::Circular && is_phase(self.graph, key));
         let mut bases: Vec<(Linear, RBig)> = phase.into_iter().map(alone).collect();
-        if let Some((_, leading)) = rest.first().cloned() {
+        if self.arguments == Arguments::Written && !rest.is_empty() {
+            // The sign alone comes out: sin(-x) = -sin(x).
+            let sign = if rest[0].1.is_negative() { -RBig::ONE } else { RBig::ONE };
+            bases.push((scaled(rest, &sign), sign));
+        } else if let Some((_, leading)) = rest.first().cloned() {
             let base = rest.into_iter().map(|(key, coefficient)| (key, coefficient / &leading)).collect();
             bases.push((base, leading));
         }
@@ -386,15 +427,20 @@ impl<'a> Reader<'a> {
             return Ok(Some(self.generator(Kind::Root(index, radicand.numerator.clone()))?));
         }
         let mut below = Vec::new();
+        // sqrt(p/q) = sqrt(p q)/q for the numbers; polynomials below have a root of their own.
+        let mut above = radicand.numerator.scaled(&radicand.divisor)?;
         for (factor, exponent) in &radicand.denominator {
             match sign(&self.ring, factor) {
-                Some(1) => below.push((factor.clone(), *exponent)),
-                _ if exponent % 4 == 0 => below.push((factor.clone(), *exponent)),
-                _ => return Ok(None),
+                Some(sign) => {
+                    below.push((if sign < 0 { factor.negated() } else { factor.clone() }, *exponent));
+                    if sign < 0 && exponent % 2 == 1 {
+                        above = above.negated();
+                    }
+                }
+                None if exponent % 4 == 0 => below.push((factor.clone(), *exponent)),
+                None => return Ok(None),
             }
         }
-        // sqrt(p/q) = sqrt(p q)/q for the numbers; polynomials below have a root of their own.
-        let above = radicand.numerator.scaled(&radicand.divisor)?;
         let Some(mut value) = self.root_of_polynomial(&above, sign)? else { return Ok(None) };
         value = self.ring.multiply(
             &value,

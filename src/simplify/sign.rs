@@ -510,7 +510,7 @@ impl Prover<'_> {
             Kind::Opaque(expression) => match self.graph.node(*expression) {
                 Node::Call(Function::Asin | Function::Atan, _) => (-PI / 2.0 - 1e-15, PI / 2.0 + 1e-15),
                 Node::Call(Function::Acos, _) => (0.0, PI + 1e-15),
-                Node::Call(Function::Acosh | Function::Abs | Function::Erfc, _) => (0.0, f64::INFINITY),
+                Node::Call(Function::Acosh | Function::Abs | Function::Erfc | Function::Sqrt, _) => (0.0, f64::INFINITY),
                 _ => anything,
             },
             Kind::Symbol(_) => match self.ranges.of(generator) {
