@@ -7,7 +7,7 @@
 //!
 //! Squares come out of P, each factor pulled out with its proved sign or between bars.
 
-use super::factor::{Factored, split_square};
+use super::factor::{Factored, factor, split_square};
 use super::form::Form;
 use super::forms::Quantity;
 use super::fraction::{Fraction, common_denominator, raised};
@@ -18,7 +18,7 @@ use super::polynomial::{GENERATORS, Polynomial};
 use super::product::{Exponent, flipped, is_negative, product, ratio};
 use super::read::{Arguments, Reader};
 use super::region::{self, guesses};
-use super::ring::{Directions, Kind, Ring};
+use super::ring::{Directions, Kind, Pair, Ring};
 use super::sign::{Ranges, sign};
 use crate::calculus::{Vector, differentiate_vector};
 use crate::expression::{ExpressionId, Graph, SymbolId};
@@ -183,44 +183,103 @@ impl<'a> Elements<'a> {
         let content = self.content.clone();
         let mut candidates = Vec::new();
         for (outside, root) in self.squares(&self.square.clone())? {
-            let mut factors: Vec<(Polynomial, i32)> = Vec::new();
-            let divisor = content.divisor.clone();
-            let mut number = IBig::ONE;
             let above = self.ring().factored(&content.numerator)?;
-            number = number * above.unit.abs();
+            let mut product = Product { number: RBig::ONE, factors: Vec::new(), root };
+            product.number *= RBig::from(above.unit.abs() * &outside.unit);
+            product.number /= RBig::from(content.divisor.clone());
             for (factor, exponent) in above.factors.iter().chain(&outside.factors) {
-                include(&mut factors, factor, *exponent as i32);
+                product.include(factor, *exponent as i32);
             }
-            number = number * &outside.unit;
             for (factor, exponent) in &content.denominator {
-                include(&mut factors, factor, -(*exponent as i32));
+                product.include(factor, -(*exponent as i32));
             }
-            factors.retain(|(_, exponent)| *exponent != 0);
-            let mut value = Fraction::whole(Polynomial::one());
-            let mut bars = Vec::new();
-            for (factor, exponent) in &factors {
-                let proved = if exponent % 2 == 0 { Some(1) } else { self.sign(factor)? };
-                match proved {
-                    Some(sign) => {
-                        let factor = if sign < 0 { factor.negated() } else { factor.clone() };
-                        if *exponent > 0 {
-                            value.numerator = value.numerator.times(&factor.power(*exponent as u32)?)?;
-                        } else {
-                            value.denominator.push((factor, exponent.unsigned_abs()));
-                        }
-                    }
-                    None => bars.push((factor.clone(), *exponent)),
-                }
+            let halved = self.half_angles(&product)?;
+            for product in [product].into_iter().chain(halved) {
+                candidates.push(self.with_signs(product)?);
             }
-            value.numerator = value.numerator.scaled(&number)?;
-            value.divisor = divisor;
-            let mut root = root;
-            let outside = self.ring().cancelled(value)?;
-            let outside = self.without_roots(outside, &mut root)?;
-            let value = Rooted { outside, bars, root, below: Polynomial::one() };
-            candidates.push(self.balanced(value)?);
         }
         Ok(candidates)
+    }
+
+    /// Odd powers outside the root with their proved signs, the others between bars.
+    fn with_signs(&mut self, product: Product) -> Step<Rooted> {
+        let mut value = Fraction::whole(Polynomial::constant(product.number.numerator().clone()));
+        value.divisor = IBig::from(product.number.denominator().clone());
+        let mut bars = Vec::new();
+        for (factor, exponent) in product.factors.iter().filter(|(_, exponent)| *exponent != 0) {
+            let proved = if exponent % 2 == 0 { Some(1) } else { self.sign(factor)? };
+            match proved {
+                Some(sign) => {
+                    let factor = if sign < 0 { factor.negated() } else { factor.clone() };
+                    if *exponent > 0 {
+                        value.numerator = value.numerator.times(&factor.power(*exponent as u32)?)?;
+                    } else {
+                        value.denominator.push((factor, exponent.unsigned_abs()));
+                    }
+                }
+                None => bars.push((factor.clone(), *exponent)),
+            }
+        }
+        let mut root = product.root;
+        let outside = self.ring().cancelled(value)?;
+        let outside = self.without_roots(outside, &mut root)?;
+        self.balanced(Rooted { outside, bars, root, below: Polynomial::one() })
+    }
+
+    /// Squares that show only in half angles: 1 - cos u = 2 sin(u/2)^2. With s = 2SC, c = C^2 - S^2, 1 = C^2 + S^2 a
+    /// polynomial in the pair becomes a form in S and C, where factors are unique.
+    fn half_angles(&mut self, product: &Product) -> Step<Vec<Product>> {
+        let mut found = Vec::new();
+        for pair in self.ring().pairs() {
+            if !product.root.uses(pair.sine) && !product.root.uses(pair.cosine) {
+                continue;
+            }
+            let half = self.half_pair(&pair)?;
+            let Some(numerator) = in_half_angle(&product.root, &pair, &half)? else { continue };
+            let factored = factor(&numerator)?;
+            if factored.factors.iter().all(|(_, exponent)| *exponent == 1) {
+                continue;
+            }
+            let (whole, rest) = split_square(&factored.unit.clone().abs());
+            let mut next = product.clone();
+            next.number *= RBig::from(whole);
+            next.root = Polynomial::constant(rest);
+            for (factor, exponent) in &factored.factors {
+                if *exponent > 1 {
+                    next.include(factor, (*exponent / 2) as i32);
+                }
+                if exponent % 2 == 1 {
+                    next.root = next.root.times(factor)?;
+                }
+            }
+            if factored.unit.is_negative() {
+                next.root = next.root.negated();
+            }
+            next.root = self.ring().canonical(&next.root)?;
+            found.push(next.clone());
+            // The other factors in the half angle as well.
+            let mut all = Product { factors: Vec::new(), ..next.clone() };
+            for (other, exponent) in &next.factors {
+                let split = match in_half_angle(other, &pair, &half)? {
+                    Some(numerator) => factor(&numerator)?,
+                    None => Factored { unit: IBig::ONE, factors: vec![(other.clone(), 1)] },
+                };
+                let unit = RBig::from(split.unit.abs()).pow(exponent.unsigned_abs() as isize);
+                all.number = if *exponent > 0 { all.number * unit } else { all.number / unit };
+                for (part, own) in &split.factors {
+                    all.include(part, *own as i32 * exponent);
+                }
+            }
+            found.push(all);
+        }
+        Ok(found)
+    }
+
+    fn half_pair(&mut self, pair: &Pair) -> Step<Pair> {
+        let half = Fraction { divisor: IBig::from(2), ..Fraction::whole(Polynomial::one()) };
+        let ring = &mut self.reader.ring;
+        let argument = ring.multiply(&ring.angles[pair.angle.0], &half)?;
+        ring.pair_of(argument, pair.hyperbolic)
     }
 
     /// 1/q sqrt(P) = sqrt(P/radicand) for a root q whose radicand divides P.
@@ -242,8 +301,11 @@ impl<'a> Elements<'a> {
     fn balanced(&self, mut value: Rooted) -> Step<Rooted> {
         if !value.root.is_one() {
             for (factor, _) in self.ring().factored(&value.root)?.factors {
-                let place = value.outside.denominator.iter().position(|(known, _)| *known == factor);
+                // A factor with a proved sign stands below the bar as the one that is not negative.
+                let below = &value.outside.denominator;
+                let place = below.iter().position(|(known, _)| *known == factor || *known == factor.negated());
                 if let Some(place) = place
+                    && let factor = below[place].0.clone()
                     && let Some(rest) = self.ring().quotient(&value.root, &factor)?
                 {
                     value.outside.denominator[place].1 -= 1;
@@ -362,11 +424,48 @@ impl Elements<'_> {
     }
 }
 
-fn include(factors: &mut Vec<(Polynomial, i32)>, factor: &Polynomial, exponent: i32) {
-    match factors.iter_mut().find(|(known, _)| known == factor) {
-        Some((_, total)) => *total += exponent,
-        None => factors.push((factor.clone(), exponent)),
+/// |number| times the product of |factor^exponent| times sqrt(root).
+#[derive(Clone)]
+struct Product {
+    number: RBig,
+    factors: Vec<(Polynomial, i32)>,
+    root: Polynomial,
+}
+
+impl Product {
+    fn include(&mut self, factor: &Polynomial, exponent: i32) {
+        match self.factors.iter_mut().find(|(known, _)| known == factor) {
+            Some((_, total)) => *total += exponent,
+            None => self.factors.push((factor.clone(), exponent)),
+        }
     }
+}
+
+/// A polynomial in a pair as a form in the pair of half the angle; `None` if it does not use the pair.
+fn in_half_angle(polynomial: &Polynomial, pair: &Pair, half: &Pair) -> Step<Option<Polynomial>> {
+    let degree = |monomial: &super::polynomial::Monomial| monomial.0[pair.sine] + monomial.0[pair.cosine];
+    let highest = polynomial.terms().iter().map(|(monomial, _)| degree(monomial)).max().unwrap_or(0);
+    if highest == 0 || highest > 12 {
+        return Ok(None);
+    }
+    let square = |generator| Polynomial::generator(generator).power(2);
+    let (s2, c2) = (square(half.sine)?, square(half.cosine)?);
+    let mixed = Polynomial::generator(half.sine).times(&Polynomial::generator(half.cosine))?.scaled(&IBig::from(2))?;
+    // sinh = 2SC, cosh = C^2 + S^2, 1 = C^2 - S^2
+    let (cosine, one) = if pair.hyperbolic { (c2.plus(&s2), c2.minus(&s2)) } else { (c2.minus(&s2), c2.plus(&s2)) };
+    let mut sum = Polynomial::zero();
+    for (monomial, x) in polynomial.terms() {
+        let mut rest = *monomial;
+        let (i, j) = (rest.0[pair.sine], rest.0[pair.cosine]);
+        rest.0[pair.sine] = 0;
+        rest.0[pair.cosine] = 0;
+        let term = Polynomial::term(rest, x.clone())
+            .times(&mixed.power(u32::from(i))?)?
+            .times(&cosine.power(u32::from(j))?)?
+            .times(&one.power(u32::from(highest - i - j))?)?;
+        sum = sum.plus(&term);
+    }
+    Ok(Some(sum))
 }
 
 pub(super) fn dot(ring: &Ring, a: &[Fraction; 3], b: &[Fraction; 3]) -> Step<Fraction> {

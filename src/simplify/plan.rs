@@ -411,21 +411,7 @@ impl<'a> Printer<'a> {
     fn double_pair(&mut self, pair: &Pair) -> Step<Pair> {
         let two = Fraction::whole(Polynomial::integer(2));
         let argument = self.ring.multiply(&self.ring.angles[pair.angle.0], &two)?;
-        let angle = match self.ring.angles.iter().position(|known| *known == argument) {
-            Some(known) => super::ring::AngleId(known),
-            None => {
-                self.ring.angles.push(argument);
-                super::ring::AngleId(self.ring.angles.len() - 1)
-            }
-        };
-        let (sine, cosine) = if pair.hyperbolic {
-            (Kind::Sinh(angle), Kind::Cosh(angle))
-        } else {
-            (Kind::Sin(angle), Kind::Cos(angle))
-        };
-        let sine = self.ring.generator(sine)?;
-        let cosine = self.ring.generator(cosine)?;
-        Ok(Pair { sine, cosine, hyperbolic: pair.hyperbolic, angle })
+        self.ring.pair_of(argument, pair.hyperbolic)
     }
 
     fn factored(&mut self, polynomial: &Polynomial, negated: bool, best: &mut Signed_) -> Step<()> {
@@ -565,10 +551,34 @@ impl<'a> Printer<'a> {
         if let Some(exponential) = self.joint_exponential(&mut rest)? {
             factors.push((exponential, (1, 1)));
         }
+        for side in [1, -1] {
+            if let Some(radicand) = self.joint_root(&mut rest, side)? {
+                factors.push((radicand, (i64::from(side), 2)));
+            }
+        }
         for (generator, &exponent) in rest.iter().enumerate().filter(|(_, exponent)| **exponent != 0) {
             factors.push((self.generator(generator)?, (i64::from(exponent), 1)));
         }
         Ok(factors)
+    }
+
+    /// Several square roots above the bar (side 1) or below it (side -1) as one: their common radicand.
+    fn joint_root(&mut self, rest: &mut Exponents, side: i8) -> Step<Option<Form>> {
+        let roots: Vec<(usize, Polynomial)> = (0..self.ring.generators.len())
+            .filter(|&generator| rest[generator] == side)
+            .filter_map(|generator| match &self.ring.generators[generator] {
+                Kind::Root(2, radicand) => Some((generator, radicand.clone())),
+                _ => None,
+            })
+            .collect();
+        let mut product = Polynomial::one();
+        for (generator, radicand) in &roots {
+            if super::factor::square_root(radicand)?.is_none() {
+                product = self.ring.canonical(&product.times(radicand)?)?;
+                rest[*generator] = 0;
+            }
+        }
+        if product.is_one() { Ok(None) } else { Ok(Some(self.polynomial(&product)?)) }
     }
 
     /// All exponentials as one: exp(a)^i exp(b)^j = exp(i a + j b).

@@ -463,33 +463,58 @@ impl<'a> Reader<'a> {
         let Some(factored) = self.ring.factorings(radicand)?.into_iter().rev().max_by_key(squares) else {
             return Ok(None);
         };
-        let (whole, mut inside_unit) = split_square(&factored.unit.clone().abs());
-        if factored.unit.is_negative() {
-            inside_unit = -inside_unit;
-        }
+        let (whole, inside) = split_square(&factored.unit.clone().abs());
         let mut outside = Polynomial::constant(whole);
-        let mut radicand = Polynomial::constant(inside_unit);
+        // Roots of what is known not to be negative stand alone, so that sqrt(6) and sqrt(2) sqrt(3) meet.
+        let mut roots: Vec<Polynomial> = primes(&inside).into_iter().map(Polynomial::constant).collect();
+        let mut rest = if factored.unit.is_negative() { Polynomial::integer(-1) } else { Polynomial::one() };
         for (factor, exponent) in &factored.factors {
             let half = exponent / 2;
-            let proved = if half % 2 == 0 { Some(1) } else { sign(&self.ring, factor) };
+            let proved = sign(&self.ring, factor);
             let (pulled, left) = match proved {
-                Some(_) => (half, exponent % 2),
-                None => (half - 1, exponent - 2 * (half - 1)),
+                None if half % 2 == 1 => (half - 1, exponent - 2 * (half - 1)),
+                _ => (half, exponent % 2),
             };
             outside = outside.times(&factor.power(pulled)?)?;
-            if proved == Some(-1) {
+            if proved == Some(-1) && pulled % 2 == 1 {
                 outside = outside.negated();
             }
-            radicand = radicand.times(&factor.power(left)?)?;
+            match proved {
+                Some(1) if left == 1 => roots.push(self.ring.canonical(factor)?),
+                Some(-1) if left == 1 => {
+                    roots.push(self.ring.canonical(&factor.negated())?);
+                    rest = rest.negated();
+                }
+                _ => rest = rest.times(&factor.power(left)?)?,
+            }
         }
-        let outside = Fraction::whole(self.ring.canonical(&outside)?);
-        let radicand = self.ring.canonical(&radicand)?;
-        if radicand.is_one() {
-            return Ok(Some(outside));
+        let rest = self.ring.canonical(&rest)?;
+        if !rest.is_one() {
+            roots.push(rest);
         }
-        let root = self.generator(Kind::Root(2, radicand))?;
-        Ok(Some(self.ring.multiply(&outside, &root)?))
+        let mut value = Fraction::whole(self.ring.canonical(&outside)?);
+        for root in roots {
+            let root = self.generator(Kind::Root(2, root))?;
+            value = self.ring.multiply(&value, &root)?;
+        }
+        Ok(Some(value))
     }
+}
+
+/// The prime factors of a number that is square-free as far as [`split_square`] shows; a large rest stays whole.
+fn primes(value: &IBig) -> Vec<IBig> {
+    let mut rest = value.clone();
+    let mut found = Vec::new();
+    for prime in [2, 3, 5, 7, 11, 13, 17, 19, 23, 29, 31, 37, 41, 43, 47].map(IBig::from) {
+        if (&rest % &prime) == IBig::ZERO {
+            rest = rest / &prime;
+            found.push(prime);
+        }
+    }
+    if rest != IBig::ONE {
+        found.push(rest);
+    }
+    found
 }
 
 /// Numbers that act as numbers; others act as named constants, so that 6378137 is not multiplied out.

@@ -85,6 +85,22 @@ impl Ring {
         self.generators.iter().enumerate().filter_map(pair).collect()
     }
 
+    /// The pair of an argument, added if it is new.
+    pub fn pair_of(&mut self, argument: Fraction, hyperbolic: bool) -> Step<Pair> {
+        let angle = match self.angles.iter().position(|known| *known == argument) {
+            Some(known) => AngleId(known),
+            None => {
+                self.angles.push(argument);
+                AngleId(self.angles.len() - 1)
+            }
+        };
+        let (sine, cosine) =
+            if hyperbolic { (Kind::Sinh(angle), Kind::Cosh(angle)) } else { (Kind::Sin(angle), Kind::Cos(angle)) };
+        let sine = self.generator(sine)?;
+        let cosine = self.generator(cosine)?;
+        Ok(Pair { sine, cosine, hyperbolic, angle })
+    }
+
     /// All directions for the pairs that polynomials use; the first replaces every s^2.
     pub fn directions(&self, polynomials: &[&Polynomial]) -> Vec<Directions> {
         let used: Vec<usize> = self
