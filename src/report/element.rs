@@ -84,16 +84,20 @@ impl ElementReport {
             notes.push(format!("the signs hold for {condition}"));
         }
         for factor in &closed.unproved_signs {
-            let factor = factor.text();
-            notes.push(format!(
-                "the sign of {factor} is not known: abs stays; if it is positive, add `assume {factor} > 0`"
-            ));
+            let text = factor.text();
+            notes.push(if factor.has_variables() {
+                format!("abs({text}) stays: its sign changes on the region, or could not be proved constant")
+            } else {
+                format!("abs({text}) stays: if it is positive, add `assume {text} > 0`")
+            });
         }
         if !plain.is_empty() {
-            notes.push(format!("no closed form was found within the allowance of steps for: {}", plain.join(", ")));
-        }
-        if !closed.failed.is_empty() {
-            notes.push("a form that was found failed its proof and is not shown; please report this sheet".to_owned());
+            let names = plain.join(", ");
+            notes.push(if closed.failed.is_empty() {
+                format!("no closed form within the allowance of steps for {names}: shown as derived")
+            } else {
+                format!("no form that could be proved equal for {names}: shown as derived")
+            });
         }
         Self { patch: patch.name.clone(), forms, operations, facts: closed.facts, notes }
     }

@@ -23,6 +23,17 @@ use crate::language::{Model, Patch};
 use dashu_int::IBig;
 use std::collections::BTreeMap;
 
+/// What became of a form.
+#[derive(Clone, Copy, PartialEq, Eq, Debug)]
+pub(super) enum Proof {
+    /// Proved equal.
+    Equal,
+    /// The difference did not reduce to zero.
+    Failed,
+    /// The allowance of steps ran out.
+    Open,
+}
+
 /// What a proof starts from.
 pub(super) struct Certificate<'a> {
     model: &'a Model,
@@ -36,8 +47,8 @@ impl<'a> Certificate<'a> {
         Self { model, patch, formulas, graph: graph.clone() }
     }
 
-    /// The quantities whose forms are proved.
-    pub fn check(mut self, forms: &BTreeMap<Quantity, Form>) -> Step<Vec<Quantity>> {
+    /// What became of each form.
+    pub fn check(mut self, forms: &BTreeMap<Quantity, Form>) -> BTreeMap<Quantity, Proof> {
         let names = self.names();
         let mut texts: Vec<(Quantity, ExpressionId)> = Vec::new();
         for (quantity, form) in forms {
@@ -45,20 +56,25 @@ impl<'a> Certificate<'a> {
                 texts.push((*quantity, formula));
             }
         }
-        let mut proved = Vec::new();
+        let mut proofs: BTreeMap<Quantity, Proof> = forms.keys().map(|&quantity| (quantity, Proof::Open)).collect();
         for manner in [Arguments::Split, Arguments::Whole, Arguments::Written] {
-            let open: Vec<_> = texts.iter().filter(|(quantity, _)| !proved.contains(quantity)).copied().collect();
-            if open.is_empty() {
+            let open = |quantity: &Quantity| proofs[quantity] != Proof::Equal;
+            if !texts.iter().any(|(quantity, _)| open(quantity)) {
                 break;
             }
-            // The element is needed for the others.
-            let with_element: Vec<_> =
-                texts.iter().filter(|text| open.contains(text) || text.0 == Quantity::Element).copied().collect();
-            if let Ok(found) = self.check_in(manner, &with_element) {
-                proved.extend(found.into_iter().filter(|quantity| open.iter().any(|(own, _)| own == quantity)));
+            // The others need the element.
+            let left: Vec<_> =
+                texts.iter().filter(|(own, _)| open(own) || *own == Quantity::Element).copied().collect();
+            for (quantity, equal) in self.check_in(manner, &left).unwrap_or_default() {
+                let proof = proofs.get_mut(&quantity).expect("only what was asked for");
+                if equal {
+                    *proof = Proof::Equal;
+                } else if *proof == Proof::Open {
+                    *proof = Proof::Failed;
+                }
             }
         }
-        Ok(proved)
+        proofs
     }
 
     /// Symbols by name: a variable hides a parameter, as in the sheet.
@@ -68,7 +84,7 @@ impl<'a> Certificate<'a> {
         variables.chain(parameters).collect()
     }
 
-    fn check_in(&self, manner: Arguments, texts: &[(Quantity, ExpressionId)]) -> Step<Vec<Quantity>> {
+    fn check_in(&self, manner: Arguments, texts: &[(Quantity, ExpressionId)]) -> Step<Vec<(Quantity, bool)>> {
         let mut roots: Vec<ExpressionId> = texts.iter().map(|(_, formula)| *formula).collect();
         roots.extend(self.formulas.tangents.iter().chain(&self.formulas.second).flatten());
         roots.extend(region::formulas(self.model, self.patch));
@@ -101,13 +117,13 @@ impl<'a> Certificate<'a> {
         let ring = &reader.ring;
         let proof = Definitions::new(ring, u, v, second, self.patch.orientation < 0)?;
         let element = values.get(&Quantity::Element).cloned();
-        let mut proved = Vec::new();
+        let mut results = Vec::new();
         for (quantity, value) in &values {
-            if let Ok(true) = proof.holds(ring, *quantity, value, element.as_ref()) {
-                proved.push(*quantity);
+            if let Ok(equal) = proof.holds(ring, *quantity, value, element.as_ref()) {
+                results.push((*quantity, equal));
             }
         }
-        Ok(proved)
+        Ok(results)
     }
 }
 

@@ -222,8 +222,8 @@ impl<'a> Elements<'a> {
         }
         let mut root = product.root;
         let outside = self.ring().cancelled(value)?;
-        let outside = self.without_roots(outside, &mut root)?;
-        self.balanced(Rooted { outside, bars, root, below: Polynomial::one() })
+        let (outside, below) = self.without_roots(outside, &mut root)?;
+        self.balanced(Rooted { outside, bars, root, below })
     }
 
     /// Squares that show only in half angles: 1 - cos u = 2 sin(u/2)^2. With s = 2SC, c = C^2 - S^2, 1 = C^2 + S^2 a
@@ -282,51 +282,68 @@ impl<'a> Elements<'a> {
         ring.pair_of(argument, pair.hyperbolic)
     }
 
-    /// 1/q sqrt(P) = sqrt(P/radicand) for a root q whose radicand divides P.
-    fn without_roots(&self, mut outside: Fraction, root: &mut Polynomial) -> Step<Fraction> {
+    /// Roots below the bar go under the common one: 1/q sqrt(P) = sqrt(P/radicand).
+    fn without_roots(&self, mut outside: Fraction, root: &mut Polynomial) -> Step<(Fraction, Polynomial)> {
+        let mut below = Polynomial::one();
         for (place, kind) in self.ring().generators.iter().enumerate() {
             let Kind::Root(2, radicand) = kind else { continue };
             let generator = Polynomial::generator(place);
             let Some(at) = outside.denominator.iter().position(|(factor, _)| *factor == generator) else { continue };
-            if let Some(quotient) = self.ring().quotient(root, radicand)? {
-                *root = quotient;
-                outside.denominator[at].1 -= 1;
-                outside.denominator.retain(|(_, exponent)| *exponent > 0);
+            match self.ring().quotient(root, radicand)? {
+                Some(quotient) => *root = quotient,
+                None => below = below.times(radicand)?,
             }
+            outside.denominator[at].1 -= 1;
+            outside.denominator.retain(|(_, exponent)| *exponent > 0);
         }
-        Ok(outside)
+        Ok((outside, below))
     }
 
-    /// sqrt(f)/f = 1/sqrt(f) and f/sqrt(f) = sqrt(f) for the factors under the root.
+    /// sqrt(f g)/f = sqrt(g/f) and f sqrt(g/f) = sqrt(f g) for factors of known sign under the root.
     fn balanced(&self, mut value: Rooted) -> Step<Rooted> {
         if !value.root.is_one() {
             for (factor, _) in self.ring().factored(&value.root)?.factors {
-                // A factor with a proved sign stands below the bar as the one that is not negative.
                 let below = &value.outside.denominator;
-                let place = below.iter().position(|(known, _)| *known == factor || *known == factor.negated());
-                if let Some(place) = place
-                    && let factor = below[place].0.clone()
-                    && let Some(rest) = self.ring().quotient(&value.root, &factor)?
-                {
+                let Some(place) = below.iter().position(|(known, _)| *known == factor || *known == factor.negated())
+                else {
+                    continue;
+                };
+                let Some((positive, turned)) = self.oriented(&value.outside.denominator[place].0.clone())? else {
+                    continue;
+                };
+                if let Some(rest) = self.ring().quotient(&value.root, &positive)? {
                     value.outside.denominator[place].1 -= 1;
+                    value.outside.denominator.retain(|(_, exponent)| *exponent > 0);
                     value.root = rest;
-                    value.below = value.below.times(&factor)?;
+                    value.below = value.below.times(&positive)?;
+                    if turned {
+                        value.outside = value.outside.negated();
+                    }
                 }
             }
-            value.outside.denominator.retain(|(_, exponent)| *exponent > 0);
         }
         if !value.below.is_one() && !value.outside.is_zero() {
             for (factor, _) in self.ring().factored(&value.below)?.factors {
-                if let Some(numerator) = self.ring().quotient(&value.outside.numerator, &factor)?
-                    && let Some(rest) = self.ring().quotient(&value.below, &factor)?
+                let Some((positive, _)) = self.oriented(&factor)? else { continue };
+                if let Some(numerator) = self.ring().quotient(&value.outside.numerator, &positive)?
+                    && let Some(rest) = self.ring().quotient(&value.below, &positive)?
                 {
                     value.outside.numerator = numerator;
                     value.below = rest;
-                    value.root = value.root.times(&factor)?;
+                    value.root = value.root.times(&positive)?;
                 }
             }
         }
         Ok(value)
+    }
+
+    /// The polynomial or its negative, whichever is proved not to be negative, and whether it was turned.
+    fn oriented(&self, polynomial: &Polynomial) -> Step<Option<(Polynomial, bool)>> {
+        Ok(match sign(self.ring(), self.reader.graph, &self.ranges, polynomial) {
+            Some(1) => Some((polynomial.clone(), false)),
+            Some(_) => Some((polynomial.negated(), true)),
+            None => None,
+        })
     }
 
     /// A polynomial as squares outside and a square-free rest under the root, in the ways that look shortest.
@@ -406,10 +423,11 @@ impl Elements<'_> {
             values.push((Quantity::Normal(axis), over(self, &component)?));
         }
         let [l, m, n] = self.second()?;
-        let ring = self.ring();
         for (quantity, value) in [(Quantity::L, &l), (Quantity::M, &m), (Quantity::N2, &n)] {
-            values.push((quantity, over(self, &ring.multiply(value, &self.content)?)?));
+            let value = self.ring().multiply(value, &self.content)?;
+            values.push((quantity, over(self, &value)?));
         }
+        let ring = self.ring();
         let root = ring.multiply(&self.content, &Fraction::whole(self.square.clone()))?;
         let top = ring.subtract(&ring.multiply(&l, &n)?, &ring.multiply(&m, &m)?)?;
         let gauss = ring.divide(&top, &ring.multiply(&root, &root)?)?.ok_or(Exhausted)?;

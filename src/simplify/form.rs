@@ -79,6 +79,20 @@ impl Form {
         }
     }
 
+    /// Whether a variable of the patch occurs.
+    pub fn has_variables(&self) -> bool {
+        match self {
+            Form::Number(_) | Form::Pi => false,
+            Form::Name(_, kind) => *kind == NameKind::Variable,
+            Form::Call(_, arguments) => arguments.iter().any(Form::has_variables),
+            Form::Sum(terms) => terms.iter().any(|(_, term)| term.has_variables()),
+            Form::Product(above, below) => above.iter().chain(below).any(Form::has_variables),
+            Form::Power(base, exponent) => base.has_variables() || exponent.has_variables(),
+            Form::Negate(inner) | Form::Not(inner) => inner.has_variables(),
+            Form::Relation(_, left, right) => left.has_variables() || right.has_variables(),
+        }
+    }
+
     /// The number of sums in the form.
     pub(super) fn sums(&self) -> usize {
         match self {

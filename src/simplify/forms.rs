@@ -1,6 +1,6 @@
 //! All closed forms of a patch: derived, written, proved.
 
-use super::certificate::Certificate;
+use super::certificate::{Certificate, Proof};
 use super::closed::{Elements, Formulas, Rooted};
 use super::facts::{Fact, facts};
 use super::form::Form;
@@ -83,15 +83,25 @@ pub fn closed_forms(model: &Model, patch: PatchId) -> ClosedForms {
         if let Err(Exhausted) = write_all(&mut elements, &mut found) {
             best.cut_short.push(Quantity::Element);
         }
-        let proof = with_allowance(PROVING, || Certificate::new(model, patch, &formulas, &graph).check(&found.forms));
-        let proved = proof.unwrap_or_default();
-        found.failed = found.forms.keys().filter(|quantity| !proved.contains(quantity)).copied().collect();
-        found.forms.retain(|quantity, _| proved.contains(quantity));
+        let certificate = Certificate::new(model, patch, &formulas, &graph);
+        let proofs = with_allowance(PROVING, || certificate.check(&found.forms));
+        found.forms.retain(|quantity, _| proofs[quantity] == Proof::Equal);
+        for (quantity, proof) in proofs {
+            match proof {
+                Proof::Equal => {}
+                Proof::Failed => found.failed.push(quantity),
+                Proof::Open => found.cut_short.push(quantity),
+            }
+        }
         found.facts = with_allowance(READING, || facts(&mut elements)).unwrap_or_default();
         found.conditions = elements.conditions.clone();
         merge(&mut best, found);
     }
-    best.cut_short.retain(|quantity| !best.forms.contains_key(quantity));
+    for list in [&mut best.cut_short, &mut best.failed] {
+        list.retain(|quantity| !best.forms.contains_key(quantity));
+        list.sort();
+        list.dedup();
+    }
     best
 }
 
@@ -108,7 +118,8 @@ fn merge(best: &mut ClosedForms, found: ClosedForms) {
             }
         }
     }
-    best.failed.extend(found.failed.into_iter().filter(|quantity| !best.forms.contains_key(quantity)));
+    best.failed.extend(found.failed);
+    best.cut_short.extend(found.cut_short);
     for fact in found.facts {
         if !best.facts.contains(&fact) {
             best.facts.push(fact);
