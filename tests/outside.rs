@@ -214,3 +214,16 @@ fn undefined_and_divergent_integrals_are_refused() {
     let error = failure("s(u, v) = (u, v, 0) on u in [0, 1], v in [0, 1]\na = integral(1/v^2, s)");
     assert_eq!(error.code, "divergent");
 }
+
+/// Ribs whose number is a multiple of two node counts of the trapezoid rule (253 = 11*23, 1081 = 23*47) must not look
+/// constant. The mean of exp(cos x) over a period is the modified Bessel function I0(1), Abramowitz & Stegun 9.6.16; its
+/// value from mpmath 1.3, besseli(0, 1).
+#[test]
+fn ribs_that_fall_between_the_nodes() {
+    for ribs in [23, 253, 506, 759, 1081] {
+        let plate = format!("s(u, v) = (u, v, 0*u) on u in [0, 1], v in [0, 1]\na = integral(exp(cos(2*pi*{ribs}*x)), s)");
+        holds(&plate, &[1.266_065_877_752_008_4]);
+        let checks = format!("s(u, v) = (u, v, 0*u) on u in [0, 1], v in [0, 1]\na = integral(cos(2*pi*{ribs}*x)^2, s)");
+        holds(&checks, &[0.5]);
+    }
+}

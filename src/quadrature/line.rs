@@ -10,7 +10,7 @@
 //! frequency only at multiples of their product.
 
 use super::map::{MAXIMUM_ORDER, Map, Segment};
-use super::rules::{KRONROD_NODES, TRAPEZOID_NODES, kronrod};
+use super::rules::{KRONROD_NODES, TRAPEZOID_NODES, kronrod, trapezoid_shift};
 
 /// Values of a vector-valued function at a batch of points, component-major: `values[k * count + i]`.
 #[derive(Clone, Debug, Default)]
@@ -419,9 +419,10 @@ pub(super) fn integrate_period(
     let width = segment.to - segment.from;
     let mut last: Option<Vec<f64>> = None;
     let mut last_differences: Option<Vec<f64>> = None;
-    for nodes in TRAPEZOID_NODES {
+    for (level, nodes) in TRAPEZOID_NODES.into_iter().enumerate() {
         let step = width / nodes as f64;
-        let x: Vec<f64> = (0..nodes).map(|i| segment.from + width * ((i as f64 + 0.5) / nodes as f64)).collect();
+        let shift = trapezoid_shift(level);
+        let x: Vec<f64> = (0..nodes).map(|i| segment.from + width * ((i as f64 + shift) / nodes as f64)).collect();
         let samples = finite_samples(line, &x, &vec![1e-7 * step; nodes])?;
         *evaluations += samples.evaluations;
         let sum = |part: &dyn Fn(usize) -> f64| step * compensated((0..nodes).map(part));

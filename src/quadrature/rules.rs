@@ -84,9 +84,17 @@ pub(super) fn kronrod() -> [(f64, f64, f64); KRONROD_NODES] {
     rule
 }
 
-/// Node counts of the trapezoid rule on a period. They are primes, so that no two of them alias the same ribs: the
-/// first frequency that two neighbours both miss is their product.
+/// Node counts of the trapezoid rule on a period. They are primes, so that two neighbours alias only the multiples of
+/// their product; [`trapezoid_shift`] tells those apart.
 pub(super) const TRAPEZOID_NODES: [usize; 8] = [11, 23, 47, 97, 197, 397, 797, 1597];
+
+/// Where the first node of a level lies within the first step: golden-ratio multiples, different for each level. A
+/// frequency that is a multiple of both node counts (253 = 11*23) would look constant to both rules; it has another
+/// phase on the shifted nodes of each, so the two sums differ.
+pub(super) fn trapezoid_shift(level: usize) -> f64 {
+    const GOLDEN: f64 = 0.618_033_988_749_894_9;
+    ((level + 1) as f64 * GOLDEN).fract()
+}
 
 #[cfg(test)]
 mod tests {

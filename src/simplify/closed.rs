@@ -220,10 +220,18 @@ impl<'a> Elements<'a> {
                 None => bars.push((factor.clone(), *exponent)),
             }
         }
-        let mut root = product.root;
-        let outside = self.ring().cancelled(value)?;
-        let (outside, below) = self.without_roots(outside, &mut root)?;
-        self.balanced(Rooted { outside, bars, root, below })
+        let mut outside = self.ring().cancelled(value)?;
+        let mut below = Polynomial::one();
+        for (place, kind) in self.ring().generators.iter().enumerate() {
+            let Kind::Root(2, radicand) = kind else { continue };
+            let generator = Polynomial::generator(place);
+            if let Some(at) = outside.denominator.iter().position(|(factor, _)| *factor == generator) {
+                outside.denominator[at].1 -= 1;
+                outside.denominator.retain(|(_, exponent)| *exponent > 0);
+                below = below.times(radicand)?;
+            }
+        }
+        self.balanced(Rooted { outside, bars, root: product.root, below })
     }
 
     /// Squares that show only in half angles: 1 - cos u = 2 sin(u/2)^2. With s = 2SC, c = C^2 - S^2, 1 = C^2 + S^2 a
@@ -282,25 +290,32 @@ impl<'a> Elements<'a> {
         ring.pair_of(argument, pair.hyperbolic)
     }
 
-    /// Roots below the bar go under the common one: 1/q sqrt(P) = sqrt(P/radicand).
-    fn without_roots(&self, mut outside: Fraction, root: &mut Polynomial) -> Step<(Fraction, Polynomial)> {
-        let mut below = Polynomial::one();
-        for (place, kind) in self.ring().generators.iter().enumerate() {
-            let Kind::Root(2, radicand) = kind else { continue };
-            let generator = Polynomial::generator(place);
-            let Some(at) = outside.denominator.iter().position(|(factor, _)| *factor == generator) else { continue };
-            match self.ring().quotient(root, radicand)? {
-                Some(quotient) => *root = quotient,
-                None => below = below.times(radicand)?,
-            }
-            outside.denominator[at].1 -= 1;
-            outside.denominator.retain(|(_, exponent)| *exponent > 0);
-        }
-        Ok((outside, below))
-    }
-
     /// sqrt(f g)/f = sqrt(g/f) and f sqrt(g/f) = sqrt(f g) for factors of known sign under the root.
     fn balanced(&self, mut value: Rooted) -> Step<Rooted> {
+        // Roots of the ring meet the common root.
+        if !value.below.is_one() || !value.root.is_one() {
+            for (place, kind) in self.ring().generators.iter().enumerate() {
+                let Kind::Root(2, radicand) = kind else { continue };
+                let generator = Polynomial::generator(place);
+                if let Some(numerator) = value.outside.numerator.divided_by(&generator)? {
+                    value.outside.numerator = numerator;
+                    value.root = value.root.times(radicand)?;
+                }
+                let denominator = &mut value.outside.denominator;
+                if let Some(at) = denominator.iter().position(|(factor, _)| *factor == generator) {
+                    denominator[at].1 -= 1;
+                    denominator.retain(|(_, exponent)| *exponent > 0);
+                    value.below = value.below.times(radicand)?;
+                }
+            }
+            for (factor, _) in self.ring().factored(&value.root)?.factors {
+                if let (Some(root), Some(below)) =
+                    (self.ring().quotient(&value.root, &factor)?, self.ring().quotient(&value.below, &factor)?)
+                {
+                    (value.root, value.below) = (root, below);
+                }
+            }
+        }
         if !value.root.is_one() {
             for (factor, _) in self.ring().factored(&value.root)?.factors {
                 let below = &value.outside.denominator;
