@@ -18,6 +18,8 @@ pub struct ElementReport {
     pub forms: Vec<(&'static str, Vec<String>)>,
     /// Operations of dA on the fully written form: each operator, minus sign and call counts 1.
     pub operations: u64,
+    /// The exact area, where it was found and proved.
+    pub area: Option<String>,
     /// What is proved of the patch.
     pub facts: Vec<Fact>,
     /// Remarks on how the forms are to be read.
@@ -79,6 +81,7 @@ impl ElementReport {
             forms.push((name, vec![shown(name, Some(quantity), raw).0]));
         }
 
+        let area = closed.area.as_ref().map(|form| form.text());
         let mut notes = Vec::new();
         for condition in &closed.conditions {
             notes.push(format!("the signs hold for {condition}"));
@@ -99,7 +102,7 @@ impl ElementReport {
                 format!("no form that could be proved equal for {names}: shown as derived")
             });
         }
-        Self { patch: patch.name.clone(), forms, operations, facts: closed.facts, notes }
+        Self { patch: patch.name.clone(), forms, operations, area, facts: closed.facts, notes }
     }
 }
 
@@ -144,6 +147,9 @@ pub fn element_text(report: &ElementReport) -> String {
     text += &format!("operations of dA = {}\n", report.operations);
     let facts: Vec<String> = report.facts.iter().map(Fact::to_string).collect();
     text += &format!("facts = {}\n", if facts.is_empty() { "none".to_owned() } else { facts.join(", ") });
+    if let Some(area) = &report.area {
+        text += &format!("area = {area}\n");
+    }
     for note in &report.notes {
         text += &format!("note: {note}\n");
     }
@@ -166,6 +172,7 @@ pub fn element_json(report: &ElementReport) -> Value {
         }
     }
     object.insert("facts".into(), json!(report.facts.iter().map(Fact::to_string).collect::<Vec<_>>()));
+    object.insert("area".into(), json!(report.area));
     object.insert("notes".into(), json!(report.notes));
     Value::Object(object)
 }

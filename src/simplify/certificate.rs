@@ -78,7 +78,7 @@ impl<'a> Certificate<'a> {
     }
 
     /// Symbols by name: a variable hides a parameter, as in the sheet.
-    fn names(&self) -> Vec<(String, SymbolId)> {
+    pub fn names(&self) -> Vec<(String, SymbolId)> {
         let variables = self.patch.variables.iter().map(|&symbol| (self.graph.symbol_name(symbol).to_owned(), symbol));
         let parameters = self.model.parameters.iter().map(|parameter| (parameter.name.clone(), parameter.symbol));
         variables.chain(parameters).collect()

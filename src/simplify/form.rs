@@ -242,11 +242,7 @@ impl Form {
                     a => Form::Product(vec![a], vec![get(b)]),
                 },
                 Node::Power(a, b) => Form::Power(Box::new(get(a)), Box::new(get(b))),
-                Node::Call(function, a) => {
-                    let (name, order) = call_name(function);
-                    let order = order.map(|order| Form::integer(u64::from(order)));
-                    Form::Call(name, order.into_iter().chain([get(a)]).collect())
-                }
+                Node::Call(function, a) => Form::function(function, get(a)),
                 Node::Call2(function, a, b) => Form::Call(binary_name(function).to_owned(), vec![get(a), get(b)]),
                 Node::Truth(truth) => {
                     let (small, large) = (Form::integer(0), Form::integer(1));
@@ -268,6 +264,13 @@ impl Form {
             forms.insert(id, (form, size));
         }
         forms.remove(&root).map(|(form, _)| form).filter(|form| form.operations() <= limit)
+    }
+
+    /// A function of one argument; the order of a family comes first.
+    pub(super) fn function(function: Function, argument: Form) -> Self {
+        let (name, order) = call_name(function);
+        let order = order.map(|order| Form::integer(u64::from(order)));
+        Form::Call(name, order.into_iter().chain([argument]).collect())
     }
 
     /// An exact number; a negative one is a negated form.

@@ -6,6 +6,7 @@ use super::facts::{Fact, facts};
 use super::form::Form;
 use super::meter::{Exhausted, Step, with_allowance};
 use super::plan::Printer;
+use super::total::Total;
 use crate::language::{Model, PatchId};
 use std::collections::BTreeMap;
 
@@ -17,6 +18,9 @@ const WRITING: u64 = 6_000_000;
 
 /// Steps for proving all formulas.
 const PROVING: u64 = 60_000_000;
+
+/// Steps for the exact area.
+const INTEGRATING: u64 = 10_000_000;
 
 /// The most sums that the search for the shortest form of one formula explores.
 const NODES: usize = 600;
@@ -55,6 +59,8 @@ pub enum Quantity {
 pub struct ClosedForms {
     /// The forms. Each was read back from its text and proved equal to what it stands for.
     pub forms: BTreeMap<Quantity, Form>,
+    /// The exact area over the region.
+    pub area: Option<Form>,
     /// What is proved of the patch.
     pub facts: Vec<Fact>,
     /// Conditions on the parameters, beyond those of the sheet, under which the signs in the forms were proved.
@@ -96,6 +102,11 @@ pub fn closed_forms(model: &Model, patch: PatchId) -> ClosedForms {
         found.facts = with_allowance(READING, || facts(&mut elements)).unwrap_or_default();
         found.conditions = elements.conditions.clone();
         merge(&mut best, found);
+    }
+    if let Some(element) = best.forms.get(&Quantity::Element) {
+        let names = Certificate::new(model, patch, &formulas, &graph).names();
+        let mut total = Total { model, patch, graph: graph.clone(), names };
+        best.area = with_allowance(INTEGRATING, || total.area(element));
     }
     for list in [&mut best.cut_short, &mut best.failed] {
         list.retain(|quantity| !best.forms.contains_key(quantity));

@@ -5,12 +5,10 @@
 
 use super::fraction::Fraction;
 use super::meter::Step;
-use super::plan::Printer;
 use super::polynomial::{Monomial, Polynomial};
-use super::read::Reader;
 use super::ring::{Kind, Ring};
 use super::sign::{Ranges, sign};
-use crate::expression::{ExpressionId, Function, Graph, SymbolId};
+use crate::expression::{Function, Graph, SymbolId};
 use dashu_int::IBig;
 
 /// Looks for antiderivatives of ring elements.

@@ -12,6 +12,7 @@ mod form;
 mod forms;
 mod fraction;
 mod gcd;
+mod integral;
 mod meter;
 mod parse_back;
 mod plan;
@@ -21,6 +22,7 @@ mod read;
 mod region;
 mod ring;
 mod sign;
+mod total;
 
 pub use form::{Form, NameKind};
 pub use forms::{ClosedForms, Quantity, closed_forms};

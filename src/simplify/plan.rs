@@ -152,6 +152,10 @@ impl<'a> Printer<'a> {
                     }
                 }
             }
+            Kind::Call(function, argument) => {
+                let argument = self.fraction(&argument)?;
+                Form::function(function, argument)
+            }
             Kind::Opaque(expression) => self.opaque(expression)?,
         };
         let form = match form {

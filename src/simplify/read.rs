@@ -273,8 +273,30 @@ impl<'a> Reader<'a> {
                 let square = self.ring.multiply(&inner, &inner)?;
                 self.root(&square, 2, sign)?.map_or_else(|| self.generator(Kind::Opaque(id)), Ok)
             }
-            _ => self.generator(Kind::Opaque(id)),
+            _ => {
+                let inner = self.get(argument, sign)?;
+                self.function(function, inner)
+            }
         }
+    }
+
+    /// A function that stands for itself; odd functions with the sign of the argument outside.
+    fn function(&mut self, function: Function, argument: Fraction) -> Step<Fraction> {
+        let odd = matches!(
+            function,
+            Function::Asin | Function::Atan | Function::Asinh | Function::Atanh | Function::Erf | Function::Sign
+        );
+        if odd && argument.is_zero() {
+            return Ok(Fraction::zero());
+        }
+        let one = Fraction::whole(Polynomial::one());
+        if matches!(function, Function::Log | Function::Acosh) && argument == one {
+            return Ok(Fraction::zero());
+        }
+        let turned = odd && argument.numerator.leading().is_negative();
+        let argument = if turned { argument.negated() } else { argument };
+        let value = self.generator(Kind::Call(function, Box::new(argument)))?;
+        Ok(if turned { value.negated() } else { value })
     }
 
     fn one_of(&self, is_sine: bool, is_cosine: bool, sine: Fraction, cosine: Fraction) -> Step<Fraction> {

@@ -8,7 +8,7 @@
 use super::fraction::Fraction;
 use super::meter::{Exhausted, Step};
 use super::polynomial::{GENERATORS, Polynomial};
-use crate::expression::{Exact, ExpressionId, Graph, SymbolId};
+use crate::expression::{Exact, ExpressionId, Function, Graph, SymbolId};
 use dashu_int::IBig;
 
 /// What a generator stands for.
@@ -27,7 +27,9 @@ pub(super) enum Kind {
     Exp(AngleId),
     /// The principal root of given index of a polynomial.
     Root(u8, Polynomial),
-    /// Any other function value.
+    /// Any other function of one argument.
+    Call(Function, Box<Fraction>),
+    /// Any other value.
     Opaque(ExpressionId),
 }
 
@@ -210,7 +212,7 @@ impl Ring {
                 let below = Fraction::whole(radicand.scaled(&IBig::from(*index))?);
                 return self.divide(&self.multiply(&slope, &whole(generator))?, &below);
             }
-            Kind::Opaque(_) => return Ok(None),
+            Kind::Call(..) | Kind::Opaque(_) => return Ok(None),
         };
         Ok(match self.derivative(&self.angles[angle.0], symbol, graph)? {
             Some(inner) => Some(self.multiply(&outer, &inner)?),
@@ -226,6 +228,9 @@ impl Ring {
             Kind::Pi | Kind::Literal(_) => false,
             Kind::Sin(angle) | Kind::Cos(angle) | Kind::Sinh(angle) | Kind::Cosh(angle) | Kind::Exp(angle) => {
                 let argument = &self.angles[angle.0];
+                in_polynomial(&argument.numerator) || argument.denominator.iter().any(|(p, _)| in_polynomial(p))
+            }
+            Kind::Call(_, argument) => {
                 in_polynomial(&argument.numerator) || argument.denominator.iter().any(|(p, _)| in_polynomial(p))
             }
             Kind::Root(_, radicand) => in_polynomial(radicand),

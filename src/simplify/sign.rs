@@ -56,14 +56,25 @@ impl Ranges {
 
 /// 1 if the polynomial is proved nonnegative, -1 if nonpositive.
 pub(super) fn sign(ring: &Ring, graph: &Graph, ranges: &Ranges, polynomial: &Polynomial) -> Option<i8> {
-    Prover { ring, graph, ranges }.sign(polynomial, HALVINGS).ok().flatten()
+    Prover { ring, graph, ranges, strict: false }.sign(polynomial, HALVINGS).ok().flatten()
+}
+
+/// Like [`sign`], and the polynomial is proved not to vanish inside the region.
+pub(super) fn strict_sign(ring: &Ring, graph: &Graph, ranges: &Ranges, polynomial: &Polynomial) -> Option<i8> {
+    Prover { ring, graph, ranges, strict: true }.sign(polynomial, 0).ok().flatten()
 }
 
 struct Prover<'a> {
     ring: &'a Ring,
     graph: &'a Graph,
     ranges: &'a Ranges,
+    /// Whether zeros inside the region must be excluded. Variables and parameters are inside their ranges for t > 0; the
+    /// boxes of functions are widened instead, because a function takes its extreme values inside.
+    strict: bool,
 }
+
+/// How much a strict proof widens boxes.
+const MARGIN: (i64, u64) = (1, 1_000);
 
 /// Pairs, by their sines, whose generators stand for the functions of twice the angle in a polynomial.
 type Doubled = Vec<usize>;
@@ -249,7 +260,7 @@ impl Prover<'_> {
             return Ok(Some(polynomial.clone()));
         }
         let even = polynomial.terms().iter().all(|(monomial, _)| monomial.0[generator] % 2 == 0);
-        if even && let Some(cover) = self.square_cover(generator, doubled)? {
+        if even && !self.strict && let Some(cover) = self.square_cover(generator, doubled)? {
             let halved = Polynomial::collect(polynomial.terms().iter().map(|(monomial, x)| {
                 let mut half = *monomial;
                 half.0[generator] /= 2;
@@ -290,10 +301,13 @@ impl Prover<'_> {
                 let (lower, upper) = self.circular_box(*angle, generator, doubled);
                 between(&lower, &upper, &t)
             }
+            Kind::Cosh(_) if self.strict => whole(t.plus(&Polynomial::one()).scaled(&IBig::from(2))?.minus(&Polynomial::one())),
             Kind::Cosh(_) => whole(t.plus(&Polynomial::one())),
             Kind::Sinh(angle) => {
                 let (lower, upper) = self.numeric(&self.ring.angles[angle.0], 4);
-                if lower >= 0.0 {
+                if self.strict && lower <= 0.0 && upper >= 0.0 {
+                    Ok(None)
+                } else if lower >= 0.0 {
                     whole(t)
                 } else if upper <= 0.0 {
                     whole(t.negated())
@@ -302,8 +316,14 @@ impl Prover<'_> {
                 }
             }
             Kind::Exp(_) => whole(t),
-            Kind::Root(index, _) if index % 2 == 0 => whole(t),
-            Kind::Root(..) | Kind::Opaque(_) => {
+            Kind::Root(index, radicand) if index % 2 == 0 => {
+                // A root vanishes only with its radicand.
+                if self.strict && !radicand.is_constant() && self.sign(radicand, 0)? != Some(1) {
+                    return Ok(None);
+                }
+                whole(t)
+            }
+            Kind::Root(..) | Kind::Call(..) | Kind::Opaque(_) => {
                 let (lower, upper) = self.numeric_generator(generator, 4);
                 if lower >= 0.0 {
                     whole(t)
@@ -328,7 +348,7 @@ impl Prover<'_> {
                 between(&least, &a.max(b), &t)
             }
             Kind::Sinh(_) => Ok(Some(Cover { numerator: t, denominator: Polynomial::one() })),
-            Kind::Opaque(_) | Kind::Root(..) => Ok(Some(Cover { numerator: t, denominator: Polynomial::one() })),
+            Kind::Opaque(_) | Kind::Call(..) | Kind::Root(..) => Ok(Some(Cover { numerator: t, denominator: Polynomial::one() })),
             Kind::Symbol(_) => match self.ranges.of(generator) {
                 // Symmetric limits: the square runs from 0 to the square of the end.
                 Some(range) => match (&range.lower[..], &range.upper[..]) {
@@ -389,6 +409,15 @@ impl Prover<'_> {
 
     /// A box for the sine or cosine that a generator stands for.
     fn circular_box(&self, angle: AngleId, generator: usize, doubled: &Doubled) -> (RBig, RBig) {
+        let (lower, upper) = self.exact_box(angle, generator, doubled);
+        if !self.strict {
+            return (lower, upper);
+        }
+        let margin = RBig::from_parts(MARGIN.0.into(), MARGIN.1.into());
+        (lower - &margin, upper + margin)
+    }
+
+    fn exact_box(&self, angle: AngleId, generator: usize, doubled: &Doubled) -> (RBig, RBig) {
         let sine = matches!(self.ring.generators[generator], Kind::Sin(_));
         let twice = doubled.contains(&if sine { generator } else { generator - 1 });
         let factor = if twice { 2u8 } else { 1 };
@@ -507,10 +536,15 @@ impl Prover<'_> {
                 widened((lower.max(0.0).sqrt(), upper.max(0.0).sqrt()))
             }
             Kind::Root(..) => anything,
+            Kind::Call(function, _) => match function {
+                Function::Asin | Function::Atan => (-PI / 2.0 - 1e-15, PI / 2.0 + 1e-15),
+                Function::Acos => (0.0, PI + 1e-15),
+                Function::Acosh | Function::Erfc => (0.0, f64::INFINITY),
+                Function::Sign | Function::Erf => (-1.0, 1.0),
+                _ => anything,
+            },
             Kind::Opaque(expression) => match self.graph.node(*expression) {
-                Node::Call(Function::Asin | Function::Atan, _) => (-PI / 2.0 - 1e-15, PI / 2.0 + 1e-15),
-                Node::Call(Function::Acos, _) => (0.0, PI + 1e-15),
-                Node::Call(Function::Acosh | Function::Abs | Function::Erfc | Function::Sqrt, _) => (0.0, f64::INFINITY),
+                Node::Call(Function::Abs | Function::Sqrt, _) => (0.0, f64::INFINITY),
                 _ => anything,
             },
             Kind::Symbol(_) => match self.ranges.of(generator) {
