@@ -14,7 +14,7 @@ use super::fraction::Fraction;
 use super::meter::{Exhausted, Step};
 use super::parse_back::parse_back;
 use super::polynomial::Polynomial;
-use super::read::{Arguments, Reader};
+use super::read::{Arguments, Purpose, Reader};
 use super::region;
 use super::ring::Ring;
 use super::sign::sign;
@@ -88,7 +88,7 @@ impl<'a> Certificate<'a> {
         let mut roots: Vec<ExpressionId> = texts.iter().map(|(_, formula)| *formula).collect();
         roots.extend(self.formulas.tangents.iter().chain(&self.formulas.second).flatten());
         roots.extend(region::formulas(self.model, self.patch));
-        let mut reader = Reader::new(&self.graph, &roots, manner)?;
+        let mut reader = Reader::new(&self.graph, &roots, manner, Purpose::Proving)?;
         let ranges = region::read(&mut reader, self.model, self.patch);
         let prove = |ring: &Ring, polynomial: &Polynomial| sign(ring, &self.graph, &ranges, polynomial);
         let mut vector = |formulas: &[ExpressionId; 3]| -> Step<[Fraction; 3]> {

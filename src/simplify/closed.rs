@@ -16,7 +16,7 @@ use super::meter::{Exhausted, Step};
 use super::plan::{Laurent, Printer, single_generator};
 use super::polynomial::{GENERATORS, Polynomial};
 use super::product::{Exponent, flipped, is_negative, product, ratio};
-use super::read::{Arguments, Reader};
+use super::read::{Arguments, Purpose, Reader};
 use super::region::{self, guesses};
 use super::ring::{Directions, Kind, Pair, Ring};
 use super::sign::{Ranges, sign};
@@ -97,7 +97,7 @@ impl<'a> Elements<'a> {
     ) -> Step<Self> {
         let mut roots = formulas.roots();
         roots.extend(region::formulas(model, patch));
-        let mut reader = Reader::new(graph, &roots, arguments)?;
+        let mut reader = Reader::new(graph, &roots, arguments, Purpose::Printing)?;
         let ranges = region::read(&mut reader, model, patch);
         let prove = |ring: &Ring, polynomial: &Polynomial| sign(ring, graph, &ranges, polynomial);
         let mut tangents = [(); 2].map(|()| [(); 3].map(|()| Fraction::zero()));

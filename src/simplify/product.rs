@@ -223,6 +223,7 @@ pub(super) fn sum(terms: Vec<(bool, Form)>) -> Form {
             other => flat.push((negative, other)),
         }
     }
+    join_integers(&mut flat);
     flat.sort_by_key(|(_, term)| weight(term));
     if let Some(first) = flat.iter().position(|(negative, _)| !negative) {
         let leader = flat.remove(first);
@@ -235,6 +236,24 @@ pub(super) fn sum(terms: Vec<(bool, Form)>) -> Form {
             if negative { Form::Negate(Box::new(term)) } else { term }
         }
         _ => Form::Sum(flat),
+    }
+}
+
+/// Several whole numbers as one.
+fn join_integers(terms: &mut Vec<(bool, Form)>) {
+    let integer = |(negative, term): &(bool, Form)| match term {
+        Form::Number(text) => text.parse::<i64>().ok().map(|value| if *negative { -value } else { value }),
+        _ => None,
+    };
+    let values: Vec<i64> = terms.iter().filter_map(integer).collect();
+    let total = values.iter().try_fold(0i64, |sum, &value| sum.checked_add(value));
+    if values.len() < 2 || total.is_none() {
+        return;
+    }
+    terms.retain(|term| integer(term).is_none());
+    match total {
+        Some(0) | None => {}
+        Some(total) => terms.push((total < 0, Form::integer(total.unsigned_abs()))),
     }
 }
 

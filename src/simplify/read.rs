@@ -48,11 +48,23 @@ enum Family {
 /// Decides the sign of a polynomial on the region: 1 for nonnegative, -1 for nonpositive.
 pub(super) type SignOf<'a> = &'a dyn Fn(&Ring, &Polynomial) -> Option<i8>;
 
+/// What a reading is for.
+#[derive(Clone, Copy, PartialEq, Eq, Debug)]
+pub(super) enum Purpose {
+    /// Long numbers of the sheet act as named constants, so that they are printed as typed.
+    Printing,
+    /// The same, and a root stays whole where its factors could have roots of their own.
+    Integrating,
+    /// All numbers are numbers: what is equal is found equal.
+    Proving,
+}
+
 /// Reads formulas into one ring.
 pub(super) struct Reader<'a> {
     pub graph: &'a Graph,
     pub ring: Ring,
     arguments: Arguments,
+    purpose: Purpose,
     known: FxHashMap<ExpressionId, Fraction>,
     units: FxHashMap<(Family, Linear), RBig>,
     /// Bases that occur in an exponential: hyperbolic functions of them are written in exponentials.
@@ -62,11 +74,12 @@ pub(super) struct Reader<'a> {
 
 impl<'a> Reader<'a> {
     /// A reader for formulas: `roots` must contain whatever is read later, since they fix the units of the bases.
-    pub fn new(graph: &'a Graph, roots: &[ExpressionId], arguments: Arguments) -> Step<Self> {
+    pub fn new(graph: &'a Graph, roots: &[ExpressionId], arguments: Arguments, purpose: Purpose) -> Step<Self> {
         let mut reader = Self {
             graph,
             ring: Ring::default(),
             arguments,
+            purpose,
             known: FxHashMap::default(),
             units: FxHashMap::default(),
             exponential: Vec::new(),
@@ -221,6 +234,9 @@ impl<'a> Reader<'a> {
 
     /// A small number as it is, any other one as a named constant.
     fn number(&mut self, value: &Exact) -> Step<Fraction> {
+        if self.purpose == Purpose::Proving {
+            return Ok(rational(value.as_rational()));
+        }
         let small = value.to_fraction().filter(|&(p, q)| is_small(p, q));
         match small {
             Some((p, q)) => Ok(Fraction { divisor: IBig::from(q), ..Fraction::whole(Polynomial::integer(p)) }),
@@ -487,6 +503,7 @@ impl<'a> Reader<'a> {
         };
         let (whole, inside) = split_square(&factored.unit.clone().abs());
         let mut outside = Polynomial::constant(whole);
+        let split = self.purpose != Purpose::Integrating;
         // Roots of what is known not to be negative stand alone, so that sqrt(6) and sqrt(2) sqrt(3) meet.
         let mut roots: Vec<Polynomial> = primes(&inside).into_iter().map(Polynomial::constant).collect();
         let mut rest = if factored.unit.is_negative() { Polynomial::integer(-1) } else { Polynomial::one() };
@@ -502,8 +519,8 @@ impl<'a> Reader<'a> {
                 outside = outside.negated();
             }
             match proved {
-                Some(1) if left == 1 => roots.push(self.ring.canonical(factor)?),
-                Some(-1) if left == 1 => {
+                Some(1) if left == 1 && split => roots.push(self.ring.canonical(factor)?),
+                Some(-1) if left == 1 && split => {
                     roots.push(self.ring.canonical(&factor.negated())?);
                     rest = rest.negated();
                 }
@@ -541,7 +558,15 @@ fn primes(value: &IBig) -> Vec<IBig> {
 
 /// Numbers that act as numbers; others act as named constants, so that 6378137 is not multiplied out.
 fn is_small(p: i64, q: i64) -> bool {
-    (q == 1 && p.abs() <= 1_000) || (q <= 16 && p.abs() <= 100)
+    let mut rest = q;
+    for prime in [2, 5] {
+        while rest % prime == 0 {
+            rest /= prime;
+        }
+    }
+    // What is no decimal was not typed as one.
+    let is_decimal = rest == 1;
+    (q == 1 && p.abs() <= 1_000) || (q <= 16 && p.abs() <= 100) || (!is_decimal && p.abs() <= 1 << 30 && q <= 1 << 30)
 }
 
 fn circular(function: Function) -> bool {

@@ -409,25 +409,31 @@ impl Prover<'_> {
 
     /// A box for the sine or cosine that a generator stands for.
     fn circular_box(&self, angle: AngleId, generator: usize, doubled: &Doubled) -> (RBig, RBig) {
-        let (lower, upper) = self.exact_box(angle, generator, doubled);
-        if !self.strict {
+        let (lower, upper, inside) = self.exact_box(angle, generator, doubled);
+        if !self.strict || !inside {
             return (lower, upper);
         }
         let margin = RBig::from_parts(MARGIN.0.into(), MARGIN.1.into());
         (lower - &margin, upper + margin)
     }
 
-    fn exact_box(&self, angle: AngleId, generator: usize, doubled: &Doubled) -> (RBig, RBig) {
+    /// The box, and whether an end of it may be attained inside the range of the argument.
+    fn exact_box(&self, angle: AngleId, generator: usize, doubled: &Doubled) -> (RBig, RBig, bool) {
         let sine = matches!(self.ring.generators[generator], Kind::Sin(_));
         let twice = doubled.contains(&if sine { generator } else { generator - 1 });
         let factor = if twice { 2u8 } else { 1 };
         let argument = &self.ring.angles[angle.0];
-        let whole = (-RBig::ONE, RBig::ONE);
+        let whole = (-RBig::ONE, RBig::ONE, true);
         if let Ok(Some((from, to))) = self.turns(argument) {
             // In units of a quarter turn; the sine is the cosine a quarter turn earlier.
             let shift = if sine { RBig::ONE } else { RBig::ZERO };
             let quarter = |turns: &RBig| turns * RBig::from(2 * factor) - &shift;
-            return cosine_range(&quarter(&from), &quarter(&to));
+            let (from, to) = (quarter(&from), quarter(&to));
+            let (lower, upper) = cosine_range(&from, &to);
+            // The cosine turns at even numbers of quarters.
+            let half = |x: &RBig| x / RBig::from(2u8);
+            let turns_inside = half(&from).floor() + IBig::ONE < half(&to).ceil();
+            return (lower, upper, turns_inside);
         }
         let (lower, upper) = self.numeric(argument, 4);
         let (lower, upper) = (lower * f64::from(factor), upper * f64::from(factor));
@@ -439,7 +445,8 @@ impl Prover<'_> {
         let shift = if sine { 1.0 } else { 0.0 };
         let from = RBig::try_from(quarter(lower) - shift - 1e-9).unwrap_or(RBig::ZERO);
         let to = RBig::try_from(quarter(upper) - shift + 1e-9).unwrap_or(RBig::ZERO);
-        cosine_range(&from, &to)
+        let (lower, upper) = cosine_range(&from, &to);
+        (lower, upper, true)
     }
 
     /// The range of an argument as multiples of pi, where it is known to be such.

@@ -6,7 +6,7 @@ use super::meter::{Exhausted, Step};
 use super::parse_back::parse_back;
 use super::plan::Printer;
 use super::polynomial::Polynomial;
-use super::read::{Arguments, Reader};
+use super::read::{Arguments, Purpose, Reader};
 use super::region;
 use super::ring::Ring;
 use super::sign::{Ranges, sign, strict_sign};
@@ -56,15 +56,15 @@ impl Total<'_> {
         }
         let along = self.integral(integrand, inner, inner_limits)?;
         let total = self.integral(along, outer, outer_limits)?;
-        let (mut reader, ranges) = self.reader(&[total])?;
+        let (mut reader, ranges) = self.reader(&[total], Purpose::Printing)?;
         let graph = reader.graph;
         let value = reader.read(total, &|ring: &Ring, p: &Polynomial| sign(ring, graph, &ranges, p))?;
         Printer::new(reader.ring.clone(), graph, self.patch.variables, NODES).fraction(&value)
     }
 
-    fn reader(&self, formulas: &[ExpressionId]) -> Step<(Reader<'_>, Ranges)> {
+    fn reader(&self, formulas: &[ExpressionId], purpose: Purpose) -> Step<(Reader<'_>, Ranges)> {
         let roots = [formulas, &region::formulas(self.model, self.patch)].concat();
-        let mut reader = Reader::new(&self.graph, &roots, Arguments::Split)?;
+        let mut reader = Reader::new(&self.graph, &roots, Arguments::Split, purpose)?;
         let ranges = region::read(&mut reader, self.model, self.patch);
         Ok((reader, ranges))
     }
@@ -93,7 +93,7 @@ impl Total<'_> {
 
     /// The terms of an antiderivative, as text.
     fn proposal(&self, integrand: ExpressionId, variable: SymbolId) -> Step<Vec<String>> {
-        let (mut reader, ranges) = self.reader(&[integrand])?;
+        let (mut reader, ranges) = self.reader(&[integrand], Purpose::Integrating)?;
         let graph = reader.graph;
         let value = reader.read(integrand, &|ring: &Ring, p: &Polynomial| sign(ring, graph, &ranges, p))?;
         let mut ring = reader.ring.clone();
@@ -130,7 +130,7 @@ impl Total<'_> {
     /// The derivative of the antiderivative is the integrand: both are read into one ring.
     fn prove(&mut self, antiderivative: ExpressionId, integrand: ExpressionId, variable: SymbolId) -> Step<()> {
         let slope = differentiate(&mut self.graph, antiderivative, variable);
-        let (mut reader, ranges) = self.reader(&[slope, integrand])?;
+        let (mut reader, ranges) = self.reader(&[slope, integrand], Purpose::Proving)?;
         let graph = reader.graph;
         let prove = |ring: &Ring, p: &Polynomial| sign(ring, graph, &ranges, p);
         let slope = reader.read(slope, &prove)?;
