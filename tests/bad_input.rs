@@ -8,7 +8,7 @@ use quadrel::language::{Source, check};
 fn use_sheet(text: &str) {
     let Ok(model) = check(Source::new("random.sheet", text)) else { return };
     let Ok(bindings) = model.bind(&[]) else { return };
-    let settings = Settings { relative: 1e-3, evaluations: 2_000, ..Settings::default() };
+    let settings = Settings { relative: 1e-3, evaluations: Some(2_000), ..Settings::default() };
     let _ = answer(&model, &bindings, &[], &settings, &NoProgress);
 }
 

@@ -29,7 +29,7 @@ pub(super) fn run(options: &AnswerOptions) -> Result<Exit, Failure> {
             "rel={:e} abs={:e} evaluations={} set={}",
             options.rel,
             options.abs,
-            options.evaluations,
+            options.evaluations.map_or("default".to_owned(), |count| count.to_string()),
             options.set.join(";")
         );
         output::print_json(&answers_json(&answers, &warnings, &Stamp::new(&model.source.text, settings)));

@@ -76,9 +76,10 @@ pub struct AnswerOptions {
     /// What the error figure must be. Proofs come in a later version; estimates are conservative.
     #[arg(long, value_enum, default_value = "estimate")]
     pub kind: KindOption,
-    /// Largest number of evaluations for one patch.
-    #[arg(long, default_value_t = 20_000_000)]
-    pub evaluations: u64,
+    /// Largest number of evaluations for one patch. Default: up to 20 million, fewer where one evaluation costs more than
+    /// that of a short formula.
+    #[arg(long)]
+    pub evaluations: Option<u64>,
     /// Threads for large work; the result does not depend on it. Default: all processors.
     #[arg(long)]
     pub threads: Option<usize>,

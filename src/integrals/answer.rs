@@ -4,7 +4,7 @@ use super::bounded::Bounded;
 use super::error::{IntegralError, Progress};
 use super::outcome::{Answer, AnswerKind, Component, Principal, Settings};
 use super::rounding::evaluate_bounded;
-use super::run::{FunctionalOutcome, NEGLIGIBLE, Outcome, Run};
+use super::run::{FunctionalOutcome, NEGLIGIBLE, Outcome, RUN_WORK, Run};
 use super::sides::chain_warnings;
 use crate::expression::{ExpressionId, Graph, SymbolId, differentiate, evaluate};
 use crate::language::{Bindings, Chain, Dimension, Functional, FunctionalId, FunctionalKind, Model, Unit, nearest};
@@ -52,6 +52,7 @@ pub fn answer(
         settings,
         progress,
         done: Cell::new(0),
+        work_left: Cell::new(RUN_WORK),
     };
     let mut relative = 0.5 * settings.relative;
     for attempt in 0..3 {
@@ -210,7 +211,7 @@ fn reason(finite: bool, limit: Option<Limit>, worst: f64, allowed: f64) -> Strin
         return "the value is undefined: a divisor is zero within its error".to_owned();
     }
     let why = match limit {
-        Some(Limit::Evaluations) => "the budget of evaluations is spent (raise --evaluations)",
+        Some(Limit::Evaluations) => "the budget of evaluations is spent (raise --evaluations or loosen --rel)",
         Some(Limit::Rounding) => "rounding errors of the integrand are larger than the tolerance",
         Some(Limit::Stopped) => "the run was interrupted",
         None => "the errors of the integrals add up to more than the tolerance",

@@ -32,12 +32,13 @@ pub struct Settings {
     /// Error allowed in the coherent unit, whatever the value.
     pub absolute: f64,
     /// Largest number of integrand evaluations of one patch before the best value so far is returned as unreached.
-    pub evaluations: u64,
+    /// `None` derives it from what one evaluation costs (see [`crate::integrals`]).
+    pub evaluations: Option<u64>,
 }
 
 impl Default for Settings {
     fn default() -> Self {
-        Self { relative: 1e-9, absolute: 0.0, evaluations: 20_000_000 }
+        Self { relative: 1e-9, absolute: 0.0, evaluations: None }
     }
 }
 

@@ -97,6 +97,7 @@ impl Question<'_> {
                 inner_periodic: false,
                 outer_independent: false,
                 inner_independent: false,
+                rough: false,
                 rounding: vec![0.0; self.densities.len()],
             },
         };
@@ -313,6 +314,12 @@ fn values(kernel: &Kernel, parameters: &[f64], outer: &[f64], inner: &[f64]) -> 
     out
 }
 
+/// Evaluations of a typical inner line.
+const EVALUATIONS_PER_LINE: u64 = 70;
+
+/// Evaluations of one formula to find its sign changes on a line, calls counted as some points each.
+const SEARCH_EVALUATIONS: u64 = 200;
+
 /// Samples along the outer line at which the arrangement of kinks is compared.
 const STRUCTURE_SAMPLES: usize = 97;
 
@@ -519,6 +526,18 @@ impl PlaneIntegrand for PatchIntegrand {
             parts.retain(|part| self.holds(trim, outer, *part));
         }
         parts
+    }
+
+    fn work(&self) -> u64 {
+        // Kinks, limits and the trim are resolved once for each line; a line has some 70 evaluations.
+        let own = |kernel: &Kernel| kernel.program().work();
+        let limits = match &self.limits {
+            Limits::Constant(_) => 0,
+            Limits::Varying(kernel, _) => own(kernel),
+        };
+        let line =
+            SEARCH_EVALUATIONS * self.kinks.iter().map(own).sum::<u64>() + self.trim.as_ref().map_or(0, own) + limits;
+        own(&self.densities) + line / EVALUATIONS_PER_LINE + 1
     }
 
     fn evaluate(&self, outer: f64, inner: &[f64], out: &mut [f64]) {

@@ -8,7 +8,7 @@ use super::patch_integrand::Question;
 use crate::expression::{ExpressionId, Graph, SymbolId, differentiate, evaluate};
 use crate::geometry::{Surface, at_point};
 use crate::language::{Bindings, Bound, Functional, FunctionalId, Model, Patch, PatchId};
-use crate::quadrature::{Failure, Integral, Limit, integrate};
+use crate::quadrature::{Failure, Integral, Limit, PlaneIntegrand, integrate};
 use rustc_hash::FxHashMap;
 use std::cell::Cell;
 use std::time::Instant;
@@ -51,7 +51,24 @@ pub(super) struct Run<'a> {
     pub(super) progress: &'a dyn Progress,
     /// Evaluations of the passes that are done.
     pub(super) done: Cell<u64>,
+    /// Work that the passes to come may still spend, in additions; counts only where the budget is the default.
+    pub(super) work_left: Cell<u64>,
 }
+
+/// Default work of one pass, in additions: 20 million evaluations of a short formula, some seconds.
+const PASS_WORK: u64 = 2_500_000_000;
+
+/// Default work of a whole run: a few hard patches have [`PASS_WORK`] each, many hard ones share what is left.
+pub(super) const RUN_WORK: u64 = 4 * PASS_WORK;
+
+/// Default evaluations of a pass at most, whatever they cost.
+const MOST_EVALUATIONS: u64 = 20_000_000;
+
+/// A dear integrand that is not smooth gets this many evaluations, as far as three times [`PASS_WORK`] goes.
+const HARD_EVALUATIONS: u64 = 50_000;
+
+/// Default evaluations of a pass at least, whatever they cost: what a smooth integrand needs.
+const LEAST_EVALUATIONS: u64 = 5_000;
 
 /// Densities of one side of one patch that are integrated together.
 struct Pass {
@@ -181,6 +198,7 @@ impl Run<'_> {
         }
         let question = Question { patch, densities: &pass.densities, trim, bindings: &self.bindings };
         let integrand = question.prepare(&mut self.graph)?;
+        let work = integrand.work();
         let wanted = pass.densities.len() - pass.sensitivities.len();
         let tolerance = |k: usize, value: f64, magnitude: f64| {
             // Integrals that only carry errors need two digits.
@@ -190,8 +208,11 @@ impl Run<'_> {
             self.progress.evaluations(self.done.get() + evaluations);
             !self.progress.cancelled()
         };
-        integrate(&integrand, &integrand.sides, &tolerance, self.settings.evaluations, &keep_going)
-            .map_err(|failure| failure_message(&question, &self.graph, failure))
+        let budget = self.settings.evaluations.unwrap_or_else(|| default_evaluations(work, self.work_left.get()));
+        let integral = integrate(&integrand, &integrand.sides, &tolerance, budget, &keep_going)
+            .map_err(|failure| failure_message(&question, &self.graph, failure))?;
+        self.work_left.set(self.work_left.get().saturating_sub(work.saturating_mul(integral.evaluations)));
+        Ok(integral)
     }
 
     /// Sums the shares of a functional over its patches and combines them to its results.
@@ -278,6 +299,13 @@ impl Run<'_> {
         }
         Pivot { symbols, position }
     }
+}
+
+/// How many evaluations a pass gets where nobody says: as many as the work allows. Counts only, so that it is the same on
+/// every machine.
+fn default_evaluations(work: u64, work_left: u64) -> u64 {
+    let usual = PASS_WORK.min(work_left / 2) / work;
+    usual.max(HARD_EVALUATIONS.min(3 * usual)).clamp(LEAST_EVALUATIONS, MOST_EVALUATIONS)
 }
 
 /// What the tolerance of each result is relative to where its value is negligible.

@@ -121,6 +121,27 @@ impl Instruction {
         };
         operands.into_iter().flatten()
     }
+
+    /// The cost of this step relative to an addition, to the nearest handful: elementary functions take some tens of
+    /// additions, the special functions (series and recurrences) some hundreds.
+    fn work(&self) -> u64 {
+        match self {
+            Instruction::Call(function, _) => match function {
+                Function::Gamma
+                | Function::LogGamma
+                | Function::Polygamma(_)
+                | Function::BesselJ(_)
+                | Function::BesselY(_)
+                | Function::EllipticK(_)
+                | Function::EllipticE(_) => 300,
+                _ => 20,
+            },
+            Instruction::Call2(..) => 20,
+            Instruction::Power(..) => 40,
+            Instruction::Divide(..) | Instruction::SquareRoot(_) => 4,
+            _ => 1,
+        }
+    }
 }
 
 /// Why a formula cannot become a program or machine code.
@@ -247,6 +268,11 @@ impl Program {
     /// Number of steps.
     pub fn len(&self) -> usize {
         self.instructions.len()
+    }
+
+    /// What one evaluation costs, counted in additions: a measure of the formula, not of the machine.
+    pub fn work(&self) -> u64 {
+        self.instructions.iter().map(Instruction::work).sum()
     }
 
     /// Whether there is no step.

@@ -1,7 +1,9 @@
 //! Integration over a plane region as an integral of integrals: for each value of the outer variable the inner line is
 //! integrated with its own splits, maps and errors, and those errors are carried into the outer sum.
 
-use super::line::{Line, LineSum, NotFinite, Outcome, Samples, Tolerance, integrate_period, integrate_segments};
+use super::line::{
+    Effort, Line, LineSum, NotFinite, Outcome, Samples, Tolerance, integrate_period, integrate_segments,
+};
 use super::map::{Map, Segment};
 use super::rules::gauss_legendre;
 use rayon::prelude::*;
@@ -17,6 +19,9 @@ pub trait PlaneIntegrand: Sync {
 
     /// Values at points of one inner line: `out[k * inner.len() + i]`.
     fn evaluate(&self, outer: f64, inner: &[f64], out: &mut [f64]);
+
+    /// About what one evaluation costs, in additions; decides whether threads are used, never a result.
+    fn work(&self) -> u64;
 }
 
 /// What is known about the region and the function along its two variables.
@@ -32,6 +37,8 @@ pub struct Sides {
     pub outer_independent: bool,
     /// Whether the function is independent of the inner variable.
     pub inner_independent: bool,
+    /// Whether there are kinks or jumps that no split resolves: rules are then trusted less.
+    pub rough: bool,
     /// Integral of the rounding error of each component over the region, 0 where it is not known.
     pub rounding: Vec<f64>,
 }
@@ -119,7 +126,8 @@ pub fn integrate(
             .collect();
         let outer_tolerances: Vec<Tolerance> =
             allowed.iter().map(|&absolute| Tolerance { absolute: 0.5 * absolute, relative: 0.0 }).collect();
-        let line = OuterLine { function, sides, tolerances: inner_tolerances, cost: AtomicU64::new(64) };
+        let longest = INNER_BUDGET.max(budget / 600);
+        let line = OuterLine { function, sides, tolerances: inner_tolerances, longest, cost: AtomicU64::new(64) };
         let watch = |evaluations: u64| keep_going(spent + evaluations);
         let sum = integrate_outer(&line, sides, &outer_tolerances, budget.saturating_sub(spent), &watch)?;
         spent += sum.evaluations;
@@ -134,7 +142,9 @@ pub fn integrate(
             _ if !short => None,
             Outcome::Budget => Some(Limit::Evaluations),
             _ if spent >= budget => Some(Limit::Evaluations),
+            Outcome::Noise if sum.exhausted => Some(Limit::Evaluations),
             Outcome::Noise => Some(Limit::Rounding),
+            Outcome::Reached if attempt == 3 && sum.exhausted => Some(Limit::Evaluations),
             Outcome::Reached if attempt == 3 => Some(Limit::Rounding),
             // The first guess at the size of the integral was too large: once more with the better one.
             Outcome::Reached => continue,
@@ -155,16 +165,19 @@ const ROUNDING_PER_SUM: f64 = 64.0 * f64::EPSILON;
 /// their agreement says nothing about what both of them miss below it.
 const CLAIM: f64 = 0.01;
 
-/// Evaluations after which one inner line gives up, its error then counts as it is.
+/// Evaluations after which one inner line gives up, its error then counts as it is; more where the whole budget is larger
+/// than usual, fewer where the lines of a batch would spend more than is left.
 const INNER_BUDGET: u64 = 30_000;
 
-/// Evaluations in one batch of lines above which threads are worth their start-up.
-const PARALLEL_EVALUATIONS: u64 = 200_000;
+/// Work in one batch of lines, in additions, above which threads are worth their start-up.
+const PARALLEL_WORK: u64 = 20_000_000;
 
 struct OuterLine<'a> {
     function: &'a dyn PlaneIntegrand,
     sides: &'a Sides,
     tolerances: Vec<Tolerance>,
+    /// Most evaluations of one inner line.
+    longest: u64,
     /// Evaluations of an average line so far; only steers whether threads are used, never a result.
     cost: AtomicU64,
 }
@@ -179,7 +192,7 @@ impl Line for InnerLine<'_> {
         self.function.components()
     }
 
-    fn sample(&self, x: &[f64]) -> Samples {
+    fn sample(&self, x: &[f64], _: u64) -> Samples {
         let mut values = vec![0.0; x.len() * self.components()];
         self.function.evaluate(self.outer, x, &mut values);
         Samples { values, evaluations: x.len() as u64, ..Samples::default() }
@@ -187,31 +200,32 @@ impl Line for InnerLine<'_> {
 }
 
 impl OuterLine<'_> {
-    fn inner_integral(&self, outer: f64) -> Result<LineSum, NotFinite> {
+    fn inner_integral(&self, outer: f64, budget: u64) -> Result<LineSum, NotFinite> {
         let line = InnerLine { function: self.function, outer };
         let segments = self.function.inner_segments(outer);
         let mut evaluations = 0;
         if self.sides.inner_independent {
-            return Ok(constant_line(&line, &segments));
+            return Ok(constant_line(&line, &segments, budget));
         }
         if self.sides.inner_periodic
             && let [segment] = segments[..]
-            && let Some(sum) = integrate_period(&line, segment, &self.tolerances, &mut evaluations)?
+            && let Some(sum) = integrate_period(&line, segment, &self.tolerances, budget, &mut evaluations)?
         {
             return Ok(sum);
         }
-        let mut sum = integrate_segments(&line, &segments, &self.tolerances, INNER_BUDGET, &|_| true)?;
+        let effort = Effort { budget, rough: self.sides.rough };
+        let mut sum = integrate_segments(&line, &segments, &self.tolerances, effort, &|_| true)?;
         sum.evaluations += evaluations;
         Ok(sum)
     }
 }
 
 /// The integral of a function that does not change along the line.
-fn constant_line(line: &impl Line, segments: &[Segment]) -> LineSum {
+fn constant_line(line: &impl Line, segments: &[Segment], budget: u64) -> LineSum {
     let components = line.components();
     let length: f64 = segments.iter().map(|segment| segment.to - segment.from).sum();
     let middle: Vec<f64> = segments.iter().take(1).map(|s| s.from + 0.5 * (s.to - s.from)).collect();
-    let samples = line.sample(&middle);
+    let samples = line.sample(&middle, budget);
     let at = |part: &[f64], k: usize| part.get(k).copied().unwrap_or(0.0);
     let values: Vec<f64> = (0..components).map(|k| length * at(&samples.values, k)).collect();
     let magnitudes = if samples.magnitudes.is_empty() {
@@ -227,6 +241,7 @@ fn constant_line(line: &impl Line, segments: &[Segment]) -> LineSum {
         outcome: Outcome::Reached,
         growth: None,
         divergent: (samples.divergent, middle.len()),
+        exhausted: samples.exhausted,
     }
 }
 
@@ -235,12 +250,13 @@ impl Line for OuterLine<'_> {
         self.function.components()
     }
 
-    fn sample(&self, x: &[f64]) -> Samples {
+    fn sample(&self, x: &[f64], budget: u64) -> Samples {
+        let each = (budget / x.len().max(1) as u64).min(self.longest);
         let expected = self.cost.load(Ordering::Relaxed) * x.len() as u64;
-        let lines: Vec<Result<LineSum, NotFinite>> = if expected > PARALLEL_EVALUATIONS {
-            x.par_iter().map(|&outer| self.inner_integral(outer)).collect()
+        let lines: Vec<Result<LineSum, NotFinite>> = if expected.saturating_mul(self.function.work()) > PARALLEL_WORK {
+            x.par_iter().map(|&outer| self.inner_integral(outer, each)).collect()
         } else {
-            x.iter().map(|&outer| self.inner_integral(outer)).collect()
+            x.iter().map(|&outer| self.inner_integral(outer, each)).collect()
         };
         let components = self.components();
         let size = components * x.len();
@@ -260,6 +276,7 @@ impl Line for OuterLine<'_> {
                     }
                     samples.evaluations += sum.evaluations;
                     samples.divergent += usize::from(sum.growth.is_some());
+                    samples.exhausted |= sum.exhausted || sum.outcome == Outcome::Budget;
                 }
                 Err(failure) => samples.failures.push((i, failure.x)),
             }
@@ -285,14 +302,15 @@ fn integrate_outer(
     };
     let mut evaluations = 0;
     let sum = if sides.outer_independent {
-        constant_line(line, &sides.outer)
+        constant_line(line, &sides.outer, budget)
     } else if sides.outer_periodic
         && let [segment] = sides.outer[..]
-        && let Some(sum) = integrate_period(line, segment, tolerances, &mut evaluations).map_err(not_finite)?
+        && let Some(sum) = integrate_period(line, segment, tolerances, budget, &mut evaluations).map_err(not_finite)?
     {
         sum
     } else {
-        let mut sum = integrate_segments(line, &sides.outer, tolerances, budget, keep_going).map_err(not_finite)?;
+        let effort = Effort { budget: budget.saturating_sub(evaluations), rough: sides.rough };
+        let mut sum = integrate_segments(line, &sides.outer, tolerances, effort, keep_going).map_err(not_finite)?;
         sum.evaluations += evaluations;
         sum
     };
@@ -315,7 +333,7 @@ fn integrate_outer(
 /// Names the end of the inner line at which the middle line diverges.
 fn divergent_inside(line: &OuterLine<'_>, sides: &Sides) -> Failure {
     let middle = sides.outer.first().map_or(0.5, |segment| Map::new(*segment, (1, 1)).at(0.4321).0);
-    let growth = line.inner_integral(middle).ok().and_then(|sum| sum.growth);
+    let growth = line.inner_integral(middle, line.longest).ok().and_then(|sum| sum.growth);
     match growth {
         Some((end, exponent)) => Failure::Divergent { outer: None, inner: Some(end), exponent },
         None => Failure::Divergent { outer: Some(middle), inner: None, exponent: -1.0 },
