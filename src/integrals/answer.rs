@@ -207,7 +207,7 @@ fn assemble(target: &Target, run: &mut Run<'_>, outcomes: &FxHashMap<FunctionalI
 }
 
 fn reason(finite: bool, limit: Option<Limit>, worst: f64, allowed: f64) -> String {
-    if !finite {
+    if !finite && limit.is_none() {
         return "the value is undefined: a divisor is zero within its error".to_owned();
     }
     let why = match limit {

@@ -2,9 +2,10 @@
 //! trims resolved, kinks and sharp features located.
 
 use super::error::{IntegralError, Place};
-use super::roots::{bisect, point, sign_changes};
+use super::roots::{SignChanges, bisect, point, sign_changes};
 use super::rounding::evaluate_bounded;
-use super::structure::{Feature, features, is_periodic, kink_formulas};
+use super::sharp::{SharpPlace, sharp_places};
+use super::structure::{Feature, Kink, features, is_periodic, kinks};
 use crate::expression::{ExpressionId, Graph, SymbolId, evaluate, first_undefined, print_limited};
 use crate::kernel::{Kernel, Program};
 use crate::language::{Bindings, Bound, Patch};
@@ -20,6 +21,12 @@ pub(super) struct PatchIntegrand {
     /// Formulas whose sign changes split an inner line at places that depend on the outer variable.
     kinks: Vec<Kernel>,
     trim: Option<Kernel>,
+    /// Whether parts of lines may straddle the edge of the trim: densities are then cut point by point.
+    straddles: bool,
+    /// Work that finding the splits took, in additions.
+    pub(super) prepared: u64,
+    /// Bounds for what sharp places may hold that were not split at, for each density.
+    pub(super) unsplit: Vec<f64>,
     /// Where densities have decayed to nothing before their formula overflows: (outer, inner).
     decayed: [Segment; 2],
     /// What is known for the quadrature.
@@ -44,23 +51,25 @@ pub(super) struct Question<'a> {
 
 impl Question<'_> {
     /// Compiles and examines the densities.
-    pub(super) fn prepare(&self, graph: &mut Graph) -> Result<PatchIntegrand, IntegralError> {
+    ///
+    /// `budget` gives the evaluations that the integrand is allowed: where the splits alone would take more, they are not
+    /// made. `preparation` is the work that may go into finding them, in additions.
+    pub(super) fn prepare(
+        &self,
+        graph: &mut Graph,
+        budget: &dyn Fn(&PatchIntegrand) -> u64,
+        preparation: u64,
+    ) -> Result<PatchIntegrand, IntegralError> {
         let patch = self.patch;
         let outer = usize::from(self.depends(graph, 0, patch.variables[1]));
         let variables = [patch.variables[outer], patch.variables[1 - outer]];
         let value_of = |symbol: SymbolId| self.bindings.value(symbol);
         let roots: Vec<ExpressionId> = self.densities.iter().copied().chain(self.trim).collect();
-        let kinks = kink_formulas(graph, &roots, variables);
-        let found = features(graph, self.densities, variables);
-        let feature_formulas: Vec<ExpressionId> = found
-            .iter()
-            .map(|feature| match *feature {
-                Feature::Small(a) | Feature::Large(a) | Feature::Step(a) => a,
-            })
-            .collect();
+        let kinks = kinks(graph, &roots, variables);
+        let features = features(graph, self.densities, variables);
         let inner_bounds = [patch.intervals[1 - outer].lower, patch.intervals[1 - outer].upper];
         let mut everything = roots.clone();
-        everything.extend(&kinks);
+        everything.extend(kinks.iter().map(|kink| kink.formula));
         everything.extend(inner_bounds.iter().filter_map(|bound| finite(*bound)));
         let parameters: Vec<SymbolId> =
             graph.symbols_of(&everything).into_iter().filter(|symbol| !variables.contains(symbol)).collect();
@@ -90,6 +99,9 @@ impl Question<'_> {
             breaks: Vec::new(),
             kinks: Vec::new(),
             trim: self.trim.map(|trim| compile(graph, &[trim])).transpose()?,
+            straddles: false,
+            prepared: 0,
+            unsplit: vec![0.0; self.densities.len()],
             decayed: [Segment::new(f64::NEG_INFINITY, f64::INFINITY); 2],
             sides: Sides {
                 outer: vec![outer_segment],
@@ -104,15 +116,20 @@ impl Question<'_> {
         integrand.check_limits(patch, outer, outer_segment)?;
         integrand.find_decay(outer_segment);
         let mut outer_breaks = Vec::new();
-        self.split_at_kinks(graph, &mut integrand, &kinks, variables, outer_segment, &mut outer_breaks, &compile)?;
-        if !found.is_empty() {
-            let kernel = compile(graph, &feature_formulas)?;
-            integrand.split_at_features(&found, &kernel, outer_segment, &mut outer_breaks);
-        }
+        let allowed = PREPARATION_WORK.min(preparation);
+        let mut work_left = allowed;
+        outer_breaks.extend(integrand.find_kinks(graph, &kinks, outer_segment, &compile, &mut work_left)?);
+        let places = integrand.find_sharp_places(graph, &features, outer_segment, &compile, &mut work_left)?;
+        integrand.prepared = allowed - work_left;
+        outer_breaks.extend(places.iter().flat_map(|place| &place.outer));
+        integrand.breaks.extend(places.iter().flat_map(|place| &place.inner));
         outer_breaks.extend(middle_of_infinite(outer_segment));
         integrand.sides.outer = split(outer_segment, &mut outer_breaks);
+        // Independence is needed to tell what the splits cost, periods are known only once they are settled.
+        integrand.find_independence(graph, &roots, variables);
+        integrand.afford(outer_segment, !kinks.is_empty(), &places, budget);
         integrand.sides.rounding = self.rounding(graph, outer_segment, variables, &integrand);
-        integrand.find_structure(graph, &roots, self.densities, variables, &value_of);
+        integrand.find_periods(graph, self.densities, variables, &value_of);
         Ok(integrand)
     }
 
@@ -185,45 +202,6 @@ impl Question<'_> {
             .constant_segment(graph, outer, value_of)
             .ok_or_else(|| IntegralError::new("limits", "the limits of both variables depend on each other"))?;
         checked(segment, self.patch, outer)
-    }
-
-    /// Splits at the sign changes of kink formulas: of one variable once, of both by a kernel for every inner line.
-    #[allow(clippy::too_many_arguments)]
-    fn split_at_kinks(
-        &self,
-        graph: &Graph,
-        integrand: &mut PatchIntegrand,
-        kinks: &[ExpressionId],
-        variables: [SymbolId; 2],
-        outer_segment: Segment,
-        outer_breaks: &mut Vec<f64>,
-        compile: &impl Fn(&Graph, &[ExpressionId]) -> Result<Kernel, IntegralError>,
-    ) -> Result<(), IntegralError> {
-        let mut mixed = Vec::new();
-        for &kink in kinks {
-            let depends = variables.map(|variable| graph.depends_on(kink, variable));
-            let kernel = compile(graph, &[kink])?;
-            let parameters = integrand.parameters.clone();
-            match (depends, &integrand.limits) {
-                ([true, false], _) => {
-                    let mut f = |x: &[f64]| values(&kernel, &parameters, x, &vec![0.0; x.len()]);
-                    outer_breaks.extend(sign_changes(outer_segment, &mut f));
-                }
-                ([false, true], Limits::Constant(segment)) => {
-                    let mut f = |x: &[f64]| values(&kernel, &parameters, &vec![0.0; x.len()], x);
-                    let found = sign_changes(*segment, &mut f);
-                    integrand.breaks.extend(found);
-                }
-                _ => mixed.push(kink),
-            }
-        }
-        if !mixed.is_empty() || integrand.trim.is_some() {
-            for kink in mixed {
-                integrand.kinks.push(compile(graph, &[kink])?);
-            }
-            outer_breaks.extend(integrand.structure_changes(outer_segment));
-        }
-        Ok(())
     }
 
     /// The point of the surface at which a density is undefined, for a message.
@@ -317,8 +295,36 @@ fn values(kernel: &Kernel, parameters: &[f64], outer: &[f64], inner: &[f64]) -> 
 /// Evaluations of a typical inner line.
 const EVALUATIONS_PER_LINE: u64 = 70;
 
+/// What a call of a kernel for one point costs, in evaluations of a batch.
+const SINGLE_CALL: u64 = 40;
+
 /// Evaluations of one formula to find its sign changes on a line, calls counted as some points each.
 const SEARCH_EVALUATIONS: u64 = 200;
+
+/// Work of a search beside the evaluations: what any formula costs, however short.
+const SEARCH_WORK: u64 = 10_000;
+
+/// Evaluations of a formula in the search for its sharp places, and the work beside each.
+const SHARP_EVALUATIONS: u64 = 20_000;
+const SHARP_OVERHEAD: u64 = 10;
+
+/// Work that the preparation of one patch may take, in additions.
+const PREPARATION_WORK: u64 = 1_500_000_000;
+
+/// Inner lines that may be looked at to see where the arrangement of kinks changes.
+const STRUCTURE_LINES: u64 = 2_000;
+
+/// Steps from the distance of samples to the last place.
+const BISECTIONS: u64 = 46;
+
+/// Changes of the arrangement that are told apart between two samples.
+const CHANGES_TOGETHER: usize = 8;
+
+/// Where the next change is looked for, behind one that is found, as a share of the distance of samples.
+const BESIDE: f64 = 1e-6;
+
+/// A first round this short is affordable, whatever the budget.
+const UNSPLIT_ROUND: u64 = 10_000;
 
 /// Samples along the outer line at which the arrangement of kinks is compared.
 const STRUCTURE_SAMPLES: usize = 97;
@@ -403,34 +409,175 @@ impl PatchIntegrand {
         }
     }
 
-    /// Signs of all kinks and the trim along one inner line, as a word that changes where the arrangement changes.
-    fn arrangement(&self, outer: f64) -> Vec<usize> {
-        self.splits(outer).into_iter().map(|(kink, _)| kink).chain(self.kept(outer)).collect()
+    /// Finds the places of kinks and prepares the search on inner lines for those that run across both variables.
+    /// Returns the breaks of the outer line; what cannot be found within `work_left` makes the integrand rough.
+    fn find_kinks(
+        &mut self,
+        graph: &Graph,
+        kinks: &[Kink],
+        outer_segment: Segment,
+        compile: &impl Fn(&Graph, &[ExpressionId]) -> Result<Kernel, IntegralError>,
+        work_left: &mut u64,
+    ) -> Result<Vec<f64>, IntegralError> {
+        let mut outer_breaks = Vec::new();
+        let mut mixed = Vec::new();
+        for kink in kinks {
+            if *work_left == 0 {
+                self.leave_rough();
+                return Ok(outer_breaks);
+            }
+            let kernel = compile(graph, &[kink.formula])?;
+            *work_left = work_left.saturating_sub(SEARCH_WORK + SEARCH_EVALUATIONS * kernel.program().work());
+            match (kink.along, &self.limits) {
+                ([true, false], _) => {
+                    let mut f = |x: &[f64]| values(&kernel, &self.parameters, x, &vec![0.0; x.len()]);
+                    let found = sign_changes(outer_segment, &mut f);
+                    self.sides.rough |= !found.settled;
+                    outer_breaks.extend(found.at);
+                }
+                ([false, true], Limits::Constant(segment)) => {
+                    let mut f = |x: &[f64]| values(&kernel, &self.parameters, &vec![0.0; x.len()], x);
+                    let found = sign_changes(*segment, &mut f);
+                    self.sides.rough |= !found.settled;
+                    self.breaks.extend(found.at);
+                }
+                _ => mixed.push(kernel),
+            }
+        }
+        let line: u64 = mixed.iter().map(|kernel| SEARCH_WORK / 8 + SEARCH_EVALUATIONS * kernel.program().work()).sum();
+        let search = line.saturating_mul(STRUCTURE_LINES);
+        if search > *work_left {
+            self.leave_rough();
+            return Ok(outer_breaks);
+        }
+        *work_left -= search;
+        self.kinks = mixed;
+        if !self.kinks.is_empty() || self.trim.is_some() {
+            outer_breaks.extend(self.structure_changes(outer_segment));
+        }
+        if self.sides.rough {
+            self.leave_rough();
+        }
+        Ok(outer_breaks)
+    }
+
+    /// Gives up the splits at kinks that cross inner lines; rules are then trusted less.
+    fn leave_rough(&mut self) {
+        self.kinks.clear();
+        self.sides.rough = true;
+        self.straddles = self.trim.is_some();
+    }
+
+    /// The sharp places of all features. One that cannot be looked at within `work_left` leaves the error unbounded.
+    fn find_sharp_places(
+        &mut self,
+        graph: &Graph,
+        features: &[Feature],
+        outer_segment: Segment,
+        compile: &impl Fn(&Graph, &[ExpressionId]) -> Result<Kernel, IntegralError>,
+        work_left: &mut u64,
+    ) -> Result<Vec<SharpPlace>, IntegralError> {
+        let mut places = Vec::new();
+        for &feature in features {
+            if *work_left == 0 {
+                self.unsplit.fill(f64::INFINITY);
+                return Ok(places);
+            }
+            let kernel = compile(graph, &[feature.formula()])?;
+            *work_left = work_left.saturating_sub(SHARP_EVALUATIONS * (SHARP_OVERHEAD + kernel.program().work()));
+            places.extend(sharp_places(feature, &kernel, &self.parameters, outer_segment, &|outer| {
+                self.limits_at(outer)
+            }));
+        }
+        Ok(places)
+    }
+
+    /// Takes back all splits if the first round over them would cost more than the whole budget. Kinks then make the
+    /// integrand rough, and for every sharp place what it may hold is added to the error.
+    fn afford(
+        &mut self,
+        outer_segment: Segment,
+        has_kinks: bool,
+        places: &[SharpPlace],
+        budget: &dyn Fn(&PatchIntegrand) -> u64,
+    ) {
+        let first = self.first_round();
+        if first <= UNSPLIT_ROUND || first <= budget(self) {
+            return;
+        }
+        self.breaks.clear();
+        self.sides.outer = split(outer_segment, &mut middle_of_infinite(outer_segment).into_iter().collect::<Vec<_>>());
+        if has_kinks || self.trim.is_some() {
+            self.leave_rough();
+        }
+        for place in places {
+            let [outer, inner] = place.at;
+            let mut densities = vec![0.0; self.components()];
+            self.evaluate(outer, &[inner], &mut densities);
+            for (unsplit, density) in self.unsplit.iter_mut().zip(densities) {
+                let held = density.abs() * place.extent[0] * place.extent[1];
+                // A place where the density is infinite shows in the rules, which cannot come near it.
+                *unsplit += if held.is_finite() { held } else { 0.0 };
+            }
+        }
+    }
+
+    /// Evaluations of the first round of rules over all segments.
+    fn first_round(&self) -> u64 {
+        let of =
+            |segments: usize, independent: bool| if independent { 1 } else { EVALUATIONS_PER_LINE * segments as u64 };
+        let lines = of(self.sides.outer.len(), self.sides.outer_independent);
+        let inner = [0.13, 0.37, 0.61, 0.89]
+            .map(|share| {
+                let part = self.sides.outer[(share * self.sides.outer.len() as f64) as usize];
+                self.parts(point(part, share)).len()
+            })
+            .into_iter()
+            .max()
+            .unwrap_or(1);
+        // Many short segments start with half the nodes.
+        let halves = [self.sides.outer.len(), inner].map(|count| if count < 8 { 1 } else { 2 });
+        lines.saturating_mul(of(inner, self.sides.inner_independent)) / (halves[0] * halves[1])
+    }
+
+    /// Which of the kinks `considered` cross one inner line, in order, and which parts the trim keeps: a word that changes
+    /// where the arrangement changes. Also whether all crossings were found.
+    fn arrangement(&self, outer: f64, considered: &dyn Fn(usize) -> bool) -> (Vec<usize>, bool) {
+        let (splits, settled) = self.splits(outer, considered);
+        (splits.into_iter().map(|(kink, _)| kink).chain(self.kept(outer)).collect(), settled)
     }
 
     /// Which parts of the line the trim keeps, as numbers beyond those of kinks.
     fn kept(&self, outer: f64) -> Vec<usize> {
-        let Some(trim) = &self.trim else { return Vec::new() };
-        self.parts(outer).iter().map(|part| usize::MAX - usize::from(self.holds(trim, outer, *part))).collect()
+        match &self.trim {
+            Some(trim) if !self.straddles => {
+                self.parts(outer).iter().map(|part| usize::MAX - usize::from(self.holds(trim, outer, *part))).collect()
+            }
+            _ => Vec::new(),
+        }
     }
 
     fn holds(&self, trim: &Kernel, outer: f64, part: Segment) -> bool {
         values(trim, &self.parameters, &[outer], &[point(part, 0.5)])[0] == 1.0
     }
 
-    /// Sign changes of the mixed kink formulas on one inner line: (which formula, where), ascending.
-    fn splits(&self, outer: f64) -> Vec<(usize, f64)> {
+    /// Sign changes of the mixed kink formulas `considered` on one inner line: (which formula, where), ascending, and
+    /// whether these are all.
+    fn splits(&self, outer: f64, considered: &dyn Fn(usize) -> bool) -> (Vec<(usize, f64)>, bool) {
         let segment = self.limits_at(outer);
         if segment.from >= segment.to {
-            return Vec::new();
+            return (Vec::new(), true);
         }
         let mut found = Vec::new();
-        for (kink, kernel) in self.kinks.iter().enumerate() {
+        let mut settled = true;
+        for (index, kernel) in self.kinks.iter().enumerate().filter(|(index, _)| considered(*index)) {
             let mut f = |x: &[f64]| values(kernel, &self.parameters, &vec![outer; x.len()], x);
-            found.extend(sign_changes(segment, &mut f).into_iter().map(|at| (kink, at)));
+            let changes: SignChanges = sign_changes(segment, &mut f);
+            settled &= changes.settled;
+            found.extend(changes.at.into_iter().map(|at| (index, at)));
         }
         found.sort_by(|a, b| a.1.total_cmp(&b.1));
-        found
+        (found, settled)
     }
 
     /// The inner line split at fixed breaks and at sign changes of kinks; parts that the trim cuts away are still there.
@@ -441,53 +588,61 @@ impl PatchIntegrand {
         }
         let mut breaks = self.breaks.clone();
         breaks.extend(middle_of_infinite(segment));
-        breaks.extend(self.splits(outer).into_iter().map(|(_, at)| at));
+        breaks.extend(self.splits(outer, &|_| true).0.into_iter().map(|(_, at)| at));
         split(segment, &mut breaks)
     }
 
-    /// Outer values at which kinks appear, vanish, cross or leave through a limit, to the last place.
-    fn structure_changes(&self, outer_segment: Segment) -> Vec<f64> {
+    /// Outer values at which kinks appear, vanish, cross or leave through a limit, to the last place. Two or more changes
+    /// close together may leave some unfound; the integrand is then rough.
+    fn structure_changes(&mut self, outer_segment: Segment) -> Vec<f64> {
+        let everything = |_: usize| true;
         let at = |i: usize| point(outer_segment, (i as f64 + 0.5) / STRUCTURE_SAMPLES as f64);
         let mut changes = Vec::new();
-        let mut before = self.arrangement(at(0));
+        let (mut before, settled) = self.arrangement(at(0), &everything);
+        let mut rough = !settled;
+        let mut lines = 0;
+        let all = self.kinks.len().max(1) as u64;
         for i in 1..STRUCTURE_SAMPLES {
-            let here = self.arrangement(at(i));
-            if here != before {
+            let (here, settled) = self.arrangement(at(i), &everything);
+            rough |= !settled;
+            lines += 1;
+            if rough {
+                break;
+            }
+            let mut low = at(i - 1);
+            let mut count = 0;
+            while here != before {
+                if count == CHANGES_TOGETHER || lines > STRUCTURE_LINES {
+                    rough = true;
+                    break;
+                }
+                // Only kinks whose place in the word differs can have moved; the trim belongs to all of them.
+                let differing = differing(&before, &here);
+                let considered = |kink: usize| self.trim.is_some() || differing.contains(&kink);
+                let known = self.arrangement(low, &considered).0;
                 let mut changed = |x: &[f64]| {
-                    x.iter().map(|&x| if self.arrangement(x) == before { 1.0 } else { -1.0 }).collect::<Vec<f64>>()
+                    x.iter()
+                        .map(|&x| if self.arrangement(x, &considered).0 == known { 1.0 } else { -1.0 })
+                        .collect::<Vec<f64>>()
                 };
-                changes.push(bisect(at(i - 1), at(i), 1.0, &mut changed));
+                let change = bisect(low, at(i), 1.0, &mut changed);
+                changes.push(change);
+                count += 1;
+                let share = if self.trim.is_some() { all } else { differing.len() as u64 };
+                lines += 2 + BISECTIONS * share.min(all) / all;
+                low = change + BESIDE * (at(i) - at(i - 1));
+                if low >= at(i) {
+                    break;
+                }
+                before = self.arrangement(low, &everything).0;
             }
             before = here;
         }
+        self.sides.rough |= rough;
         changes
     }
 
-    /// Splits at sharp peaks and near-singular places, with extra splits at a few widths beside them.
-    fn split_at_features(
-        &mut self,
-        found: &[Feature],
-        kernel: &Kernel,
-        outer_segment: Segment,
-        outer_breaks: &mut Vec<f64>,
-    ) {
-        for place in
-            super::sharp::sharp_places(found, kernel, &self.parameters, outer_segment, |outer| self.limits_at(outer))
-        {
-            outer_breaks.extend(place.outer);
-            self.breaks.extend(place.inner);
-        }
-    }
-
-    /// Periods and independence, where splits leave them intact.
-    fn find_structure(
-        &mut self,
-        graph: &Graph,
-        roots: &[ExpressionId],
-        densities: &[ExpressionId],
-        variables: [SymbolId; 2],
-        value_of: &dyn Fn(SymbolId) -> f64,
-    ) {
+    fn find_independence(&mut self, graph: &Graph, roots: &[ExpressionId], variables: [SymbolId; 2]) {
         let depends = |variable| roots.iter().any(|&root| graph.depends_on(root, variable));
         let constant_limits = matches!(self.limits, Limits::Constant(_));
         self.sides.outer_independent = constant_limits
@@ -497,10 +652,24 @@ impl PatchIntegrand {
             let limits = self.limits_at(point(self.sides.outer[0], 0.5));
             limits.from.is_finite() && limits.to.is_finite()
         };
+    }
+
+    /// Periods, where splits leave them intact and no kink breaks the fast convergence on them.
+    fn find_periods(
+        &mut self,
+        graph: &Graph,
+        densities: &[ExpressionId],
+        variables: [SymbolId; 2],
+        value_of: &dyn Fn(SymbolId) -> f64,
+    ) {
+        let constant_limits = matches!(self.limits, Limits::Constant(_));
         let periodic = |variable, segment: Segment| {
             (segment.to - segment.from).is_finite()
                 && is_periodic(graph, densities, variables, variable, segment.to - segment.from, value_of)
         };
+        if self.sides.rough {
+            return;
+        }
         if let [segment] = self.sides.outer[..]
             && constant_limits
         {
@@ -515,6 +684,14 @@ impl PatchIntegrand {
     }
 }
 
+/// Letters of two words without their common beginning and end.
+fn differing(a: &[usize], b: &[usize]) -> Vec<usize> {
+    let start = a.iter().zip(b).take_while(|(x, y)| x == y).count();
+    let (a, b) = (&a[start..], &b[start..]);
+    let end = a.iter().rev().zip(b.iter().rev()).take_while(|(x, y)| x == y).count();
+    a[..a.len() - end].iter().chain(&b[..b.len() - end]).copied().collect()
+}
+
 impl PlaneIntegrand for PatchIntegrand {
     fn components(&self) -> usize {
         self.densities.program().outputs().len()
@@ -522,7 +699,9 @@ impl PlaneIntegrand for PatchIntegrand {
 
     fn inner_segments(&self, outer: f64) -> Vec<Segment> {
         let mut parts = self.parts(outer);
-        if let Some(trim) = &self.trim {
+        if let Some(trim) = &self.trim
+            && !self.straddles
+        {
             parts.retain(|part| self.holds(trim, outer, *part));
         }
         parts
@@ -537,12 +716,24 @@ impl PlaneIntegrand for PatchIntegrand {
         };
         let line =
             SEARCH_EVALUATIONS * self.kinks.iter().map(own).sum::<u64>() + self.trim.as_ref().map_or(0, own) + limits;
-        own(&self.densities) + line / EVALUATIONS_PER_LINE + 1
+        // A call for one point costs as much as one for some tens.
+        let calls = if self.sides.inner_independent { SINGLE_CALL } else { 1 };
+        calls * own(&self.densities) + line / EVALUATIONS_PER_LINE + 1
     }
 
     fn evaluate(&self, outer: f64, inner: &[f64], out: &mut [f64]) {
         let outers = vec![outer; inner.len()];
         self.densities.evaluate(&self.parameters, &outers, inner, out);
+        if let Some(trim) = &self.trim
+            && self.straddles
+        {
+            let kept = values(trim, &self.parameters, &outers, inner);
+            for (i, _) in kept.iter().enumerate().filter(|(_, kept)| **kept != 1.0) {
+                for k in 0..self.components() {
+                    out[k * inner.len() + i] = 0.0;
+                }
+            }
+        }
         let [outer_range, inner_range] = self.decayed;
         let everywhere = |range: Segment| range.from.is_infinite() && range.to.is_infinite();
         if everywhere(outer_range) && everywhere(inner_range) {

@@ -4,7 +4,7 @@ use super::bounded::Bounded;
 use super::error::{IntegralError, Progress};
 use super::functionals::{Pivot, combine, densities};
 use super::outcome::Settings;
-use super::patch_integrand::Question;
+use super::patch_integrand::{PatchIntegrand, Question};
 use crate::expression::{ExpressionId, Graph, SymbolId, differentiate, evaluate};
 use crate::geometry::{Surface, at_point};
 use crate::language::{Bindings, Bound, Functional, FunctionalId, Model, Patch, PatchId};
@@ -60,6 +60,9 @@ const PASS_WORK: u64 = 2_500_000_000;
 
 /// Default work of a whole run: a few hard patches have [`PASS_WORK`] each, many hard ones share what is left.
 pub(super) const RUN_WORK: u64 = 4 * PASS_WORK;
+
+/// Work for finding kinks and sharp places of one patch at least, however many patches there are.
+const LEAST_PREPARATION: u64 = 20_000_000;
 
 /// Default evaluations of a pass at most, whatever they cost.
 const MOST_EVALUATIONS: u64 = 20_000_000;
@@ -197,8 +200,13 @@ impl Run<'_> {
             ));
         }
         let question = Question { patch, densities: &pass.densities, trim, bindings: &self.bindings };
-        let integrand = question.prepare(&mut self.graph)?;
-        let work = integrand.work();
+        let budget = |integrand: &PatchIntegrand| {
+            let default = || default_evaluations(integrand.work(), self.work_left.get());
+            self.settings.evaluations.unwrap_or_else(default)
+        };
+        let integrand =
+            question.prepare(&mut self.graph, &budget, (self.work_left.get() / 8).max(LEAST_PREPARATION))?;
+        let (work, budget) = (integrand.work(), budget(&integrand));
         let wanted = pass.densities.len() - pass.sensitivities.len();
         let tolerance = |k: usize, value: f64, magnitude: f64| {
             // Integrals that only carry errors need two digits.
@@ -208,10 +216,16 @@ impl Run<'_> {
             self.progress.evaluations(self.done.get() + evaluations);
             !self.progress.cancelled()
         };
-        let budget = self.settings.evaluations.unwrap_or_else(|| default_evaluations(work, self.work_left.get()));
-        let integral = integrate(&integrand, &integrand.sides, &tolerance, budget, &keep_going)
+        let mut integral = integrate(&integrand, &integrand.sides, &tolerance, budget, &keep_going)
             .map_err(|failure| failure_message(&question, &self.graph, failure))?;
-        self.work_left.set(self.work_left.get().saturating_sub(work.saturating_mul(integral.evaluations)));
+        for (k, &unsplit) in integrand.unsplit.iter().enumerate() {
+            integral.errors[k] += unsplit;
+            if integral.errors[k] > tolerance(k, integral.values[k], integral.magnitudes[k]) && unsplit > 0.0 {
+                integral.limit = integral.limit.or(Some(Limit::Evaluations));
+            }
+        }
+        self.work_left
+            .set(self.work_left.get().saturating_sub(work.saturating_mul(integral.evaluations) + integrand.prepared));
         Ok(integral)
     }
 

@@ -9,8 +9,10 @@ use super::structure::Feature;
 use crate::kernel::Kernel;
 use crate::quadrature::Segment;
 
-/// Values at which lines should be split for one sharp place.
+/// A sharp place: where it is, how far it reaches, and the values at which lines should be split for it.
 pub(super) struct SharpPlace {
+    pub(super) at: [f64; 2],
+    pub(super) extent: [f64; 2],
     pub(super) outer: Vec<f64>,
     pub(super) inner: Vec<f64>,
 }
@@ -30,39 +32,30 @@ const SMALL_FRACTION: f64 = 0.02;
 /// A peak wider than this fraction of the line needs no splits.
 const WIDE: f64 = 0.1;
 
-/// Places where a formula of `found` (the outputs of `kernel`, in order) makes the integrand sharp.
+/// Places where the formula of `feature` (computed by `kernel`) makes the integrand sharp.
 pub(super) fn sharp_places(
-    found: &[Feature],
+    feature: Feature,
     kernel: &Kernel,
     parameters: &[f64],
     outer: Segment,
-    limits_at: impl Fn(f64) -> Segment,
+    limits_at: &impl Fn(f64) -> Segment,
 ) -> Vec<SharpPlace> {
-    let grid = Grid::new(kernel, parameters, outer, &limits_at);
-    let mut places = Vec::new();
-    for (index, feature) in found.iter().enumerate() {
-        let search = Search { kernel, parameters, index, outer, limits_at: &limits_at, feature: *feature };
-        let surveyed = grid.scores(index, *feature);
-        let sizes: Vec<f64> = surveyed.iter().copied().filter(|score| score.is_finite()).collect();
-        let (Some(best), Some(worst)) =
-            (sizes.iter().copied().reduce(f64::max), sizes.iter().copied().reduce(f64::min))
-        else {
-            continue;
-        };
-        let worth_it = match feature {
-            Feature::Large(_) | Feature::Step(_) => best - worst > PEAK_EXPONENT_RANGE,
-            Feature::Small(_) => worst < best,
-        };
-        if !worth_it {
-            continue;
-        }
-        let typical = median(sizes);
-        for start in grid.peaks(&surveyed) {
-            let Some(place) = search.follow(start, typical) else { continue };
-            places.push(place);
-        }
+    let search = Search { kernel, parameters, outer, limits_at, feature };
+    let surveyed = search.survey();
+    let sizes: Vec<f64> = surveyed.iter().copied().filter(|score| score.is_finite()).collect();
+    let (Some(best), Some(worst)) = (sizes.iter().copied().reduce(f64::max), sizes.iter().copied().reduce(f64::min))
+    else {
+        return Vec::new();
+    };
+    let worth_it = match feature {
+        Feature::Large(_) | Feature::Step(_) => best - worst > PEAK_EXPONENT_RANGE,
+        Feature::Small(_) => worst < best,
+    };
+    if !worth_it {
+        return Vec::new();
     }
-    places
+    let typical = median(sizes);
+    peaks(&surveyed).into_iter().filter_map(|start| search.follow(start, typical)).collect()
 }
 
 fn median(mut values: Vec<f64>) -> f64 {
@@ -70,57 +63,27 @@ fn median(mut values: Vec<f64>) -> f64 {
     values[values.len() / 2]
 }
 
-/// All formulas on a grid of fractions of the region.
-struct Grid {
-    values: Vec<f64>,
-}
-
 fn fraction(i: usize) -> f64 {
     (i as f64 + 0.5) / SURVEY as f64
 }
 
-impl Grid {
-    fn new(kernel: &Kernel, parameters: &[f64], outer: Segment, limits_at: &impl Fn(f64) -> Segment) -> Self {
-        let mut outers = Vec::with_capacity(SURVEY * SURVEY);
-        let mut inners = Vec::with_capacity(SURVEY * SURVEY);
-        for i in 0..SURVEY {
-            let at = point(outer, fraction(i));
-            let limits = limits_at(at);
-            for j in 0..SURVEY {
-                outers.push(at);
-                inners.push(point(limits, fraction(j)));
+/// Grid points that are at least as large as their neighbours, largest first, as fractions.
+fn peaks(scores: &[f64]) -> Vec<[f64; 2]> {
+    let at = |i: usize, j: usize| scores[i * SURVEY + j];
+    let mut peaks: Vec<(f64, [f64; 2])> = Vec::new();
+    for i in 0..SURVEY {
+        for j in 0..SURVEY {
+            let here = at(i, j);
+            let near = |range: usize| range.saturating_sub(1)..(range + 2).min(SURVEY);
+            let highest = here.is_finite() && near(i).all(|a| near(j).all(|b| at(a, b).is_nan() || at(a, b) <= here));
+            if highest {
+                peaks.push((here, [fraction(i), fraction(j)]));
             }
         }
-        let mut values = vec![0.0; kernel.program().outputs().len() * outers.len()];
-        kernel.evaluate(parameters, &outers, &inners, &mut values);
-        Self { values }
     }
-
-    /// What is to be made large: an exponent, or minus the size of a divisor.
-    fn scores(&self, index: usize, feature: Feature) -> Vec<f64> {
-        let size = SURVEY * SURVEY;
-        self.values[index * size..(index + 1) * size].iter().map(|&value| score(value, feature)).collect()
-    }
-
-    /// Grid points that are at least as large as their neighbours, largest first, as fractions.
-    fn peaks(&self, scores: &[f64]) -> Vec<[f64; 2]> {
-        let at = |i: usize, j: usize| scores[i * SURVEY + j];
-        let mut peaks: Vec<(f64, [f64; 2])> = Vec::new();
-        for i in 0..SURVEY {
-            for j in 0..SURVEY {
-                let here = at(i, j);
-                let near = |range: usize| range.saturating_sub(1)..(range + 2).min(SURVEY);
-                let highest =
-                    here.is_finite() && near(i).all(|a| near(j).all(|b| at(a, b).is_nan() || at(a, b) <= here));
-                if highest {
-                    peaks.push((here, [fraction(i), fraction(j)]));
-                }
-            }
-        }
-        peaks.sort_by(|a, b| b.0.total_cmp(&a.0));
-        peaks.truncate(CANDIDATES);
-        peaks.into_iter().map(|(_, place)| place).collect()
-    }
+    peaks.sort_by(|a, b| b.0.total_cmp(&a.0));
+    peaks.truncate(CANDIDATES);
+    peaks.into_iter().map(|(_, place)| place).collect()
 }
 
 fn score(value: f64, feature: Feature) -> f64 {
@@ -133,7 +96,6 @@ fn score(value: f64, feature: Feature) -> f64 {
 struct Search<'a, L> {
     kernel: &'a Kernel,
     parameters: &'a [f64],
-    index: usize,
     outer: Segment,
     limits_at: &'a L,
     feature: Feature,
@@ -145,18 +107,26 @@ impl<L: Fn(f64) -> Segment> Search<'_, L> {
         [outer, point((self.limits_at)(outer), fractions[1])]
     }
 
-    fn score(&self, fractions: [f64; 2]) -> f64 {
-        let [outer, inner] = self.coordinates(fractions);
-        let mut out = vec![0.0; self.kernel.program().outputs().len()];
-        self.kernel.evaluate(self.parameters, &[outer], &[inner], &mut out);
-        let value = score(out[self.index], self.feature);
-        if value.is_nan() { f64::NEG_INFINITY } else { value }
+    /// What is to be made large, an exponent or minus the size of a divisor, at each of `places` (fractions).
+    fn scores(&self, places: &[[f64; 2]]) -> Vec<f64> {
+        let (outers, inners): (Vec<f64>, Vec<f64>) =
+            places.iter().map(|&place| self.coordinates(place)).map(|[outer, inner]| (outer, inner)).unzip();
+        let mut out = vec![0.0; places.len()];
+        self.kernel.evaluate(self.parameters, &outers, &inners, &mut out);
+        out.into_iter().map(|value| score(value, self.feature)).collect()
+    }
+
+    /// The formula on a grid over the region.
+    fn survey(&self) -> Vec<f64> {
+        let places: Vec<[f64; 2]> =
+            (0..SURVEY).flat_map(|i| (0..SURVEY).map(move |j| [fraction(i), fraction(j)])).collect();
+        self.scores(&places)
     }
 
     /// Compass search from a grid point to the extreme value, then its width in both variables.
     fn follow(&self, start: [f64; 2], typical: f64) -> Option<SharpPlace> {
         let mut here = start;
-        let mut best = self.score(here);
+        let mut best = self.scores(&[here])[0];
         let mut step = 0.5 / SURVEY as f64;
         for _ in 0..400 {
             let candidates = [
@@ -169,10 +139,13 @@ impl<L: Fn(f64) -> Segment> Search<'_, L> {
                 [-step, step],
                 [-step, -step],
             ];
-            let next = candidates
+            let places =
+                candidates.map(|[a, b]| [here[0] + a, here[1] + b].map(|fraction| fraction.clamp(1e-9, 1.0 - 1e-9)));
+            let next = self
+                .scores(&places)
                 .into_iter()
-                .map(|[a, b]| [(here[0] + a).clamp(1e-9, 1.0 - 1e-9), (here[1] + b).clamp(1e-9, 1.0 - 1e-9)])
-                .map(|place| (self.score(place), place))
+                .map(|value| if value.is_nan() { f64::NEG_INFINITY } else { value })
+                .zip(places)
                 .max_by(|a, b| a.0.total_cmp(&b.0))?;
             if next.0 > best {
                 (best, here) = next;
@@ -189,8 +162,15 @@ impl<L: Fn(f64) -> Segment> Search<'_, L> {
         }
         let widths = [0, 1].map(|axis| self.width(here, axis, best, typical));
         let place = self.coordinates(here);
-        let mut found = SharpPlace { outer: Vec::new(), inner: Vec::new() };
+        let mut found = SharpPlace { at: place, extent: [0.0; 2], outer: Vec::new(), inner: Vec::new() };
         for axis in 0..2 {
+            let reach = widths[axis].map_or(1.0, |width| 6.0 * width);
+            let [low, high] = [-reach, reach].map(|shift| {
+                let mut fractions = here;
+                fractions[axis] = (fractions[axis] + shift).clamp(1e-9, 1.0 - 1e-9);
+                self.coordinates(fractions)[axis]
+            });
+            found.extent[axis] = high - low;
             let Some(width) = widths[axis] else { continue };
             let splits = if axis == 0 { &mut found.outer } else { &mut found.inner };
             for multiple in [-6.0, -1.5, 0.0, 1.5, 6.0] {
@@ -220,7 +200,8 @@ impl<L: Fn(f64) -> Segment> Search<'_, L> {
             let moved = [distance, -distance].map(|shift| {
                 let mut fractions = here;
                 fractions[axis] += shift;
-                if fractions[axis] <= 0.0 || fractions[axis] >= 1.0 { f64::INFINITY } else { self.score(fractions) }
+                let value = self.scores(&[fractions])[0];
+                if fractions[axis] <= 0.0 || fractions[axis] >= 1.0 || value.is_nan() { f64::INFINITY } else { value }
             });
             if moved.iter().any(|value| value.is_finite() && best - value > change) {
                 return Some(distance);

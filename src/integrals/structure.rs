@@ -5,34 +5,55 @@
 //! which comes from differences between rules.
 
 use crate::expression::{BinaryFunction, ExpressionId, Function, Graph, Node, SymbolId, evaluate};
+use rustc_hash::FxHashSet;
 
-/// Kinks and features that are followed; a formula with more is left to the adaptive rule.
-const MOST: usize = 24;
+/// A formula whose zero set holds kinks or jumps.
+#[derive(Clone, Copy, PartialEq, Debug)]
+pub(super) struct Kink {
+    pub(super) formula: ExpressionId,
+    /// Whether it depends on each variable; on one of them at least.
+    pub(super) along: [bool; 2],
+}
 
-/// Formulas whose zero sets hold the kinks and jumps of `roots`: arguments of abs and sign, differences of the two sides
-/// of min, max and comparisons. Only formulas that depend on a variable are returned.
-pub(super) fn kink_formulas(graph: &mut Graph, roots: &[ExpressionId], variables: [SymbolId; 2]) -> Vec<ExpressionId> {
-    let mut formulas = Vec::new();
-    for id in graph.reachable(roots) {
-        let formula = match graph.node(id) {
-            Node::Call(Function::Abs | Function::Sign, a) => a,
+/// The kinks and jumps of `roots`: arguments of abs and sign, differences of the two sides of min, max and comparisons.
+pub(super) fn kinks(graph: &mut Graph, roots: &[ExpressionId], variables: [SymbolId; 2]) -> Vec<Kink> {
+    let order = graph.reachable(roots);
+    let along = dependence(graph, &order, variables);
+    let mut known = FxHashSet::default();
+    let mut found = Vec::new();
+    for id in order {
+        let (formula, along) = match graph.node(id) {
+            Node::Call(Function::Abs | Function::Sign, a) => (a, along[a.index()]),
             Node::Call2(BinaryFunction::Min | BinaryFunction::Max, a, b) | Node::Less(a, b) | Node::LessEqual(a, b) => {
-                graph.subtract(a, b)
+                let (first, second) = (along[a.index()], along[b.index()]);
+                (graph.subtract(a, b), [first[0] || second[0], first[1] || second[1]])
             }
             _ => continue,
         };
-        if !formulas.contains(&formula) && variables.iter().any(|&variable| graph.depends_on(formula, variable)) {
-            formulas.push(formula);
-        }
-        if formulas.len() > MOST {
-            return Vec::new();
+        if along != [false, false] && known.insert(formula) {
+            found.push(Kink { formula, along });
         }
     }
-    formulas
+    found
+}
+
+/// Whether each node of `order`, operands before users, depends on each variable; by the index of the node.
+fn dependence(graph: &Graph, order: &[ExpressionId], variables: [SymbolId; 2]) -> Vec<[bool; 2]> {
+    let mut along = vec![[false; 2]; order.last().map_or(0, |last| last.index() + 1)];
+    for &id in order {
+        along[id.index()] = match graph.node(id) {
+            Node::Symbol(symbol) => variables.map(|variable| variable == symbol),
+            node => node.children().as_slice().iter().fold([false; 2], |all, child| {
+                let own = along[child.index()];
+                [all[0] || own[0], all[1] || own[1]]
+            }),
+        };
+    }
+    along
 }
 
 /// A formula whose extreme values mark a place that needs attention.
-#[derive(Clone, Copy, PartialEq, Debug)]
+#[derive(Clone, Copy, PartialEq, Eq, Hash, Debug)]
 pub(super) enum Feature {
     /// Where this is smallest in absolute value, the integrand is nearly singular: divisors, bases of roots and logarithms.
     Small(ExpressionId),
@@ -42,10 +63,20 @@ pub(super) enum Feature {
     Step(ExpressionId),
 }
 
+impl Feature {
+    pub(super) fn formula(self) -> ExpressionId {
+        let (Feature::Small(formula) | Feature::Large(formula) | Feature::Step(formula)) = self;
+        formula
+    }
+}
+
 /// The features of `roots` that depend on a variable.
 pub(super) fn features(graph: &Graph, roots: &[ExpressionId], variables: [SymbolId; 2]) -> Vec<Feature> {
+    let order = graph.reachable(roots);
+    let along = dependence(graph, &order, variables);
+    let mut known = FxHashSet::default();
     let mut found = Vec::new();
-    for id in graph.reachable(roots) {
+    for id in order {
         let feature = match graph.node(id) {
             Node::Call(Function::Exp, a) => Feature::Large(a),
             Node::Call(Function::Tanh | Function::Erf | Function::Erfc | Function::Atan, a) => Feature::Step(a),
@@ -57,14 +88,8 @@ pub(super) fn features(graph: &Graph, roots: &[ExpressionId], variables: [Symbol
             },
             _ => continue,
         };
-        let formula = match feature {
-            Feature::Small(a) | Feature::Large(a) | Feature::Step(a) => a,
-        };
-        if !found.contains(&feature) && variables.iter().any(|&variable| graph.depends_on(formula, variable)) {
+        if along[feature.formula().index()] != [false, false] && known.insert(feature) {
             found.push(feature);
-        }
-        if found.len() > MOST {
-            return Vec::new();
         }
     }
     found
