@@ -2,6 +2,10 @@
 //!
 //! 10,000 cases for each property; `PROPTEST_CASES=1000000 cargo test --test syntax_properties` runs more.
 
+#[path = "support/measure.rs"]
+mod measure;
+
+use measure::{Counting, MOST_SECONDS, bounded};
 use proptest::prelude::*;
 use proptest::sample::{Index, select};
 use quadrel::language::syntax::{Sheet, Statement, Syntax, SyntaxId, SyntaxKind};
@@ -130,8 +134,15 @@ fn is_in_order(text: &str, sheet: &Sheet) -> bool {
     })
 }
 
-/// Reads `text` as a sheet and as a value and checks everything that must hold of the result.
+#[global_allocator]
+static ALLOCATOR: Counting = Counting;
+
+/// Reads `text` as a sheet and as a value and checks everything that must hold of the result, and what it took.
 fn check(text: &str) -> Result<(), TestCaseError> {
+    bounded(&|| text.to_owned(), MOST_SECONDS, || check_reading(text))
+}
+
+fn check_reading(text: &str) -> Result<(), TestCaseError> {
     let source = Source::new("any.sheet", text);
     let (sheet, diagnostics) = parse(&source);
     prop_assert!(is_in_order(text, &sheet));

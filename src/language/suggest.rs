@@ -155,6 +155,10 @@ pub fn nearest<'a>(name: &str, candidates: impl IntoIterator<Item = &'a str>) ->
         }
         let other: Vec<char> = candidate.chars().collect();
         let same_letters = candidate.to_lowercase() == name.to_lowercase();
+        // Each letter too many is an edit at least.
+        if !same_letters && other.len().abs_diff(letters.len()) > allowed {
+            continue;
+        }
         let edits = edits(&letters, &other);
         let rank = if same_letters { (0, edits) } else { (edits, 0) };
         if rank.0 <= allowed && best.is_none_or(|(least, _)| rank < least) {

@@ -8,6 +8,9 @@ use super::values::{Kind, Meaning, Value};
 use super::{Checked, Checker, Reported, State};
 use crate::expression::SymbolId;
 
+/// Errors from which on a name that is not known gets no suggestion: a search through all names for each is slow.
+const MOST_SUGGESTIONS: usize = 50;
+
 impl Checker {
     /// Calls `visit` for every expression below `root`, `root` included.
     fn walk(&self, root: SyntaxId, mut visit: impl FnMut(&SyntaxKind, Span)) {
@@ -255,6 +258,8 @@ impl Checker {
         let error = Diagnostic::error("unknown-name", span, format!("`{name}` is not defined"));
         let hint = if let Some(other) = other_name(name) {
             Some(format!("it is called `{other}` here"))
+        } else if self.diagnostics.len() >= MOST_SUGGESTIONS {
+            None
         } else {
             let locals = self.locals.iter().map(|(name, _)| name.as_str());
             let known = self.by_name.keys().map(String::as_str).chain(locals);
