@@ -221,9 +221,11 @@ fn undefined_and_divergent_integrals_are_refused() {
 #[test]
 fn ribs_that_fall_between_the_nodes() {
     for ribs in [23, 253, 506, 759, 1081] {
-        let plate = format!("s(u, v) = (u, v, 0*u) on u in [0, 1], v in [0, 1]\na = integral(exp(cos(2*pi*{ribs}*x)), s)");
+        let plate =
+            format!("s(u, v) = (u, v, 0*u) on u in [0, 1], v in [0, 1]\na = integral(exp(cos(2*pi*{ribs}*x)), s)");
         holds(&plate, &[1.266_065_877_752_008_4]);
-        let checks = format!("s(u, v) = (u, v, 0*u) on u in [0, 1], v in [0, 1]\na = integral(cos(2*pi*{ribs}*x)^2, s)");
+        let checks =
+            format!("s(u, v) = (u, v, 0*u) on u in [0, 1], v in [0, 1]\na = integral(cos(2*pi*{ribs}*x)^2, s)");
         holds(&checks, &[0.5]);
     }
 }

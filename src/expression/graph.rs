@@ -6,6 +6,7 @@
 use super::function::{BinaryFunction, Function};
 use super::number::Exact;
 use rustc_hash::FxHashMap;
+use std::collections::BinaryHeap;
 
 /// Index of a node in its [`Graph`].
 #[derive(Clone, Copy, PartialEq, Eq, Hash, PartialOrd, Ord, Debug)]
@@ -201,6 +202,11 @@ impl Graph {
     /// Whether the arena holds no node (it never does: 0 is always there).
     pub fn is_empty(&self) -> bool {
         self.nodes.is_empty()
+    }
+
+    /// The nodes from the `first`-th on, in index order: each after its children.
+    pub fn ids_from(&self, first: usize) -> impl Iterator<Item = ExpressionId> + use<> {
+        (first..self.nodes.len()).map(|index| ExpressionId(index as u32))
     }
 
     /// The node at `id`.
@@ -549,6 +555,9 @@ impl Graph {
     /// The nodes that `roots` depend on, themselves included, in evaluation order.
     pub fn reachable(&self, roots: &[ExpressionId]) -> Vec<ExpressionId> {
         let Some(last) = roots.iter().max() else { return Vec::new() };
+        if let Some(order) = self.reachable_few(roots, last.index() / 64) {
+            return order;
+        }
         let mut needed = vec![false; last.index() + 1];
         for root in roots {
             needed[root.index()] = true;
@@ -564,6 +573,28 @@ impl Graph {
         }
         order.reverse();
         order
+    }
+
+    /// [`Graph::reachable`] of formulas that are small beside the graph, in time that does not depend on the graph; `None`
+    /// for more than `limit` nodes. A child has a smaller index than its parent, so the largest index left is complete.
+    fn reachable_few(&self, roots: &[ExpressionId], limit: usize) -> Option<Vec<ExpressionId>> {
+        if roots.len() > limit {
+            return None;
+        }
+        let mut waiting: BinaryHeap<ExpressionId> = roots.iter().copied().collect();
+        let mut order: Vec<ExpressionId> = Vec::new();
+        while let Some(id) = waiting.pop() {
+            if order.last() == Some(&id) {
+                continue;
+            }
+            if order.len() == limit || waiting.len() > 4 * limit {
+                return None;
+            }
+            order.push(id);
+            waiting.extend(self.node(id).children().as_slice());
+        }
+        order.reverse();
+        Some(order)
     }
 
     /// The symbols that `roots` depend on, in index order.

@@ -7,7 +7,8 @@ use super::parse::parse_value;
 use super::suggest::nearest;
 use super::syntax::Span;
 use super::unit::{Dimension, Unit};
-use crate::expression::{ExpressionId, SymbolId, evaluate_one};
+use crate::expression::{ExpressionId, SymbolId, evaluate};
+use rustc_hash::FxHashMap;
 
 /// Values of symbols, in coherent SI units.
 #[derive(Clone, PartialEq, Debug)]
@@ -49,13 +50,16 @@ impl Model {
     /// is false, and limits that cross for these values.
     pub fn bind(&self, settings: &[(String, String)]) -> Result<Bindings, SheetErrors> {
         let mut bindings = Bindings { values: vec![f64::NAN; self.graph.symbol_count()] };
-        for parameter in &self.parameters {
-            bindings.set(parameter.symbol, evaluate_one(&self.graph, parameter.default, |_| f64::NAN));
+        let defaults: Vec<ExpressionId> = self.parameters.iter().map(|parameter| parameter.default).collect();
+        let defaults = evaluate(&self.graph, &defaults, |_| f64::NAN);
+        for (parameter, value) in self.parameters.iter().zip(defaults) {
+            bindings.set(parameter.symbol, value);
         }
         for (name, text) in settings {
             let (parameter, value) = self.setting(name, text)?;
             bindings.set(parameter.symbol, value);
         }
+        let known = self.checked_values(&bindings);
         let mut diagnostics = Vec::new();
         for parameter in &self.parameters {
             let value = bindings.value(parameter.symbol);
@@ -67,16 +71,16 @@ impl Model {
                 ));
             } else if let Some(range) = &parameter.range {
                 let shown = in_unit(value, parameter.unit.as_ref());
-                diagnostics.extend(self.outside(&parameter.name, value, &shown, range, parameter.span, &bindings));
+                diagnostics.extend(self.outside(&parameter.name, value, &shown, range, parameter.span, &known));
             }
         }
         for claim in &self.claims {
-            let value = self.evaluate(claim.value, &bindings);
+            let value = known[&claim.value];
             let shown = format!("{value}");
-            diagnostics.extend(self.outside(&claim.name, value, &shown, &claim.range, claim.range.span, &bindings));
+            diagnostics.extend(self.outside(&claim.name, value, &shown, &claim.range, claim.range.span, &known));
         }
         for assumption in &self.assumptions {
-            if self.evaluate(assumption.condition, &bindings) != 1.0 {
+            if known[&assumption.condition] != 1.0 {
                 diagnostics.push(
                     Diagnostic::error(
                         "assumption-false",
@@ -89,7 +93,7 @@ impl Model {
         }
         for patch in &self.patches {
             for interval in &patch.intervals {
-                if let Some(diagnostic) = self.crossed(interval, &bindings)
+                if let Some(diagnostic) = crossed(interval, &known)
                     && !diagnostics.contains(&diagnostic)
                 {
                     diagnostics.push(diagnostic);
@@ -103,8 +107,22 @@ impl Model {
         }
     }
 
-    fn evaluate(&self, formula: ExpressionId, bindings: &Bindings) -> f64 {
-        evaluate_one(&self.graph, formula, |symbol| bindings.value(symbol))
+    /// Values of all formulas that are looked at before anything is integrated, in one pass over the graph.
+    fn checked_values(&self, bindings: &Bindings) -> FxHashMap<ExpressionId, f64> {
+        let ranges = self.parameters.iter().filter_map(|parameter| parameter.range.as_ref());
+        let intervals = self.patches.iter().flat_map(|patch| &patch.intervals);
+        let ends = ranges.chain(self.claims.iter().map(|claim| &claim.range)).chain(intervals);
+        let mut formulas: Vec<ExpressionId> = ends
+            .flat_map(|interval| [interval.lower, interval.upper])
+            .filter_map(|bound| match bound {
+                Bound::Finite(formula) => Some(formula),
+                Bound::MinusInfinity | Bound::PlusInfinity => None,
+            })
+            .collect();
+        formulas.extend(self.claims.iter().map(|claim| claim.value));
+        formulas.extend(self.assumptions.iter().map(|assumption| assumption.condition));
+        let values = evaluate(&self.graph, &formulas, |symbol| bindings.value(symbol));
+        formulas.into_iter().zip(values).collect()
     }
 
     /// One `--set name=text`.
@@ -174,10 +192,9 @@ impl Model {
         shown: &str,
         range: &Interval,
         span: Span,
-        bindings: &Bindings,
+        known: &FxHashMap<ExpressionId, f64>,
     ) -> Option<Diagnostic> {
-        let number = |bound: Bound| self.bound_value(bound, bindings);
-        let (lower, upper) = (number(range.lower), number(range.upper));
+        let (lower, upper) = (bound_value(range.lower, known), bound_value(range.upper, known));
         let above = if range.lower_closed { value >= lower } else { value > lower };
         let below = if range.upper_closed { value <= upper } else { value < upper };
         if above && below {
@@ -189,23 +206,23 @@ impl Model {
                 .with_hint("change the value, or the range"),
         )
     }
+}
 
-    fn bound_value(&self, bound: Bound, bindings: &Bindings) -> f64 {
-        match bound {
-            Bound::Finite(formula) => self.evaluate(formula, bindings),
-            Bound::MinusInfinity => f64::NEG_INFINITY,
-            Bound::PlusInfinity => f64::INFINITY,
-        }
+fn bound_value(bound: Bound, known: &FxHashMap<ExpressionId, f64>) -> f64 {
+    match bound {
+        Bound::Finite(formula) => known[&formula],
+        Bound::MinusInfinity => f64::NEG_INFINITY,
+        Bound::PlusInfinity => f64::INFINITY,
     }
+}
 
-    /// An error if limits that depend on no variable cross.
-    fn crossed(&self, interval: &Interval, bindings: &Bindings) -> Option<Diagnostic> {
-        let (lower, upper) = (self.bound_value(interval.lower, bindings), self.bound_value(interval.upper, bindings));
-        (lower > upper).then(|| {
-            Diagnostic::error("limits-cross", interval.span, format!("the limits cross here: {lower} > {upper}"))
-                .with_hint("write the smaller end first")
-        })
-    }
+/// An error if limits that depend on no variable cross.
+fn crossed(interval: &Interval, known: &FxHashMap<ExpressionId, f64>) -> Option<Diagnostic> {
+    let (lower, upper) = (bound_value(interval.lower, known), bound_value(interval.upper, known));
+    (lower > upper).then(|| {
+        Diagnostic::error("limits-cross", interval.span, format!("the limits cross here: {lower} > {upper}"))
+            .with_hint("write the smaller end first")
+    })
 }
 
 /// A value in the unit it was written with.

@@ -131,7 +131,7 @@ pub struct Patch {
 }
 
 /// An integer combination of patches.
-#[derive(Clone, PartialEq, Debug, Default)]
+#[derive(Clone, PartialEq, Eq, Hash, Debug, Default)]
 pub struct Chain {
     /// Patches with their coefficients, collected (each patch once, no zero), in the order of first appearance.
     pub terms: Vec<(i64, PatchId)>,
@@ -170,7 +170,7 @@ pub struct Functional {
 }
 
 /// Kinds of questions. Formulas are over parameters, patch variables, [`SurfaceSymbols`] and earlier results.
-#[derive(Clone, PartialEq, Debug)]
+#[derive(Clone, PartialEq, Eq, Hash, Debug)]
 pub enum FunctionalKind {
     /// Area, with |coefficient|.
     Area,

@@ -155,7 +155,7 @@ pub fn nearest<'a>(name: &str, candidates: impl IntoIterator<Item = &'a str>) ->
         }
         let other: Vec<char> = candidate.chars().collect();
         let same_letters = candidate.to_lowercase() == name.to_lowercase();
-        // Each letter too many is an edit at least.
+        // Each letter too many is an edit.
         if !same_letters && other.len().abs_diff(letters.len()) > allowed {
             continue;
         }

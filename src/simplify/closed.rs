@@ -379,8 +379,8 @@ impl<'a> Elements<'a> {
             // P is not negative, so a negative unit belongs to an odd factor.
             let root = if factored.unit.is_negative() { root.negated() } else { root };
             let root = self.ring().canonical(&root)?;
-            let size = 3 * root.terms().len()
-                + outside.factors.iter().map(|(factor, _)| factor.terms().len()).sum::<usize>();
+            let size =
+                3 * root.terms().len() + outside.factors.iter().map(|(factor, _)| factor.terms().len()).sum::<usize>();
             if !found.iter().any(|(_, known, r)| *known == outside && *r == root) {
                 found.push((size, outside, root));
             }
@@ -411,12 +411,8 @@ impl<'a> Elements<'a> {
 impl Elements<'_> {
     /// Everything but the element, which stands below the bar of normal and curvatures.
     pub fn quantities(&mut self, element: &Rooted) -> Step<Vec<(Quantity, Rooted)>> {
-        let plain = |outside: Fraction| Rooted {
-            outside,
-            bars: Vec::new(),
-            root: Polynomial::one(),
-            below: Polynomial::one(),
-        };
+        let plain =
+            |outside: Fraction| Rooted { outside, bars: Vec::new(), root: Polynomial::one(), below: Polynomial::one() };
         let mut values = Vec::new();
         for axis in 0..3 {
             values.push((Quantity::TangentU(axis), plain(self.tangents[0][axis].clone())));
@@ -581,7 +577,10 @@ impl Printer<'_> {
                     if minus && exponent % 2 != 0 {
                         negative = !negative;
                     }
-                    if negative && exponent % 2 != 0 && let Some(turned) = flipped(&form) {
+                    if negative
+                        && exponent % 2 != 0
+                        && let Some(turned) = flipped(&form)
+                    {
                         form = turned;
                         negative = false;
                     }

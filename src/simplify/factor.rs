@@ -125,7 +125,8 @@ pub(super) fn square_root(polynomial: &Polynomial) -> Step<Option<Polynomial>> {
 
 /// A square has even degrees and a square as its leading coefficient.
 fn may_be_square(polynomial: &Polynomial) -> bool {
-    polynomial.generators().iter().all(|&g| polynomial.degree(g) % 2 == 0) && integer_root(&polynomial.leading()).is_some()
+    polynomial.generators().iter().all(|&g| polynomial.degree(g) % 2 == 0)
+        && integer_root(&polynomial.leading()).is_some()
 }
 
 /// The square root of a positive integer that is a square.
@@ -180,7 +181,9 @@ fn doubled(polynomial: &Polynomial, generator: usize) -> Step<Polynomial> {
 fn rational_root(polynomial: &Polynomial, generator: usize) -> Step<Option<Polynomial>> {
     let coefficients = polynomial.coefficients(generator);
     let number = |place: Option<&Polynomial>| place.and_then(Polynomial::as_constant).cloned();
-    let (Some(last), Some(first)) = (number(coefficients.first()), number(coefficients.last())) else { return Ok(None) };
+    let (Some(last), Some(first)) = (number(coefficients.first()), number(coefficients.last())) else {
+        return Ok(None);
+    };
     for p in divisors(&last) {
         for q in divisors(&first) {
             if IBig::from((&p).gcd(&q)) != IBig::ONE {

@@ -222,8 +222,7 @@ impl Form {
                 Node::Number(number) => Form::exact(graph.number_value(number)),
                 Node::Pi => Form::Pi,
                 Node::Symbol(symbol) => {
-                    let kind =
-                        if variables.contains(&symbol) { NameKind::Variable } else { NameKind::Parameter };
+                    let kind = if variables.contains(&symbol) { NameKind::Variable } else { NameKind::Parameter };
                     Form::Name(graph.symbol_name(symbol).to_owned(), kind)
                 }
                 Node::Negate(a) => Form::Negate(Box::new(get(a))),
@@ -297,7 +296,9 @@ impl Form {
 fn call_name(function: Function) -> (String, Option<u8>) {
     match function {
         Function::BesselJ(n) | Function::BesselY(n) | Function::Polygamma(n) => (function.name().to_owned(), Some(n)),
-        Function::EllipticK(n) | Function::EllipticE(n) if n > 0 => (format!("{}_derivative", function.name()), Some(n)),
+        Function::EllipticK(n) | Function::EllipticE(n) if n > 0 => {
+            (format!("{}_derivative", function.name()), Some(n))
+        }
         _ => (function.name().to_owned(), None),
     }
 }

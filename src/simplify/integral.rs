@@ -74,7 +74,11 @@ impl Integrator<'_> {
 
     /// Sums of u^n times powers of one sine, cosine, hyperbolic function or exponential of a linear argument.
     fn polynomial(&self, integrand: &Fraction) -> Step<Option<Fraction>> {
-        if integrand.denominator.iter().any(|(factor, _)| self.polynomial_depends(factor) && !self.is_exponential(factor)) {
+        if integrand
+            .denominator
+            .iter()
+            .any(|(factor, _)| self.polynomial_depends(factor) && !self.is_exponential(factor))
+        {
             return Ok(None);
         }
         // Negative powers of exponentials stay below; everything else below is constant.
@@ -137,7 +141,8 @@ impl Integrator<'_> {
         let Some(own) = own.filter(|_| power > 0) else { return Ok(Some(inner)) };
         // int u^n g = u^n G - n int u^(n-1) G
         let outer = Fraction::whole(Polynomial::generator(own).power(u32::from(power))?);
-        let lower = Fraction::whole(Polynomial::generator(own).power(u32::from(power) - 1)?.scaled(&IBig::from(power))?);
+        let lower =
+            Fraction::whole(Polynomial::generator(own).power(u32::from(power) - 1)?.scaled(&IBig::from(power))?);
         let rest = self.ring.multiply(&lower, &inner)?;
         let Some(rest) = self.term(&rest, depth + 1)? else { return Ok(None) };
         Ok(Some(self.ring.subtract(&self.ring.multiply(&outer, &inner)?, &rest)?))
@@ -232,7 +237,8 @@ impl Integrator<'_> {
     fn power_of_root(&self, integrand: &Fraction) -> Step<Option<Fraction>> {
         let Some((place, radicand, above)) = self.single_root(integrand) else { return Ok(None) };
         let root = Fraction::whole(Polynomial::generator(place));
-        let bare = if above { self.ring.divide(integrand, &root)? } else { Some(self.ring.multiply(integrand, &root)?) };
+        let bare =
+            if above { self.ring.divide(integrand, &root)? } else { Some(self.ring.multiply(integrand, &root)?) };
         let Some(bare) = bare else { return Ok(None) };
         let Some(slope) = self.derivative(&Fraction::whole(radicand.clone()))? else { return Ok(None) };
         let Some(ratio) = self.ring.divide(&bare, &slope)? else { return Ok(None) };
@@ -240,7 +246,10 @@ impl Integrator<'_> {
             return Ok(None);
         }
         let (power, factor) = if above {
-            (self.ring.multiply(&Fraction::whole(radicand), &root)?, Fraction { divisor: IBig::from(3), ..Fraction::whole(Polynomial::integer(2)) })
+            (
+                self.ring.multiply(&Fraction::whole(radicand), &root)?,
+                Fraction { divisor: IBig::from(3), ..Fraction::whole(Polynomial::integer(2)) },
+            )
         } else {
             (root, Fraction::whole(Polynomial::integer(2)))
         };
@@ -287,7 +296,8 @@ impl Integrator<'_> {
         let mut found = Vec::new();
         for (place, kind) in self.ring.generators.iter().enumerate() {
             let usable = matches!(kind, Kind::Symbol(_) | Kind::Sin(_) | Kind::Cos(_) | Kind::Sinh(_) | Kind::Cosh(_));
-            if usable && self.ring.depends_on(place, self.variable, self.graph)
+            if usable
+                && self.ring.depends_on(place, self.variable, self.graph)
                 && let Some(slope) = self.derivative(&Fraction::whole(Polynomial::generator(place)))?
             {
                 found.push((place, slope));
@@ -316,7 +326,8 @@ impl Integrator<'_> {
     fn root_of_quadratic(&self, ring: &mut Ring, integrand: &Fraction) -> Step<Option<Antiderivative>> {
         let Some((place, radicand, above)) = self.single_root(integrand) else { return Ok(None) };
         let root = Fraction::whole(Polynomial::generator(place));
-        let bare = if above { self.ring.divide(integrand, &root)? } else { Some(self.ring.multiply(integrand, &root)?) };
+        let bare =
+            if above { self.ring.divide(integrand, &root)? } else { Some(self.ring.multiply(integrand, &root)?) };
         let Some(bare) = bare else { return Ok(None) };
         for (w, slope) in self.substitutions()? {
             let Some(scale) = self.ring.divide(&bare, &slope)? else { continue };
@@ -335,11 +346,16 @@ impl Integrator<'_> {
             let half = Fraction { divisor: &scale.divisor * IBig::from(2), ..half };
             if above {
                 let plain = ring.multiply(&half, &ring.multiply(&w, &root)?)?;
-                let Some(coefficient) = ring.divide(&ring.multiply(&half, &Fraction::whole(b))?, &root_a)? else { continue };
+                let Some(coefficient) = ring.divide(&ring.multiply(&half, &Fraction::whole(b))?, &root_a)? else {
+                    continue;
+                };
                 return Ok(Some(Antiderivative { plain, functions: vec![(coefficient, function, argument)] }));
             }
             let Some(coefficient) = ring.divide(&scale, &root_a)? else { continue };
-            return Ok(Some(Antiderivative { plain: Fraction::zero(), functions: vec![(coefficient, function, argument)] }));
+            return Ok(Some(Antiderivative {
+                plain: Fraction::zero(),
+                functions: vec![(coefficient, function, argument)],
+            }));
         }
         Ok(None)
     }
@@ -382,11 +398,16 @@ impl Integrator<'_> {
             let b = Fraction::whole(b);
             if !squared {
                 let Some(coefficient) = ring.divide(&constant, &roots)? else { continue };
-                return Ok(Some(Antiderivative { plain: Fraction::zero(), functions: vec![(coefficient, function, argument)] }));
+                return Ok(Some(Antiderivative {
+                    plain: Fraction::zero(),
+                    functions: vec![(coefficient, function, argument)],
+                }));
             }
             let quadratic = Fraction::whole(if turned { quadratic.negated() } else { quadratic });
             let two_b = ring.multiply(&Fraction::whole(Polynomial::integer(2)), &b)?;
-            let Some(first) = ring.divide(&ring.multiply(&constant, &w)?, &ring.multiply(&two_b, &quadratic)?)? else { continue };
+            let Some(first) = ring.divide(&ring.multiply(&constant, &w)?, &ring.multiply(&two_b, &quadratic)?)? else {
+                continue;
+            };
             let Some(coefficient) = ring.divide(&constant, &ring.multiply(&two_b, &roots)?)? else { continue };
             return Ok(Some(Antiderivative { plain: first, functions: vec![(coefficient, function, argument)] }));
         }

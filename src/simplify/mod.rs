@@ -6,8 +6,8 @@
 
 mod certificate;
 mod closed;
-mod facts;
 mod factor;
+mod facts;
 mod form;
 mod forms;
 mod fraction;
@@ -24,6 +24,6 @@ mod ring;
 mod sign;
 mod total;
 
+pub use facts::Fact;
 pub use form::{Form, NameKind};
 pub use forms::{ClosedForms, Quantity, closed_forms};
-pub use facts::Fact;

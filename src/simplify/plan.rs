@@ -141,7 +141,9 @@ impl<'a> Printer<'a> {
             Kind::Cosh(angle) => call("cosh", self.argument(angle.0)?),
             Kind::Exp(angle) => call("exp", self.argument(angle.0)?),
             Kind::Root(index, radicand) => {
-                if index == 2 && let Some(inner) = super::factor::square_root(&radicand)? {
+                if index == 2
+                    && let Some(inner) = super::factor::square_root(&radicand)?
+                {
                     call("abs", self.polynomial(&inner)?)
                 } else {
                     let inner = self.polynomial(&radicand)?;
@@ -344,7 +346,9 @@ impl<'a> Printer<'a> {
                 if let Some(one) = rewritten(laurent) {
                     result.push(one);
                 }
-                if below == pair.cosine && let Some(next) = rewritten(&all) {
+                if below == pair.cosine
+                    && let Some(next) = rewritten(&all)
+                {
                     all = next;
                 }
             }
@@ -458,9 +462,8 @@ impl<'a> Printer<'a> {
         if laurent.len() < 3 {
             return Ok(plans);
         }
-        let used: Vec<usize> = (0..self.ring.generators.len())
-            .filter(|&g| laurent.terms.iter().any(|(e, _)| e[g] != 0))
-            .collect();
+        let used: Vec<usize> =
+            (0..self.ring.generators.len()).filter(|&g| laurent.terms.iter().any(|(e, _)| e[g] != 0)).collect();
         for &generator in &used {
             plans.extend(grouped(laurent, |e| {
                 let mut key = [0; GENERATORS];
@@ -692,7 +695,8 @@ struct Part {
 impl Plan {
     /// A rough count of operations: powers, products and sums of all parts as they stand.
     fn estimate(&self) -> usize {
-        let monomial = |e: &Exponents| e.iter().map(|&e| if e == 0 { 0 } else { 1 + usize::from(e.abs() > 1) }).sum::<usize>();
+        let monomial =
+            |e: &Exponents| e.iter().map(|&e| if e == 0 { 0 } else { 1 + usize::from(e.abs() > 1) }).sum::<usize>();
         let sum = |laurent: &Laurent| laurent.terms.iter().map(|(e, _)| 1 + monomial(e)).sum::<usize>();
         self.parts.iter().map(|part| monomial(&part.factor) + sum(&part.sum) + usize::from(part.power > 1)).sum()
     }
@@ -795,7 +799,8 @@ fn binomial_squares(laurent: &Laurent) -> Vec<Plan> {
     for (first, (e, x)) in laurent.terms.iter().enumerate() {
         for (f, y) in &laurent.terms[first + 1..] {
             let (Some(a), Some(b)) = (half(e), half(f)) else { continue };
-            let Some(ratio) = crate::expression::Exact::from_rational(y / x).and_then(|ratio| ratio.square_root()) else {
+            let Some(ratio) = crate::expression::Exact::from_rational(y / x).and_then(|ratio| ratio.square_root())
+            else {
                 continue;
             };
             let mut mixed = a;
@@ -810,8 +815,7 @@ fn binomial_squares(laurent: &Laurent) -> Vec<Plan> {
             let ratio = if *found == middle { ratio } else { -ratio };
             let base = Laurent::collect([(a, RBig::ONE), (b, ratio)]);
             let rest = laurent.terms.iter().filter(|(g, _)| g != e && g != f && *g != mixed).cloned();
-            let mut parts =
-                vec![Part { number: x.clone(), factor: [0; GENERATORS], sum: base, power: 2 }];
+            let mut parts = vec![Part { number: x.clone(), factor: [0; GENERATORS], sum: base, power: 2 }];
             let rest = Laurent::collect(rest);
             if rest.len() > 0 {
                 parts.push(Part { number: RBig::ONE, factor: [0; GENERATORS], sum: rest, power: 1 });

@@ -257,11 +257,7 @@ impl Polynomial {
     pub fn integer_content(&self) -> IBig {
         let mut content = IBig::ZERO;
         for (_, coefficient) in &self.terms {
-            content = if content == IBig::ZERO {
-                coefficient.abs()
-            } else {
-                IBig::from((&content).gcd(coefficient))
-            };
+            content = if content == IBig::ZERO { coefficient.abs() } else { IBig::from((&content).gcd(coefficient)) };
             if content == IBig::ONE {
                 break;
             }

@@ -58,7 +58,9 @@ fn matching(
             continue;
         }
         let wanted = Form::Call(g.to_owned(), arguments.clone());
-        if let Some(second) = factors.iter().position(|(other, (j, root))| *root == 1 && *other == wanted && condition(*i, *j)) {
+        if let Some(second) =
+            factors.iter().position(|(other, (j, root))| *root == 1 && *other == wanted && condition(*i, *j))
+        {
             return Some((first, second, arguments[0].clone()));
         }
     }
@@ -79,7 +81,8 @@ fn arranged(number: &RBig, mut factors: Vec<(Form, Exponent)>) -> Form {
     factors.sort_by_key(|(form, _)| rank(form));
     let plain = build(&p, &q, &factors);
     let mut best = plain;
-    let mut powers: Vec<i64> = factors.iter().filter(|(_, e)| e.1 == 1).map(|(_, e)| e.0.abs()).filter(|e| *e > 1).collect();
+    let mut powers: Vec<i64> =
+        factors.iter().filter(|(_, e)| e.1 == 1).map(|(_, e)| e.0.abs()).filter(|e| *e > 1).collect();
     powers.sort_unstable();
     powers.dedup();
     for power in powers {

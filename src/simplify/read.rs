@@ -247,7 +247,13 @@ impl<'a> Reader<'a> {
         }
     }
 
-    fn power(&mut self, id: ExpressionId, base: ExpressionId, exponent: ExpressionId, sign: SignOf<'_>) -> Step<Fraction> {
+    fn power(
+        &mut self,
+        id: ExpressionId,
+        base: ExpressionId,
+        exponent: ExpressionId,
+        sign: SignOf<'_>,
+    ) -> Step<Fraction> {
         let fraction = self.graph.as_number(exponent).and_then(Exact::to_fraction);
         let Some((p, q)) = fraction.filter(|&(p, q)| p.abs() <= 64 && q <= 12) else {
             return self.generator(Kind::Opaque(id));
@@ -260,7 +266,13 @@ impl<'a> Reader<'a> {
         }
     }
 
-    fn call(&mut self, id: ExpressionId, function: Function, argument: ExpressionId, sign: SignOf<'_>) -> Step<Fraction> {
+    fn call(
+        &mut self,
+        id: ExpressionId,
+        function: Function,
+        argument: ExpressionId,
+        sign: SignOf<'_>,
+    ) -> Step<Fraction> {
         match function {
             Function::Sin | Function::Cos | Function::Tan => {
                 let (cosine, sine) = self.circular(argument, sign)?;
@@ -414,13 +426,7 @@ impl<'a> Reader<'a> {
     }
 
     /// The unit of a base as an argument, and the multiple of it that `coefficient` is.
-    fn angle(
-        &mut self,
-        family: Family,
-        base: &Linear,
-        coefficient: &RBig,
-        sign: SignOf<'_>,
-    ) -> Step<(AngleId, i64)> {
+    fn angle(&mut self, family: Family, base: &Linear, coefficient: &RBig, sign: SignOf<'_>) -> Step<(AngleId, i64)> {
         let unit = self.units.get(&(family, base.clone())).cloned().ok_or(Exhausted)?;
         let multiple = coefficient / &unit;
         let multiple = if multiple.is_int() { i64::try_from(multiple.numerator()).ok() } else { None };
@@ -480,10 +486,9 @@ impl<'a> Reader<'a> {
             }
         }
         let Some(mut value) = self.root_of_polynomial(&above, sign)? else { return Ok(None) };
-        value = self.ring.multiply(
-            &value,
-            &Fraction { divisor: radicand.divisor.clone(), ..Fraction::whole(Polynomial::one()) },
-        )?;
+        value = self
+            .ring
+            .multiply(&value, &Fraction { divisor: radicand.divisor.clone(), ..Fraction::whole(Polynomial::one()) })?;
         for (factor, exponent) in below {
             let power = factor.power(exponent / 2)?;
             value = self.ring.divide(&value, &Fraction::whole(power))?.ok_or(Exhausted)?;
@@ -621,7 +626,10 @@ fn linear(graph: &Graph, root: ExpressionId) -> Step<Linear> {
     for id in graph.reachable(&[root]) {
         let atom = || vec![(vec![(id, 1)], RBig::ONE)];
         let constant = |value: &Exact| {
-            value.to_fraction().filter(|&(p, q)| is_small(p, q)).map(|(p, q)| RBig::from_parts_signed(p.into(), q.into()))
+            value
+                .to_fraction()
+                .filter(|&(p, q)| is_small(p, q))
+                .map(|(p, q)| RBig::from_parts_signed(p.into(), q.into()))
         };
         let of = |a: ExpressionId| sums.get(&a).cloned().unwrap_or_default();
         let sum = match graph.node(id) {

@@ -114,9 +114,7 @@ impl Ring {
             .take(4)
             .collect();
         (0..1u32 << used.len())
-            .map(|choice| {
-                Directions(used.iter().enumerate().map(|(bit, place)| (choice >> bit & 1) << place).sum())
-            })
+            .map(|choice| Directions(used.iter().enumerate().map(|(bit, place)| (choice >> bit & 1) << place).sum()))
             .collect()
     }
 
@@ -182,7 +180,12 @@ impl Ring {
         Ok(Some(self.multiply(&sum, &below)?))
     }
 
-    fn polynomial_derivative(&self, polynomial: &Polynomial, symbol: SymbolId, graph: &Graph) -> Step<Option<Fraction>> {
+    fn polynomial_derivative(
+        &self,
+        polynomial: &Polynomial,
+        symbol: SymbolId,
+        graph: &Graph,
+    ) -> Step<Option<Fraction>> {
         let mut sum = Fraction::zero();
         for generator in polynomial.generators() {
             if !self.depends_on(generator, symbol, graph) {
@@ -255,4 +258,3 @@ fn replace_power(polynomial: &Polynomial, generator: usize, index: u8, replaceme
     }
     Ok(sum)
 }
-

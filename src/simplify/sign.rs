@@ -204,7 +204,8 @@ impl Prover<'_> {
         let mut spare = GENERATORS;
         let mut choices = Choices { left: choice, more: false };
         // Functions first, then symbols, each before those that its bounds mention.
-        let functions = (0..self.ring.generators.len()).filter(|&g| !matches!(self.ring.generators[g], Kind::Symbol(_)));
+        let functions =
+            (0..self.ring.generators.len()).filter(|&g| !matches!(self.ring.generators[g], Kind::Symbol(_)));
         let numbers = |g: &usize| matches!(self.ring.generators[*g], Kind::Pi | Kind::Literal(_));
         for generator in functions.clone().filter(|g| !numbers(g)) {
             let Some(next) = self.replaced(&rest, generator, doubled, &mut spare, &mut choices)? else {
@@ -260,7 +261,10 @@ impl Prover<'_> {
             return Ok(Some(polynomial.clone()));
         }
         let even = polynomial.terms().iter().all(|(monomial, _)| monomial.0[generator] % 2 == 0);
-        if even && !self.strict && let Some(cover) = self.square_cover(generator, doubled)? {
+        if even
+            && !self.strict
+            && let Some(cover) = self.square_cover(generator, doubled)?
+        {
             let halved = Polynomial::collect(polynomial.terms().iter().map(|(monomial, x)| {
                 let mut half = *monomial;
                 half.0[generator] /= 2;
@@ -292,7 +296,9 @@ impl Prover<'_> {
                 None => Ok(None),
             },
             // 333/106 < pi < 355/113
-            Kind::Pi => between(&RBig::from_parts(333.into(), 106u8.into()), &RBig::from_parts(355.into(), 113u8.into()), &t),
+            Kind::Pi => {
+                between(&RBig::from_parts(333.into(), 106u8.into()), &RBig::from_parts(355.into(), 113u8.into()), &t)
+            }
             Kind::Literal(value) => {
                 let value = exact_rational(value);
                 between(&value, &value, &t)
@@ -301,7 +307,9 @@ impl Prover<'_> {
                 let (lower, upper) = self.circular_box(*angle, generator, doubled);
                 between(&lower, &upper, &t)
             }
-            Kind::Cosh(_) if self.strict => whole(t.plus(&Polynomial::one()).scaled(&IBig::from(2))?.minus(&Polynomial::one())),
+            Kind::Cosh(_) if self.strict => {
+                whole(t.plus(&Polynomial::one()).scaled(&IBig::from(2))?.minus(&Polynomial::one()))
+            }
             Kind::Cosh(_) => whole(t.plus(&Polynomial::one())),
             Kind::Sinh(angle) => {
                 let (lower, upper) = self.numeric(&self.ring.angles[angle.0], 4);
@@ -348,7 +356,9 @@ impl Prover<'_> {
                 between(&least, &a.max(b), &t)
             }
             Kind::Sinh(_) => Ok(Some(Cover { numerator: t, denominator: Polynomial::one() })),
-            Kind::Opaque(_) | Kind::Call(..) | Kind::Root(..) => Ok(Some(Cover { numerator: t, denominator: Polynomial::one() })),
+            Kind::Opaque(_) | Kind::Call(..) | Kind::Root(..) => {
+                Ok(Some(Cover { numerator: t, denominator: Polynomial::one() }))
+            }
             Kind::Symbol(_) => match self.ranges.of(generator) {
                 // Symmetric limits: the square runs from 0 to the square of the end.
                 Some(range) => match (&range.lower[..], &range.upper[..]) {
@@ -390,8 +400,7 @@ impl Prover<'_> {
         Ok(match (lower, upper) {
             (Some(lower), Some(upper)) => {
                 let (below, above) = (lower.denominator_product()?, upper.denominator_product()?);
-                let numerator =
-                    lower.numerator.times(&above)?.plus(&upper.numerator.times(&below)?.times(&t)?);
+                let numerator = lower.numerator.times(&above)?.plus(&upper.numerator.times(&below)?.times(&t)?);
                 let denominator = below.times(&above)?.times(&t.plus(&Polynomial::one()))?;
                 Some(Cover { numerator, denominator })
             }
@@ -645,7 +654,10 @@ fn times(a: (f64, f64), b: (f64, f64)) -> (f64, f64) {
     // An end that is 0 times an infinite one is 0: the infinity is not attained.
     let product = |x: f64, y: f64| if x == 0.0 || y == 0.0 { 0.0 } else { x * y };
     let products = [product(a.0, b.0), product(a.0, b.1), product(a.1, b.0), product(a.1, b.1)];
-    widened((products.iter().copied().fold(f64::INFINITY, f64::min), products.iter().copied().fold(f64::NEG_INFINITY, f64::max)))
+    widened((
+        products.iter().copied().fold(f64::INFINITY, f64::min),
+        products.iter().copied().fold(f64::NEG_INFINITY, f64::max),
+    ))
 }
 
 /// One unit in the last place outward, except where an end is exactly 0.

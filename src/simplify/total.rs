@@ -98,8 +98,7 @@ impl Total<'_> {
         let value = reader.read(integrand, &|ring: &Ring, p: &Polynomial| sign(ring, graph, &ranges, p))?;
         let mut ring = reader.ring.clone();
         let integrator = Integrator { graph, ring: &reader.ring, ranges: &ranges, variable };
-        let Antiderivative { plain, functions } =
-            integrator.antiderivative(&mut ring, &value)?.ok_or(Exhausted)?;
+        let Antiderivative { plain, functions } = integrator.antiderivative(&mut ring, &value)?.ok_or(Exhausted)?;
         // A denominator that vanishes on the way would make the difference of the end values meaningless.
         for (factor, _) in &plain.denominator {
             let varies = factor.generators().into_iter().any(|g| ring.depends_on(g, variable, graph));

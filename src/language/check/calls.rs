@@ -1,9 +1,11 @@
 //! Calls: functions of the language, functions of the sheet, differentiation.
 
 use super::super::Span;
+use super::super::model::PatchId;
 use super::super::syntax::{Name, SyntaxId, SyntaxKind};
 use super::super::unit::Dimension;
 use super::expressions::cut;
+use super::names::FUNCTIONALS;
 use super::values::{Kind, Meaning, Value};
 use super::{Checked, Checker, Instance, State};
 use crate::calculus;
@@ -27,9 +29,7 @@ impl Checker {
             "norm" | "unit" => self.vector_length(callee, arguments).map(Meaning::Value),
             "diff" => self.derivative(callee, arguments).map(Meaning::Value),
             "translate" | "rotate" | "mirror" => self.moved(callee, arguments, span).map(Meaning::Chain),
-            "area" | "integral" | "flux" | "volume" | "centroid" | "inertia" => {
-                self.functional(callee, arguments, span).map(Meaning::Value)
-            }
+            _ if FUNCTIONALS.contains(&name) => self.functional(callee, arguments, span).map(Meaning::Value),
             _ => self.sheet_function(callee, arguments, span).map(Meaning::Value),
         }
     }
@@ -186,7 +186,7 @@ impl Checker {
         };
         let by = self.number(arguments[1])?;
         let symbol = self.graph.as_symbol(by.components[0]);
-        let is_result = symbol.is_some_and(|symbol| self.result_symbols.contains(&symbol));
+        let is_result = symbol.is_some_and(|symbol| self.facts.functional_of(symbol).is_some());
         let Some(symbol) = symbol.filter(|_| !is_result) else {
             let from = self.parameters_behind(&by.components);
             let message = format!("`{name}` is derived, so nothing can be differentiated by it");
@@ -200,7 +200,7 @@ impl Checker {
                 None => self.error("not-a-parameter", by_span, message),
             });
         };
-        if !self.results_in(&value.components).is_empty() {
+        if !self.answers_in(&value.components).is_empty() {
             return Err(self.error_with_hint(
                 "derivative-of-answer",
                 callee.span,
@@ -212,19 +212,38 @@ impl Checker {
             let span = self.span(arguments[0]);
             return Err(self.wrong_kind(span, value.kind.words(), Kind::Number));
         }
+        self.refuse_hidden_dependence(&value, symbol, callee.span)?;
         let dimension = match (value.dimension, by.dimension) {
             (Some(x), Some(y)) => match x.divide(y) {
                 Some(quotient) => Some(quotient),
                 None => return Err(self.unit_overflow(by_span)),
             },
-            (x, None) => x,
-            (None, _) => None,
+            // By an argument that is zero, and so fits any unit.
+            (_, None) | (None, _) => None,
         };
         let cost = self.graph.reachable(&value.components).len();
         self.step(4 * cost, callee.span)?;
         let components = differentiate_all(&mut self.graph, &value.components, symbol);
         self.step(self.graph.reachable(&components).len(), callee.span)?;
         Ok(Value { components, dimension, kind: value.kind })
+    }
+
+    /// The position, the normal and the curvatures depend on variables and parameters in a way that differs from patch to
+    /// patch, so a formula that uses them cannot be differentiated by one of these.
+    fn refuse_hidden_dependence(&mut self, value: &Value, by: SymbolId, span: Span) -> Checked<()> {
+        let points = self.point_symbols();
+        if self.surface.is_none() || points.contains(&by) {
+            return Ok(());
+        }
+        let used = self.graph.symbols_of(&value.components);
+        let Some(&hidden) = points.iter().find(|symbol| used.contains(symbol)) else { return Ok(()) };
+        let (hidden, by) = (self.graph.symbol_name(hidden).to_owned(), self.graph.symbol_name(by).to_owned());
+        Err(self.error_with_hint(
+            "hidden-dependence",
+            span,
+            format!("`{hidden}` depends on `{by}` here in a way that this formula does not show"),
+            "call the patch with its variables instead, such as `diff(patch(u, v).x, u)`".to_owned(),
+        ))
     }
 
     /// Names of the parameters that formulas depend on.
@@ -257,6 +276,10 @@ impl Checker {
         let definition = Arc::clone(&self.definitions[index].syntax);
         let Some(formals) = &definition.arguments else {
             return match &self.definitions[index].state {
+                State::Done(Meaning::Patch(patch)) => self.patch_at(*patch, callee, arguments),
+                State::Done(Meaning::Chain(chain)) if matches!(chain.terms[..], [(1, _)]) => {
+                    self.patch_at(chain.terms[0].1, callee, arguments)
+                }
                 State::Done(meaning) => {
                     let words = meaning.words();
                     Err(self.error_with_hint(
@@ -297,12 +320,29 @@ impl Checker {
         self.apply(index, &values, span)
     }
 
+    /// The position on a patch that has no formula of its own, such as a moved copy.
+    fn patch_at(&mut self, id: PatchId, callee: &Name, arguments: &[SyntaxId]) -> Checked<Value> {
+        self.arity(callee, arguments, &[2])?;
+        let patch = self.patch(id).clone();
+        let mut replacements = Vec::with_capacity(2);
+        for i in 0..2 {
+            let value = self.number(arguments[i])?;
+            let span = self.span(arguments[i]);
+            self.same_dimension(Some(patch.variable_dimensions[i]), value.dimension, span, "this argument")?;
+            replacements.push((patch.variables[i], value.components[0]));
+        }
+        self.step(self.graph.reachable(&patch.position).len(), callee.span)?;
+        let components = self.graph.substitute(&patch.position, &replacements);
+        Ok(Value { components, dimension: Some(patch.dimension), kind: Kind::Vector })
+    }
+
     /// A bare function name in an integrand: its arguments are what they are called at a point of the surface.
     pub(super) fn call_with_surface_names(&mut self, index: usize, span: Span) -> Checked<Value> {
         let definition = Arc::clone(&self.definitions[index].syntax);
         let mut values = Vec::new();
         for argument in definition.arguments.iter().flatten() {
-            match self.resolve_argument(&argument.text) {
+            // A definition of the same name is not meant.
+            match self.point_meaning(&argument.text, span)? {
                 Some(value) => values.push(value),
                 None => {
                     return Err(self.error_with_hint(
@@ -318,27 +358,6 @@ impl Checker {
             }
         }
         self.apply(index, &values, span)
-    }
-
-    fn resolve_argument(&mut self, name: &str) -> Option<Value> {
-        // Positions and variables only; a parameter of the same name is not meant.
-        let scope = self.surface.clone()?;
-        let known = scope.variables.iter().any(|(variable, _, _)| variable == name)
-            || matches!(name, "x" | "y" | "z" | "nx" | "ny" | "nz" | "K" | "H");
-        if !known {
-            return None;
-        }
-        let hidden = std::mem::take(&mut self.locals);
-        let by_name = self.by_name.remove(name);
-        let meaning = self.resolve(name, Span::default());
-        if let Some(index) = by_name {
-            self.by_name.insert(name.to_owned(), index);
-        }
-        self.locals = hidden;
-        match meaning {
-            Ok(Meaning::Value(value)) => Some(value),
-            _ => None,
-        }
     }
 
     /// The value of a function of the sheet for given arguments.
@@ -357,7 +376,7 @@ impl Checker {
                 lowered?
             }
         };
-        let replacements: Vec<(SymbolId, ExpressionId)> = instance
+        let mut replacements: Vec<(SymbolId, ExpressionId)> = instance
             .formals
             .iter()
             .copied()
@@ -365,6 +384,7 @@ impl Checker {
             .collect();
         let cost = self.graph.reachable(&instance.value.components).len();
         self.step(cost, span)?;
+        self.fill_in_functionals(&instance.value.components, &mut replacements, span)?;
         let components = self.graph.substitute(&instance.value.components, &replacements);
         Ok(Value { components, ..instance.value })
     }
@@ -377,6 +397,7 @@ impl Checker {
             let mut components = Vec::with_capacity(argument.components.len());
             for _ in &argument.components {
                 let symbol = self.graph.new_symbol(&name.text);
+                self.facts.is_open(symbol);
                 formals.push(symbol);
                 components.push(self.graph.symbol(symbol));
             }

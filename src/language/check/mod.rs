@@ -4,19 +4,26 @@
 //! Each error is reported once: whatever uses a broken definition is skipped in silence.
 
 mod calls;
+mod chains;
 mod expressions;
+mod facts;
+mod functionals;
 mod names;
 mod surfaces;
 mod values;
 
 use super::Span;
 use super::diagnostic::{Diagnostic, Severity, SheetErrors, Source};
-use super::model::{Assumption, Claim, Interval, Model, NamedChain, NamedValue, Parameter, PatchId, SurfaceSymbols};
+use super::model::{
+    Assumption, Chain, Claim, Functional, FunctionalId, FunctionalKind, Interval, Model, NamedChain, NamedValue,
+    Parameter, Patch, PatchId, SurfaceSymbols,
+};
 use super::parse::parse;
 use super::suggest::is_reserved;
 use super::syntax::{DefinitionSyntax, Sheet, Statement, SyntaxId};
 use super::unit::{Dimension, Unit};
 use crate::expression::{ExpressionId, Graph, SymbolId};
+use facts::Facts;
 use rustc_hash::{FxHashMap, FxHashSet};
 use std::sync::Arc;
 use values::{Kind, Meaning, Value};
@@ -32,6 +39,9 @@ const STACK_BYTES: usize = 256 << 20;
 
 /// Largest nesting of formulas through calls.
 const MAXIMUM_DEPTH: usize = 2_000;
+
+/// Largest number of patches, moved copies included.
+const MAXIMUM_PATCHES: usize = 10_000;
 
 /// Largest number of steps of the checker; beyond, a sheet is refused as too large. A step is about 50 ns.
 const MAXIMUM_STEPS: usize = 10_000_000;
@@ -72,14 +82,15 @@ enum State {
 }
 
 /// What names mean inside an integrand or a trim.
-#[derive(Clone)]
 struct SurfaceScope {
     /// Dimension of the position.
     dimension: Dimension,
     /// Variables that every patch has, with their dimensions.
-    variables: Vec<(String, SymbolId, Dimension)>,
-    /// Variables that only some patches have: name, a patch without it.
-    partial: Vec<(String, String)>,
+    variables: FxHashMap<String, (SymbolId, Dimension)>,
+    /// Variables that have no meaning on all patches, with the reason.
+    partial: FxHashMap<String, String>,
+    /// `x`, `nx`, `K`, ... that are also a variable with other values, with the patch it belongs to.
+    clashing: FxHashMap<String, String>,
 }
 
 /// Key of a function that was lowered for arguments of given kinds and dimensions.
@@ -102,16 +113,21 @@ struct Checker {
     /// Names defined by statements that could not be read, or doubled.
     unread: FxHashSet<String>,
     locals: Vec<(String, Value)>,
-    surface: Option<SurfaceScope>,
+    surface: Option<Arc<SurfaceScope>>,
     variables: FxHashMap<String, SymbolId>,
     instances: FxHashMap<InstanceKey, Option<Instance>>,
-    /// Symbols of parameters and of results of functionals.
     parameter_symbols: FxHashMap<SymbolId, (String, Dimension)>,
-    result_symbols: FxHashSet<SymbolId>,
+    facts: Facts,
     surface_symbols: SurfaceSymbols,
+    /// Patches by what makes them: the patch of the text they come from, their position, their orientation.
+    patch_ids: FxHashMap<(PatchId, [ExpressionId; 3], i8), PatchId>,
+    /// For each moved copy the patch of the text that it comes from.
+    roots: FxHashMap<PatchId, PatchId>,
+    functional_ids: FxHashMap<(FunctionalKind, Chain), FunctionalId>,
     model: Parts,
     depth: usize,
     steps: usize,
+    comparisons: usize,
     exhausted: bool,
 }
 
@@ -121,9 +137,9 @@ struct Parts {
     parameters: Vec<Parameter>,
     assumptions: Vec<Assumption>,
     claims: Vec<Claim>,
-    patches: Vec<super::model::Patch>,
+    patches: Vec<Patch>,
     chains: Vec<NamedChain>,
-    functionals: Vec<super::model::Functional>,
+    functionals: Vec<Functional>,
     values: Vec<(usize, NamedValue)>,
 }
 
@@ -151,11 +167,15 @@ impl Checker {
             variables: FxHashMap::default(),
             instances: FxHashMap::default(),
             parameter_symbols: FxHashMap::default(),
-            result_symbols: FxHashSet::default(),
+            facts: Facts::default(),
             surface_symbols,
+            patch_ids: FxHashMap::default(),
+            roots: FxHashMap::default(),
+            functional_ids: FxHashMap::default(),
             model: Parts::default(),
             depth: 0,
             steps: 0,
+            comparisons: 0,
             exhausted: false,
         }
     }
@@ -182,6 +202,18 @@ impl Checker {
                 let _ = self.assumption(*condition, *span);
             }
         }
+        self.uncalled_functions();
+    }
+
+    /// Names in the bodies of functions that nothing calls. Their kinds and units are open until they are called.
+    fn uncalled_functions(&mut self) {
+        let called: FxHashSet<usize> = self.instances.keys().map(|(index, _)| *index).collect();
+        for index in 0..self.definitions.len() {
+            if matches!(self.definitions[index].state, State::Done(Meaning::Function(_))) && !called.contains(&index) {
+                let syntax = Arc::clone(&self.definitions[index].syntax);
+                self.names_are_known(&syntax);
+            }
+        }
     }
 
     /// Enters a definition; its name must be free.
@@ -206,7 +238,7 @@ impl Checker {
 
     fn assumption(&mut self, condition: SyntaxId, span: Span) -> Checked<()> {
         let truth = self.truth(condition)?;
-        self.refuse_results(&[truth], span, "an assumption")?;
+        self.refuse_answers(&[truth], span, "an assumption")?;
         self.model.assumptions.push(Assumption { condition: truth, span });
         Ok(())
     }
@@ -252,7 +284,7 @@ impl Checker {
         let meaning = self.lower(syntax.value)?;
         match meaning {
             Meaning::Value(value) => self.named_value(index, syntax, value),
-            Meaning::Patch(patch) => Ok(self.named_chain(syntax, super::model::Chain { terms: vec![(1, patch)] })),
+            Meaning::Patch(patch) => Ok(self.named_chain(syntax, Chain { terms: vec![(1, patch)] })),
             Meaning::Chain(chain) => Ok(self.named_chain(syntax, chain)),
             Meaning::Function(_) => {
                 let span = self.span(syntax.value);
@@ -266,13 +298,16 @@ impl Checker {
         }
     }
 
-    fn named_chain(&mut self, syntax: &DefinitionSyntax, chain: super::model::Chain) -> Meaning {
+    fn named_chain(&mut self, syntax: &DefinitionSyntax, chain: Chain) -> Meaning {
         if let Some(span) = syntax.range.as_ref().map(|r| r.span).or(syntax.shown_as.as_ref().map(|u| u.span)) {
             let _ = self.error(
                 "misplaced-clause",
                 span,
                 format!("`in` and `as` go with numbers, and `{}` is a surface", syntax.name.text),
             );
+        }
+        if self.step(chain.terms.len(), syntax.name.span).is_err() {
+            return Meaning::Chain(Chain::default());
         }
         self.model.chains.push(NamedChain {
             name: syntax.name.text.clone(),
@@ -332,11 +367,22 @@ impl Checker {
             self.parameter(syntax, &value, dimension, range, written_unit.clone())
         } else {
             if let Some(range) = range {
+                if !self.answers_in(&value.components).is_empty() {
+                    return Err(self.error_with_hint(
+                        "answer-not-allowed",
+                        range.span,
+                        format!(
+                            "`{}` depends on an integral, and a range is checked before anything is integrated",
+                            syntax.name.text
+                        ),
+                        "leave the range away and look at the answer".to_owned(),
+                    ));
+                }
                 self.model.claims.push(Claim { name: syntax.name.text.clone(), value: value.components[0], range });
             }
             value
         };
-        let results: Vec<SymbolId> = self.results_in(&value.components);
+        let depends_on = self.answers_in(&value.components);
         self.model.values.push((
             index,
             NamedValue {
@@ -344,8 +390,8 @@ impl Checker {
                 components: value.components.clone(),
                 dimension,
                 shown_as: shown_as.or(if is_parameter { written_unit } else { None }),
-                is_answer: !results.is_empty(),
-                depends_on: self.functionals_of(&results),
+                is_answer: !depends_on.is_empty(),
+                depends_on,
                 span: syntax.name.span,
             },
         ));
@@ -380,9 +426,11 @@ impl Checker {
         if self.diagnostics.iter().any(|diagnostic| diagnostic.severity == Severity::Error) {
             return Err(SheetErrors { source: self.source, diagnostics: self.diagnostics });
         }
+        self.drop_patterns();
         let mut values = self.model.values;
         values.sort_by_key(|(index, _)| *index);
         self.model.parameters.sort_by_key(|parameter| parameter.span.start);
+        self.model.chains.sort_by_key(|chain| chain.span.start);
         Ok(Model {
             source: self.source,
             graph: self.graph,
@@ -396,6 +444,38 @@ impl Checker {
             surface_symbols: self.surface_symbols,
             warnings: self.diagnostics,
         })
+    }
+
+    /// Takes functionals and patches away that wait for the arguments of a function, and puts patches in the order of the
+    /// text.
+    fn drop_patterns(&mut self) {
+        self.learn();
+        let mut kept: Vec<usize> =
+            (0..self.model.patches.len()).filter(|&index| !self.is_open_patch(PatchId(index))).collect();
+        kept.sort_by_key(|&index| self.model.patches[index].span.start);
+        let mut new_patch = vec![None; self.model.patches.len()];
+        for (new, &old) in kept.iter().enumerate() {
+            new_patch[old] = Some(PatchId(new));
+        }
+        self.model.patches = kept.iter().map(|&index| self.model.patches[index].clone()).collect();
+
+        let mut new_functional = vec![None; self.model.functionals.len()];
+        let kept: Vec<usize> =
+            (0..new_functional.len()).filter(|&index| !self.is_open_functional(FunctionalId(index))).collect();
+        for (new, &old) in kept.iter().enumerate() {
+            new_functional[old] = Some(FunctionalId(new));
+        }
+        let renumber = |ids: &mut Vec<FunctionalId>| *ids = ids.iter().filter_map(|id| new_functional[id.0]).collect();
+        let renumber_chain = |chain: &mut Chain| {
+            chain.terms = chain.terms.iter().filter_map(|(k, patch)| Some((*k, new_patch[patch.0]?))).collect();
+        };
+        self.model.functionals = kept.iter().map(|&index| self.model.functionals[index].clone()).collect();
+        for functional in &mut self.model.functionals {
+            renumber(&mut functional.depends_on);
+            renumber_chain(&mut functional.chain);
+        }
+        self.model.chains.iter_mut().for_each(|chain| renumber_chain(&mut chain.chain));
+        self.model.values.iter_mut().for_each(|(_, value)| renumber(&mut value.depends_on));
     }
 
     fn span(&self, id: SyntaxId) -> Span {
@@ -431,19 +511,27 @@ impl Checker {
             return Err(Reported);
         }
         self.exhausted = true;
+        let message = if self.graph.is_full() {
+            format!("the formulas of this sheet grow beyond {} nodes while calls are written out", Graph::MAXIMUM_NODES)
+        } else {
+            "the formulas of this sheet take too much work to write out".to_owned()
+        };
         Err(self.error_with_hint(
             "too-large",
             span,
-            format!(
-                "the formulas of this sheet grow beyond {} nodes while calls are written out",
-                Graph::MAXIMUM_NODES
-            ),
+            message,
             "give repeated parts a name, and call functions less deeply".to_owned(),
         ))
     }
 
     fn check_size(&mut self, components: &[ExpressionId], span: Span, name: &str) -> Checked<()> {
+        self.learn();
+        let bound: usize = components.iter().map(|&component| self.facts.size_bound(component)).sum();
+        if bound <= Graph::MAXIMUM_FORMULA_NODES {
+            return Ok(());
+        }
         let count = self.graph.reachable(components).len();
+        self.step(count, span)?;
         if count > Graph::MAXIMUM_FORMULA_NODES {
             return Err(self.error(
                 "too-large",
@@ -454,14 +542,25 @@ impl Checker {
         Ok(())
     }
 
-    /// Results of functionals among the symbols of formulas.
-    fn results_in(&self, components: &[ExpressionId]) -> Vec<SymbolId> {
-        self.graph.symbols_of(components).into_iter().filter(|symbol| self.result_symbols.contains(symbol)).collect()
+    /// Brings the facts up to date with the graph.
+    fn learn(&mut self) {
+        let work = self.facts.extend(&self.graph);
+        self.steps = self.steps.saturating_add(work);
+    }
+
+    /// Functionals whose results formulas use, in order.
+    fn answers_in(&mut self, components: &[ExpressionId]) -> Vec<FunctionalId> {
+        self.learn();
+        let mut answers: Vec<FunctionalId> =
+            components.iter().flat_map(|&component| self.facts.answers(component).iter().copied()).collect();
+        answers.sort_unstable();
+        answers.dedup();
+        answers
     }
 
     /// Formulas that must be known before anything is integrated may not use answers.
-    fn refuse_results(&mut self, components: &[ExpressionId], span: Span, what: &str) -> Checked<()> {
-        if self.results_in(components).is_empty() {
+    fn refuse_answers(&mut self, components: &[ExpressionId], span: Span, what: &str) -> Checked<()> {
+        if self.answers_in(components).is_empty() {
             return Ok(());
         }
         Err(self.error_with_hint(
@@ -472,14 +571,7 @@ impl Checker {
         ))
     }
 
-    fn functionals_of(&self, results: &[SymbolId]) -> Vec<super::model::FunctionalId> {
-        (0..self.model.functionals.len())
-            .filter(|&index| self.model.functionals[index].results.iter().any(|result| results.contains(result)))
-            .map(super::model::FunctionalId)
-            .collect()
-    }
-
-    fn patch(&self, id: PatchId) -> &super::model::Patch {
+    fn patch(&self, id: PatchId) -> &Patch {
         &self.model.patches[id.0]
     }
 }
