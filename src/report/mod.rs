@@ -4,7 +4,9 @@ mod answer_text;
 mod element;
 mod file;
 mod json;
+pub mod notation;
 mod number;
+pub mod source;
 mod stamp;
 mod table;
 
