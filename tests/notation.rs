@@ -224,6 +224,7 @@ const CORE: &[(&str, Option<usize>)] = &[
     ("mroot", Some(2)),
     ("msup", Some(2)),
     ("msub", Some(2)),
+    ("msubsup", Some(3)),
     ("mtable", None),
     ("mtr", None),
     ("mtd", None),

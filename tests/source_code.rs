@@ -2,8 +2,6 @@
 //! graph. The compilers and their libraries are the outside source. Julia, which cannot be installed everywhere, is
 //! read for balance only.
 
-mod support;
-
 use quadrel::calculus::Vector;
 use quadrel::expression::{BinaryFunction, ExpressionId, Function, Graph, Node, SymbolId, evaluate_one};
 use quadrel::geometry::Surface;
@@ -12,7 +10,6 @@ use quadrel::report::source::{Language, Request, SourceError, source};
 use std::collections::HashMap;
 use std::path::Path;
 use std::process::Command;
-use support::Random;
 
 /// Surfaces by the bodies of their sheets; the patch is `s`, regions are open so that points stay inside.
 const SHEETS: &[(&str, &str)] = &[
@@ -74,6 +71,11 @@ struct Case {
     points: Vec<Vec<f64>>,
 }
 
+/// Points of (0, 1) without a pattern: fractions of multiples of irrational numbers.
+fn spread(index: usize, side: usize) -> f64 {
+    ((index + 1) as f64 * [2.0_f64.sqrt(), 3.0_f64.sqrt()][side]).fract()
+}
+
 /// A patch with its parameters and twenty points: parameters as in the sheet, variables inside the region.
 fn case(name: &str, sheet: &str, outputs: impl Fn(&mut Graph, &Surface) -> Vec<(String, ExpressionId)>) -> Case {
     let model = check(Source::new("s.sheet", sheet)).unwrap_or_else(|errors| panic!("{name}: {errors:?}"));
@@ -84,9 +86,8 @@ fn case(name: &str, sheet: &str, outputs: impl Fn(&mut Graph, &Surface) -> Vec<(
     let outputs = outputs(&mut graph, &surface);
     let mut inputs = patch.variables.to_vec();
     inputs.extend(model.parameters.iter().map(|parameter| parameter.symbol));
-    let mut random = Random::new(name.len() as u64 + 7);
     let points = (0..20)
-        .map(|_| {
+        .map(|index| {
             let mut point: Vec<f64> = (0..2)
                 .map(|side| {
                     let ends = [patch.intervals[side].lower, patch.intervals[side].upper].map(|end| match end {
@@ -95,7 +96,7 @@ fn case(name: &str, sheet: &str, outputs: impl Fn(&mut Graph, &Surface) -> Vec<(
                         }
                         _ => panic!("finite regions"),
                     });
-                    random.between(ends[0], ends[1])
+                    ends[0] + spread(index, side) * (ends[1] - ends[0])
                 })
                 .collect();
             point.extend(model.parameters.iter().map(|parameter| bindings.value(parameter.symbol)));

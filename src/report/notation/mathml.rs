@@ -52,8 +52,9 @@ impl Notation for MathMl {
 
     fn mark(&self, mark: Mark) -> String {
         let operator = match mark {
-            Mark::Plus => "+",
-            Mark::Minus => "−",
+            // At the beginning of a continued line these would be taken for signs of a number.
+            Mark::Plus => return r#"<mo form="infix">+</mo>"#.to_owned(),
+            Mark::Minus => return r#"<mo form="infix">−</mo>"#.to_owned(),
             Mark::Dot => "⋅",
             Mark::Nothing => "&#x2062;",
             Mark::Thin | Mark::BesideFunction => return format!("<mo>&#x2062;</mo>{THIN}"),
@@ -86,7 +87,11 @@ impl Notation for MathMl {
     }
 
     fn raised(&self, base: &str, exponent: &str) -> String {
-        format!("<msup>{base}{exponent}</msup>")
+        // The base is one element; where it has a subscript, both stand at the same place.
+        match base.strip_prefix("<msub>").and_then(|inner| inner.strip_suffix("</msub>")) {
+            Some(inner) => format!("<msubsup>{inner}{exponent}</msubsup>"),
+            None => format!("<msup>{base}{exponent}</msup>"),
+        }
     }
 
     fn lowered(&self, base: &str, index: &str) -> String {
@@ -101,14 +106,13 @@ impl Notation for MathMl {
         format!("<mroot>{inner}<mn>3</mn></mroot>")
     }
 
-    fn fenced(&self, fence: Fence, inner: &str, _: bool) -> String {
+    fn fenced(&self, fence: Fence, inner: &str, tall: bool) -> String {
         let (open, close) = match fence {
             Fence::Round => ("(", ")"),
             Fence::Bars => ("|", "|"),
         };
-        format!(
-            r#"<mrow><mo form="prefix" stretchy="true">{open}</mo>{inner}<mo form="postfix" stretchy="true">{close}</mo></mrow>"#
-        )
+        let sign = |form: &str, sign: &str| format!(r#"<mo form="{form}" stretchy="{tall}">{sign}</mo>"#);
+        format!("<mrow>{}{inner}{}</mrow>", sign("prefix", open), sign("postfix", close))
     }
 
     fn cases(&self, rows: &[(String, String)], otherwise: &str) -> String {
@@ -159,7 +163,9 @@ fn math(equations: &[Vec<Line>]) -> String {
             format!(r#"<mtable displaystyle="true">{rows}</mtable>"#)
         }
     };
-    format!(r#"<math xmlns="http://www.w3.org/1998/Math/MathML" display="block">{inner}</math>"#)
+    format!(
+        r#"<math xmlns="http://www.w3.org/1998/Math/MathML" display="block" style="margin: 0.6em 0">{inner}</math>"#
+    )
 }
 
 fn row(line: &Line) -> String {
@@ -167,6 +173,6 @@ fn row(line: &Line) -> String {
         Some(left) => (left.as_str(), "<mo>=</mo>".to_owned()),
         None => ("", format!(r#"<mspace width="{}em"/>"#, line.indent)),
     };
-    let left = format!(r#"<mtd style="text-align: right">{left}</mtd>"#);
+    let left = format!(r#"<mtd style="text-align: right; padding-right: 0">{left}</mtd>"#);
     format!("<mtr>{left}{}</mtr>", left_cell(&format!("<mrow>{sign}{}</mrow>", line.right)))
 }
