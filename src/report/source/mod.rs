@@ -116,6 +116,22 @@ pub enum SourceError {
 
 /// The formulas as the text of a source file.
 ///
+/// ```
+/// use quadrel::expression::{Function, Graph};
+/// use quadrel::report::source::{Language, Request, source};
+///
+/// let mut graph = Graph::new();
+/// let (r, v) = (graph.new_symbol("r"), graph.new_symbol("v"));
+/// let (radius, angle) = (graph.symbol(r), graph.symbol(v));
+/// let sine = graph.call(Function::Sin, angle);
+/// let height = graph.multiply(radius, sine);
+/// let outputs = [("z".to_owned(), height)];
+/// let request = Request { graph: &graph, function: "height", inputs: &[r, v], outputs: &outputs, notes: "lengths in m" };
+/// let text = source(Language::C, &request)?;
+/// assert!(text.ends_with("double height(double r, double v)\n{\n    return r * sin(v);\n}\n"));
+/// # Ok::<(), quadrel::report::source::SourceError>(())
+/// ```
+///
 /// # Errors
 /// What the language cannot say, see [`SourceError`].
 pub fn source(language: Language, request: &Request<'_>) -> Result<String, SourceError> {
