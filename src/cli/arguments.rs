@@ -41,7 +41,7 @@ impl Command {
     pub fn json(&self) -> bool {
         match self {
             Command::Answer(options) => options.json,
-            Command::Element(options) => options.json,
+            Command::Element(options) => options.json || options.format == ElementFormat::Json,
             Command::Speed(options) => options.json,
             Command::Nodes(_) | Command::Completions { .. } | Command::Manual => false,
         }
@@ -95,9 +95,37 @@ pub struct ElementOptions {
     pub sheet: PathBuf,
     /// The patch; may be left out where there is one.
     pub patch: Option<String>,
-    /// Print one JSON document.
-    #[arg(long)]
+    /// Notation of a paper or source code of a language.
+    #[arg(long = "as", value_enum, value_name = "FORMAT", default_value_t = ElementFormat::Text)]
+    pub format: ElementFormat,
+    /// Print one JSON document: the same as `--as json`.
+    #[arg(long, conflicts_with = "format")]
     pub json: bool,
+}
+
+/// What `element` prints.
+#[derive(ValueEnum, Clone, Copy, PartialEq, Eq, Debug)]
+pub enum ElementFormat {
+    /// The sheet's own syntax.
+    Text,
+    /// An `align*` block for amsmath.
+    Latex,
+    /// A block of Typst mathematics.
+    Typst,
+    /// MathML Core for a web page.
+    Mathml,
+    /// A C99 function.
+    C,
+    /// A Rust function.
+    Rust,
+    /// A Python function.
+    Python,
+    /// A Fortran 2008 module.
+    Fortran,
+    /// A Julia function.
+    Julia,
+    /// One JSON document.
+    Json,
 }
 
 /// Rules for nodes.
@@ -149,12 +177,24 @@ pub struct SpeedOptions {
     /// Repeats; the minimum counts.
     #[arg(long, default_value_t = 11)]
     pub repeats: usize,
+    /// Evaluate the closed form of dA where it is accurate (on), or the norm of the cross product (off).
+    #[arg(long, value_enum, default_value_t = SimplifyOption::On)]
+    pub simplify: SimplifyOption,
     /// Give a parameter another value. May be repeated.
     #[arg(long = "set", value_name = "NAME=VALUE")]
     pub set: Vec<String>,
     /// Print one JSON document.
     #[arg(long)]
     pub json: bool,
+}
+
+/// Whether closed forms are evaluated.
+#[derive(ValueEnum, Clone, Copy, PartialEq, Eq, Debug)]
+pub enum SimplifyOption {
+    /// The closed form where it is accurate.
+    On,
+    /// The norm of the cross product.
+    Off,
 }
 
 fn tolerance(text: &str) -> Result<f64, String> {

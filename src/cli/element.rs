@@ -1,17 +1,37 @@
 //! `quadrel element`
 
-use super::arguments::ElementOptions;
+use super::arguments::{ElementFormat, ElementOptions};
 use super::{Exit, Failure, choose_patch, load, output};
-use crate::report::{ElementReport, element_json, element_text};
+use crate::report::source::Language;
+use crate::report::{ElementReport, Stamp, element_json, element_text};
 
 pub(super) fn run(options: &ElementOptions) -> Result<Exit, Failure> {
-    let (model, _) = load(&options.sheet, &[])?;
+    let (model, bindings) = load(&options.sheet, &[])?;
     let patch = choose_patch(&model, options.patch.as_deref())?;
-    let report = ElementReport::new(&model, patch);
-    if options.json {
-        output::print_json(&element_json(&report));
-    } else {
-        output::print(&element_text(&report));
+    let report = ElementReport::new(&model, &bindings, patch);
+    let format = if options.json { ElementFormat::Json } else { options.format };
+    let stamp = Stamp::new(&model.source.text, String::new());
+    let source = |language: Language| {
+        report.source(language, &stamp).map_err(|error| Failure::Usage(format!("--as {}: {error}", language.name())))
+    };
+    let text = match format {
+        ElementFormat::Json => {
+            output::print_json(&element_json(&report, &stamp));
+            return Ok(Exit::Reached);
+        }
+        ElementFormat::Text => element_text(&report),
+        ElementFormat::Latex => report.document().latex(),
+        ElementFormat::Typst => report.document().typst(),
+        ElementFormat::Mathml => report.document().mathml(),
+        ElementFormat::C => source(Language::C)?,
+        ElementFormat::Rust => source(Language::Rust)?,
+        ElementFormat::Python => source(Language::Python)?,
+        ElementFormat::Fortran => source(Language::Fortran)?,
+        ElementFormat::Julia => source(Language::Julia)?,
+    };
+    output::print(&text);
+    if format != ElementFormat::Text {
+        report.notes.iter().for_each(|note| output::note(note));
     }
     Ok(Exit::Reached)
 }

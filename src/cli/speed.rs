@@ -1,6 +1,6 @@
 //! `quadrel speed`
 
-use super::arguments::SpeedOptions;
+use super::arguments::{SimplifyOption, SpeedOptions};
 use super::{Exit, Failure, choose_patch, load, output};
 use crate::integrals::SpeedRun;
 use serde_json::json;
@@ -25,7 +25,10 @@ pub(super) fn run(options: &SpeedOptions) -> Result<Exit, Failure> {
         .num_threads(options.threads)
         .build()
         .map_err(|error| Failure::Usage(format!("--threads {}: {error}", options.threads)))?
-        .install(|| SpeedRun::measure(&model, &bindings, patch, options.grid, options.scattered, options.repeats))?;
+        .install(|| {
+            let simplify = options.simplify == SimplifyOption::On;
+            SpeedRun::measure(&model, &bindings, patch, options.grid, options.scattered, options.repeats, simplify)
+        })?;
     if options.json {
         output::print_json(&json!({
             "schema": "quadrel/1",
@@ -43,6 +46,7 @@ pub(super) fn run(options: &SpeedOptions) -> Result<Exit, Failure> {
                 "points": options.scattered,
                 "route": measured.route,
             },
+            "formula": measured.formula,
             "instructions": measured.instructions,
             "mixed_instructions": measured.mixed_instructions,
             "compile_us": measured.compile_seconds * 1e6,
@@ -51,11 +55,12 @@ pub(super) fn run(options: &SpeedOptions) -> Result<Exit, Failure> {
         }));
     } else {
         output::print(&format!(
-            "patch {}, {} instructions of which {} depend on both variables, {}, compiled in {:.0} us\n\
+            "patch {}, {}: {} instructions of which {} depend on both variables, {}, compiled in {:.0} us\n\
              sum of dA on a {first}x{second} grid: {:.3} ns per point (median {:.3}), sum {}\n\
              dA at {} scattered points:  {:.3} ns per point (median {:.3})\n\
              fastest of {} repeats, {} thread{}\n",
             model.patches[patch.0].name,
+            measured.formula,
             measured.instructions,
             measured.mixed_instructions,
             measured.route,

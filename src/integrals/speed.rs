@@ -5,6 +5,7 @@ use crate::expression::{SymbolId, evaluate};
 use crate::geometry::Surface;
 use crate::kernel::{Engine, Kernel, Program};
 use crate::language::{Bindings, Bound, Model, PatchId};
+use crate::simplify::evaluation_form;
 use std::hint::black_box;
 use std::time::Instant;
 
@@ -28,6 +29,8 @@ pub struct SpeedRun {
     pub scattered: Timing,
     /// Seconds from formula to callable code.
     pub compile_seconds: f64,
+    /// What is evaluated: the closed form of dA, or the norm of the cross product.
+    pub formula: &'static str,
     /// Which engine ran.
     pub route: &'static str,
     /// Instructions of the kernel.
@@ -37,7 +40,7 @@ pub struct SpeedRun {
 }
 
 impl SpeedRun {
-    /// Measures |N| of a patch on a grid and at scattered points.
+    /// Measures the area element of a patch on a grid and at scattered points, `simplify` allows its closed form.
     ///
     /// # Errors
     /// For limits that are infinite or depend on a variable, and formulas that are too large.
@@ -48,11 +51,15 @@ impl SpeedRun {
         grid: (usize, usize),
         scattered: usize,
         repeats: usize,
+        simplify: bool,
     ) -> Result<Self, IntegralError> {
-        let patch = &model.patches[patch.0];
+        let id = patch;
+        let patch = &model.patches[id.0];
         let mut graph = model.graph.clone();
-        let surface = Surface::new(&mut graph, patch);
-        let outputs = [surface.element];
+        let norm = Surface::new(&mut graph, patch).element;
+        let value_of = |symbol| bindings.value(symbol);
+        let closed = if simplify { evaluation_form(model, id, &mut graph, norm, &value_of) } else { None };
+        let outputs = [closed.unwrap_or(norm)];
         let parameters: Vec<SymbolId> =
             graph.symbols_of(&outputs).into_iter().filter(|symbol| !patch.variables.contains(symbol)).collect();
         let values: Vec<f64> = parameters.iter().map(|&symbol| bindings.value(symbol)).collect();
@@ -100,6 +107,7 @@ impl SpeedRun {
             sum,
             scattered: timing(scattered_times, scattered.max(1)),
             compile_seconds: kernel.compile_seconds(),
+            formula: if closed.is_some() { "closed form" } else { "norm of the cross product" },
             route: match kernel.engine() {
                 Engine::MachineCode => "machine code",
                 Engine::Interpreter => "interpreter",

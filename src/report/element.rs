@@ -1,34 +1,72 @@
-//! The forms of a patch as text and JSON.
+//! The forms of a patch as text, JSON, notations of papers and source code.
 
-use crate::expression::{ExpressionId, Graph, Node, print_limited};
+use super::notation::{Document, Equation};
+use super::source::{Language, Request, SourceError, source};
+use super::stamp::Stamp;
+use crate::expression::{ExpressionId, Graph, SymbolId};
 use crate::geometry::Surface;
-use crate::language::{Model, PatchId};
-use crate::simplify::{Fact, Quantity, closed_forms};
+use crate::language::{Bindings, Model, PatchId};
+use crate::simplify::{Fact, Form, Quantity, closed_forms, evaluation_form};
 use serde_json::{Map, Value, json};
 
-/// Longest formula that is written out in full; a longer one is given by its count of operations.
-const LONGEST: usize = 2_000;
+/// Longest formula, in operations, that is written out; a longer one is given by its count.
+const LONGEST: usize = 1_000;
+
+/// A quantity of the report.
+#[derive(Clone, Debug)]
+pub struct Entry {
+    /// Stable name, the key of the JSON document.
+    pub key: &'static str,
+    /// Name on the page; tangents carry the names of the variables.
+    pub name: String,
+    /// One formula, or three.
+    pub forms: Vec<Written>,
+}
+
+/// A formula, or its size where it is too long for a page.
+#[derive(Clone, Debug)]
+pub enum Written {
+    /// The formula.
+    Form(Form),
+    /// Operations of a formula that is not written out.
+    TooLong(u64),
+}
+
+impl Written {
+    fn text(&self) -> String {
+        match self {
+            Written::Form(form) => form.text(),
+            Written::TooLong(u64::MAX) => "more than 10^19 operations, too long to print here".to_owned(),
+            Written::TooLong(count) => format!("{count} operations, too long to print here"),
+        }
+    }
+}
 
 /// Everything that `element` says about a patch.
 #[derive(Clone, Debug)]
 pub struct ElementReport {
     /// The patch.
     pub patch: String,
-    /// Names and formulas in the order of the report; vectors have three.
-    pub forms: Vec<(&'static str, Vec<String>)>,
+    /// Names of its variables, in the order of its arguments.
+    pub variables: [String; 2],
+    /// The quantities in the order of the report.
+    pub entries: Vec<Entry>,
     /// Operations of dA on the fully written form: each operator, minus sign and call counts 1.
     pub operations: u64,
     /// The exact area, where it was found and proved.
-    pub area: Option<String>,
+    pub area: Option<Form>,
     /// What is proved of the patch.
     pub facts: Vec<Fact>,
     /// Remarks on how the forms are to be read.
     pub notes: Vec<String>,
+    graph: Graph,
+    inputs: Vec<SymbolId>,
+    outputs: Vec<(String, ExpressionId)>,
 }
 
 impl ElementReport {
     /// Derives the forms of a patch.
-    pub fn new(model: &Model, id: PatchId) -> Self {
+    pub fn new(model: &Model, bindings: &Bindings, id: PatchId) -> Self {
         let mut graph = model.graph.clone();
         let patch = &model.patches[id.0];
         let surface = Surface::new(&mut graph, patch);
@@ -38,37 +76,21 @@ impl ElementReport {
         let gauss = surface.gauss_curvature(&mut graph);
         let mean = surface.mean_curvature(&mut graph);
         let closed = closed_forms(model, id);
+        let evaluated = evaluation_form(model, id, &mut graph, surface.element, &|symbol| bindings.value(symbol));
 
-        let mut plain = Vec::new();
-        let mut shown = |name: &'static str, quantity: Option<Quantity>, raw: ExpressionId| {
-            if let Some(form) = quantity.and_then(|quantity| closed.forms.get(&quantity)) {
-                return (form.text(), form.operations() as u64);
-            }
-            if quantity.is_some() && plain.last() != Some(&name) {
-                plain.push(name);
-            }
-            let count = operations(&graph, raw);
-            let text = print_limited(&graph, raw, LONGEST);
-            if text.ends_with("...") {
-                (format!("{} operations, too long to print here", operations_text(count)), count)
-            } else {
-                (text, count)
-            }
-        };
-        let mut forms: Vec<(&'static str, Vec<String>)> = Vec::new();
+        let variables = patch.variables.map(|variable| graph.symbol_name(variable).to_owned());
         let axes = [0, 1, 2];
-        forms.push(("position", axes.map(|axis| shown("position", None, surface.position[axis]).0).to_vec()));
-        for (name, quantity, raw) in [
-            ("tangent_u", Quantity::TangentU as fn(usize) -> Quantity, &surface.tangents[0]),
-            ("tangent_v", Quantity::TangentV, &surface.tangents[1]),
-        ] {
-            forms.push((name, axes.map(|axis| shown(name, Some(quantity(axis)), raw[axis]).0).to_vec()));
-        }
-        let (element, operations) = shown("dA", Some(Quantity::Element), surface.element);
-        forms.push(("dA", vec![element]));
-        let raw = axes.map(|axis| shown("normal", Some(Quantity::Normal(axis)), normal[axis]).0);
-        forms.push(("normal", raw.to_vec()));
-        for (name, quantity, raw) in [
+        let tangent = |place: usize| format!("tangent_{}", variables[place]);
+        type Component = fn(usize) -> Quantity;
+        let position: Option<Component> = None;
+        let vectors = [
+            ("position", "position".to_owned(), position, surface.position),
+            ("tangent_u", tangent(0), Some(Quantity::TangentU as Component), surface.tangents[0]),
+            ("tangent_v", tangent(1), Some(Quantity::TangentV as Component), surface.tangents[1]),
+            ("normal", "normal".to_owned(), Some(Quantity::Normal as Component), normal),
+        ];
+        let scalars = [
+            ("dA", Quantity::Element, surface.element),
             ("E", Quantity::E, first.e),
             ("F", Quantity::F, first.f),
             ("G", Quantity::G, first.g),
@@ -77,11 +99,36 @@ impl ElementReport {
             ("N2", Quantity::N2, second.n),
             ("K", Quantity::Gauss, gauss),
             ("H", Quantity::Mean, mean),
-        ] {
-            forms.push((name, vec![shown(name, Some(quantity), raw).0]));
+        ];
+        let mut plain: Vec<&'static str> = Vec::new();
+        let mut written = |key: &'static str, quantity: Option<Quantity>, raw: ExpressionId| {
+            if let Some(form) = quantity.and_then(|quantity| closed.forms.get(&quantity)) {
+                return Written::Form(form.clone());
+            }
+            if quantity.is_some() && plain.last() != Some(&key) {
+                plain.push(key);
+            }
+            match Form::of(&graph, raw, &patch.variables, LONGEST) {
+                Some(form) => Written::Form(form),
+                None => Written::TooLong(operations(&graph, raw)),
+            }
+        };
+        let mut entries = Vec::new();
+        for (key, name, quantity, raw) in &vectors {
+            let forms = axes.map(|axis| written(key, quantity.map(|quantity| quantity(axis)), raw[axis])).to_vec();
+            entries.push(Entry { key, name: name.clone(), forms });
         }
+        for (key, quantity, raw) in scalars {
+            entries.push(Entry { key, name: key.to_owned(), forms: vec![written(key, Some(quantity), raw)] });
+        }
+        // The element comes before the normal, which divides by it.
+        let element = entries.remove(4);
+        let operations = match &element.forms[0] {
+            Written::Form(form) => form.operations() as u64,
+            Written::TooLong(count) => *count,
+        };
+        entries.insert(3, element);
 
-        let area = closed.area.as_ref().map(|form| form.text());
         let mut notes = Vec::new();
         for condition in &closed.conditions {
             notes.push(format!("the signs hold for {condition}"));
@@ -102,29 +149,101 @@ impl ElementReport {
                 format!("no form that could be proved equal for {names}: shown as derived")
             });
         }
-        Self { patch: patch.name.clone(), forms, operations, area, facts: closed.facts, notes }
-    }
-}
+        if closed.forms.contains_key(&Quantity::Element) && evaluated.is_none() {
+            notes.push(
+                "dA is evaluated as the norm of the cross product: the printed form needs a condition, or loses digits \
+                 somewhere on the region"
+                    .to_owned(),
+            );
+        }
 
-fn operations_text(count: u64) -> String {
-    if count == u64::MAX { "more than 10^19".to_owned() } else { count.to_string() }
+        let mut outputs: Vec<(String, ExpressionId)> = Vec::new();
+        for (_, name, _, raw) in &vectors {
+            outputs.extend(axes.iter().zip(["x", "y", "z"]).map(|(&axis, end)| (format!("{name}_{end}"), raw[axis])));
+        }
+        for (key, quantity, raw) in scalars {
+            let formula = if quantity == Quantity::Element { evaluated.unwrap_or(raw) } else { raw };
+            outputs.push((key.to_owned(), formula));
+        }
+        let formulas: Vec<ExpressionId> = outputs.iter().map(|(_, formula)| *formula).collect();
+        let used = graph.symbols_of(&formulas);
+        let parameters =
+            model.parameters.iter().map(|parameter| parameter.symbol).filter(|symbol| used.contains(symbol));
+        let inputs = patch.variables.into_iter().chain(parameters).collect();
+        Self {
+            patch: patch.name.clone(),
+            variables,
+            entries,
+            operations,
+            area: closed.area,
+            facts: closed.facts,
+            notes,
+            graph,
+            inputs,
+            outputs,
+        }
+    }
+
+    /// The equations for a paper; formulas that are too long are left out, and the notes say so.
+    pub fn document(&self) -> Document {
+        let mut equations = Vec::new();
+        for entry in &self.entries {
+            let forms: Option<Vec<Form>> = entry
+                .forms
+                .iter()
+                .map(|written| match written {
+                    Written::Form(form) => Some(form.clone()),
+                    Written::TooLong(_) => None,
+                })
+                .collect();
+            let Some(right) = forms else { continue };
+            let (name, differentials) = match entry.key {
+                "tangent_u" => (format!("phi_{}", self.variables[0]), Vec::new()),
+                "tangent_v" => (format!("phi_{}", self.variables[1]), Vec::new()),
+                "position" => ("phi".to_owned(), Vec::new()),
+                "normal" => ("n".to_owned(), Vec::new()),
+                "N2" => ("N".to_owned(), Vec::new()),
+                "dA" => ("dA".to_owned(), self.variables.to_vec()),
+                other => (other.to_owned(), Vec::new()),
+            };
+            equations.push(Equation { name, right, differentials });
+        }
+        equations.extend(self.area.clone().map(|area| Equation::new("A", area)));
+        Document { equations, ..Document::default() }
+    }
+
+    /// A function that evaluates everything, in a language.
+    ///
+    /// # Errors
+    /// Functions that the language lacks, formulas that are too long.
+    pub fn source(&self, language: Language, stamp: &Stamp) -> Result<String, SourceError> {
+        let notes = format!(
+            "{}\nForms of the patch {}: SI units (meters, square meters), angles in radians.\n\
+             Geometry only: local codes and licensed practice decide what it is used for.",
+            stamp.line(),
+            self.patch
+        );
+        source(
+            language,
+            &Request {
+                graph: &self.graph,
+                function: &self.patch,
+                inputs: &self.inputs,
+                outputs: &self.outputs,
+                notes: &notes,
+            },
+        )
+    }
 }
 
 /// Operations of a formula written out in full; shared parts count each time they stand. Saturates.
 fn operations(graph: &Graph, root: ExpressionId) -> u64 {
     let mut counts = vec![0u64; root.index() + 1];
     for id in graph.reachable(&[root]) {
-        let node = graph.node(id);
-        let own = match node {
-            Node::Symbol(_) | Node::Pi | Node::Truth(_) => 0,
-            Node::Number(number) => {
-                let value = graph.number_value(number);
-                u64::from(value.is_negative()) + u64::from(value.to_string().contains('/'))
-            }
-            _ => 1,
-        };
+        let children = graph.node(id).children();
+        let own = u64::from(!children.as_slice().is_empty());
         counts[id.index()] =
-            node.children().as_slice().iter().fold(own, |sum, child| sum.saturating_add(counts[child.index()]));
+            children.as_slice().iter().fold(own, |sum, child| sum.saturating_add(counts[child.index()]));
     }
     counts[root.index()]
 }
@@ -132,13 +251,13 @@ fn operations(graph: &Graph, root: ExpressionId) -> u64 {
 /// The forms as text, one below the other.
 pub fn element_text(report: &ElementReport) -> String {
     let mut text = format!("patch {}\n", report.patch);
-    for (name, formulas) in &report.forms {
-        match &formulas[..] {
-            [one] => text += &format!("{name} = {one}\n"),
+    for entry in &report.entries {
+        match &entry.forms[..] {
+            [one] => text += &format!("{} = {}\n", entry.name, one.text()),
             several => {
-                text += &format!("{name} = (\n");
-                for formula in several {
-                    text += &format!("  {formula},\n");
+                text += &format!("{} = (\n", entry.name);
+                for form in several {
+                    text += &format!("  {},\n", form.text());
                 }
                 text += ")\n";
             }
@@ -148,7 +267,7 @@ pub fn element_text(report: &ElementReport) -> String {
     let facts: Vec<String> = report.facts.iter().map(Fact::to_string).collect();
     text += &format!("facts = {}\n", if facts.is_empty() { "none".to_owned() } else { facts.join(", ") });
     if let Some(area) = &report.area {
-        text += &format!("area = {area}\n");
+        text += &format!("area = {}\n", area.text());
     }
     for note in &report.notes {
         text += &format!("note: {note}\n");
@@ -157,22 +276,24 @@ pub fn element_text(report: &ElementReport) -> String {
 }
 
 /// The forms as a JSON document.
-pub fn element_json(report: &ElementReport) -> Value {
+pub fn element_json(report: &ElementReport, stamp: &Stamp) -> Value {
     let mut object = Map::new();
     object.insert("schema".into(), json!("quadrel/1"));
     object.insert("patch".into(), json!(report.patch));
-    for (name, formulas) in &report.forms {
-        let value = match &formulas[..] {
-            [one] => json!(one),
-            several => json!(several),
+    object.insert("variables".into(), json!(report.variables));
+    for entry in &report.entries {
+        let value = match &entry.forms[..] {
+            [one] => json!(one.text()),
+            several => json!(several.iter().map(Written::text).collect::<Vec<_>>()),
         };
-        object.insert((*name).to_owned(), value);
-        if *name == "dA" {
+        object.insert(entry.key.to_owned(), value);
+        if entry.key == "dA" {
             object.insert("operations".into(), json!(report.operations));
         }
     }
     object.insert("facts".into(), json!(report.facts.iter().map(Fact::to_string).collect::<Vec<_>>()));
-    object.insert("area".into(), json!(report.area));
+    object.insert("area".into(), json!(report.area.as_ref().map(Form::text)));
     object.insert("notes".into(), json!(report.notes));
+    object.insert("stamp".into(), stamp.json());
     Value::Object(object)
 }

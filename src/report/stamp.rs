@@ -20,6 +20,11 @@ impl Stamp {
         Self { version: env!("CARGO_PKG_VERSION"), sheet_hash, settings: settings.into() }
     }
 
+    /// The stamp as a line of text.
+    pub fn line(&self) -> String {
+        format!("quadrel {}, sheet SHA-256 {}", self.version, &self.sheet_hash[..12])
+    }
+
     /// The stamp as a JSON object.
     pub fn json(&self) -> serde_json::Value {
         serde_json::json!({"version": self.version, "sheet_sha256": self.sheet_hash, "settings": self.settings})

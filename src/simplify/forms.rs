@@ -5,9 +5,12 @@ use super::closed::{Elements, Formulas, Rooted};
 use super::facts::{Fact, facts};
 use super::form::Form;
 use super::meter::{Exhausted, Step, with_allowance};
+use super::parse_back::parse_back;
 use super::plan::Printer;
+use super::stability::is_stable;
 use super::total::Total;
-use crate::language::{Model, PatchId};
+use crate::expression::{ExpressionId, Graph, SymbolId, evaluate_one};
+use crate::language::{Bound, Model, Patch, PatchId};
 use std::collections::BTreeMap;
 
 /// Steps for the elements of one manner of reading a patch.
@@ -18,6 +21,9 @@ const WRITING: u64 = 6_000_000;
 
 /// Steps for proving all formulas.
 const PROVING: u64 = 60_000_000;
+
+/// Steps for the element alone, where it is only evaluated.
+const EVALUATING: u64 = 4_000_000;
 
 /// Steps for the exact area.
 const INTEGRATING: u64 = 10_000_000;
@@ -139,23 +145,82 @@ fn merge(best: &mut ClosedForms, found: ClosedForms) {
     best.facts.sort();
 }
 
-fn write_all(elements: &mut Elements<'_>, found: &mut ClosedForms) -> Step<()> {
-    let element = with_allowance(READING, || elements.element())?;
+/// The area element as it is best evaluated: the proved closed form where it is about as accurate as the norm of the cross
+/// product and holds without further conditions; `None` where it is not.
+///
+/// `norm` is the norm in `graph`, `values` the parameters.
+pub fn evaluation_form(
+    model: &Model,
+    patch: PatchId,
+    graph: &mut Graph,
+    norm: ExpressionId,
+    values: &dyn Fn(SymbolId) -> f64,
+) -> Option<ExpressionId> {
+    let patch = &model.patches[patch.0];
+    let formulas = Formulas::new(graph, patch);
+    let form = formulas
+        .manners(graph)
+        .into_iter()
+        .filter_map(|manner| {
+            with_allowance(EVALUATING, || {
+                let mut elements = Elements::new(graph, model, patch, &formulas, manner).ok()?;
+                let (form, element) = shortest_element(&mut elements).ok()?;
+                (elements.conditions.is_empty() && element.bars.is_empty()).then_some(form)
+            })
+        })
+        .min_by_key(Form::operations)?;
+    let certificate = Certificate::new(model, patch, &formulas, graph);
+    let names = certificate.names();
+    let proofs = with_allowance(EVALUATING, || certificate.check(&BTreeMap::from([(Quantity::Element, form.clone())])));
+    if proofs[&Quantity::Element] != Proof::Equal {
+        return None;
+    }
+    let formula = parse_back(graph, &form.text(), &names)?;
+    let limits = limits(graph, patch, values);
+    is_stable(graph, formula, norm, patch.variables, limits, values).then_some(formula)
+}
+
+/// The limits of the region; NaN or infinite where they depend on a variable or do not end.
+fn limits(graph: &Graph, patch: &Patch, values: &dyn Fn(SymbolId) -> f64) -> [(f64, f64); 2] {
+    let end = |bound: Bound| match bound {
+        Bound::Finite(formula) => {
+            evaluate_one(
+                graph,
+                formula,
+                |symbol| {
+                    if patch.variables.contains(&symbol) { f64::NAN } else { values(symbol) }
+                },
+            )
+        }
+        Bound::MinusInfinity => f64::NEG_INFINITY,
+        Bound::PlusInfinity => f64::INFINITY,
+    };
+    [0, 1].map(|place| (end(patch.intervals[place].lower), end(patch.intervals[place].upper)))
+}
+
+/// The shortest form of the element and the value it was written from.
+fn shortest_element(elements: &mut Elements<'_>) -> Step<(Form, Rooted)> {
+    let candidates = with_allowance(READING, || elements.element())?;
     let mut printer = Printer::new(elements.reader.ring.clone(), elements.reader.graph, elements.variables, NODES);
-    let mut shortest: Option<(Form, &Rooted)> = None;
-    for candidate in &element {
-        let form = with_allowance(WRITING, || printer.rooted(candidate))?;
+    let mut shortest: Option<(Form, Rooted)> = None;
+    for candidate in candidates {
+        let form = with_allowance(WRITING, || printer.rooted(&candidate))?;
         if shortest.as_ref().is_none_or(|(known, _)| form.operations() < known.operations()) {
             shortest = Some((form, candidate));
         }
     }
-    let (form, element) = shortest.ok_or(Exhausted)?;
+    shortest.ok_or(Exhausted)
+}
+
+fn write_all(elements: &mut Elements<'_>, found: &mut ClosedForms) -> Step<()> {
+    let (form, element) = shortest_element(elements)?;
+    let mut printer = Printer::new(elements.reader.ring.clone(), elements.reader.graph, elements.variables, NODES);
     for (factor, _) in &element.bars {
         found.unproved_signs.push(printer.polynomial(factor)?);
     }
     found.forms.insert(Quantity::Element, form);
 
-    let values = with_allowance(READING, || elements.quantities(element))?;
+    let values = with_allowance(READING, || elements.quantities(&element))?;
     // Reading the second derivatives may have added generators; the printer adds its own.
     let mut printer = Printer::new(elements.reader.ring.clone(), elements.reader.graph, elements.variables, NODES);
     for (quantity, value) in values {

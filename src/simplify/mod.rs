@@ -22,8 +22,9 @@ mod read;
 mod region;
 mod ring;
 mod sign;
+mod stability;
 mod total;
 
 pub use facts::Fact;
 pub use form::{Form, NameKind};
-pub use forms::{ClosedForms, Quantity, closed_forms};
+pub use forms::{ClosedForms, Quantity, closed_forms, evaluation_form};
