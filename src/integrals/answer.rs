@@ -8,6 +8,7 @@ use super::run::{FunctionalOutcome, NEGLIGIBLE, Outcome, RUN_WORK, Run};
 use super::sides::chain_warnings;
 use crate::expression::{ExpressionId, Graph, SymbolId, differentiate, evaluate};
 use crate::language::{Bindings, Chain, Dimension, Functional, FunctionalId, FunctionalKind, Model, Unit, nearest};
+use crate::simplify::exact_area;
 use crate::quadrature::Limit;
 use nalgebra::Matrix3;
 use rustc_hash::FxHashMap;
@@ -65,11 +66,29 @@ pub fn answer(
         let short = answers.iter().any(|answer| answer.kind == AnswerKind::Unreached);
         let stuck = outcomes.values().any(|outcome| outcome.limit.is_some());
         if !short || stuck || attempt == 2 {
+            for (answer, target) in answers.iter_mut().zip(&targets) {
+                answer.exact = exact(answer, target, &run);
+            }
             return Ok(answers);
         }
         relative *= 0.03;
     }
     unreachable!("the last attempt returns")
+}
+
+/// The exact formula of an answer that is the area of one patch. A formula whose value the number does not enclose is not
+/// shown.
+fn exact(answer: &Answer, target: &Target, run: &Run<'_>) -> Option<String> {
+    let ([component], [functional]) = (&target.components[..], &target.depends_on[..]) else { return None };
+    let functional = &run.functionals[functional.0];
+    let ([(1 | -1, patch)], FunctionalKind::Area) = (&functional.chain.terms[..], &functional.kind) else { return None };
+    if run.graph.as_symbol(*component) != functional.results.first().copied() {
+        return None;
+    }
+    let (form, value) = exact_area(run.model, *patch, &|symbol| run.bindings.value(symbol))?;
+    let number = answer.components.first()?;
+    let encloses = (number.value - value).abs() <= number.error + 1e-12 * value.abs();
+    encloses.then(|| form.text())
 }
 
 fn targets(
@@ -194,6 +213,7 @@ fn assemble(target: &Target, run: &mut Run<'_>, outcomes: &FxHashMap<FunctionalI
     let limit = behind.iter().find_map(|id| outcomes.get(id).and_then(|outcome| outcome.limit));
     Answer {
         name: target.name.clone(),
+        exact: None,
         principal: (combined.len() == 6).then(|| principal(&components)).flatten(),
         kind: if reached { AnswerKind::Estimate } else { AnswerKind::Unreached },
         reason: (!reached).then(|| reason(finite, limit, worst, allowed)),

@@ -83,6 +83,8 @@ pub struct Answer {
     pub evaluations: u64,
     /// Seconds spent on the integrals it rests on.
     pub seconds: f64,
+    /// The exact formula of the area of one patch, where it is proved and found at once.
+    pub exact: Option<String>,
     /// For a tensor of inertia.
     pub principal: Option<Principal>,
     /// What the reader should know: open chain, one-sided patch, condition number.

@@ -28,6 +28,9 @@ pub fn answers_text(answers: &[Answer]) -> String {
                 writeln!(text, "  .{:<2} = {}{unit}", component.label, number(index))
             })
         };
+        if let Some(exact) = &answer.exact {
+            let _ = writeln!(text, "  exactly {exact}");
+        }
         if let Some(principal) = &answer.principal {
             let scale = answer.shown_as.as_ref().map_or(1.0, |shown| shown.from_si(1.0));
             for (moment, axis) in principal.moments.iter().zip(&principal.axes) {

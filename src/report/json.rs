@@ -41,6 +41,7 @@ fn answer_json(answer: &Answer) -> Value {
     object.insert("components".into(), json!(answer.components.iter().map(|c| c.label).collect::<Vec<_>>()));
     object.insert("evaluations".into(), json!(answer.evaluations));
     object.insert("seconds".into(), number(answer.seconds));
+    object.insert("exact".into(), json!(answer.exact));
     object.insert("reason".into(), json!(answer.reason));
     object.insert("warnings".into(), json!(answer.warnings));
     if let Some(principal) = &answer.principal {

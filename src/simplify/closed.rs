@@ -145,6 +145,11 @@ impl<'a> Elements<'a> {
         })
     }
 
+    /// Whether P depends on a symbol.
+    pub fn square_depends_on(&self, symbol: SymbolId) -> bool {
+        self.square.generators().into_iter().any(|g| self.ring().depends_on(g, symbol, self.reader.graph))
+    }
+
     fn ring(&self) -> &Ring {
         &self.reader.ring
     }

@@ -7,6 +7,7 @@ use super::form::Form;
 use super::meter::{Exhausted, Step, with_allowance};
 use super::parse_back::parse_back;
 use super::plan::Printer;
+use super::read::Arguments;
 use super::stability::is_stable;
 use super::total::Total;
 use crate::expression::{ExpressionId, Graph, SymbolId, evaluate_one};
@@ -24,6 +25,9 @@ const PROVING: u64 = 60_000_000;
 
 /// Steps for the element alone, where it is only evaluated.
 const EVALUATING: u64 = 4_000_000;
+
+/// Steps for an exact area beside a number.
+const AT_ONCE: u64 = 100_000;
 
 /// Steps for the exact area.
 const INTEGRATING: u64 = 10_000_000;
@@ -178,6 +182,35 @@ pub fn evaluation_form(
     let formula = parse_back(graph, &form.text(), &names)?;
     let limits = limits(graph, patch, values);
     is_stable(graph, formula, norm, patch.variables, limits, values).then_some(formula)
+}
+
+/// The exact area of a patch with its value for given parameters, if it is found within few steps: it stands beside a
+/// number that is wanted at once.
+pub fn exact_area(model: &Model, patch: PatchId, values: &dyn Fn(SymbolId) -> f64) -> Option<(Form, f64)> {
+    let mut graph = model.graph.clone();
+    let patch = &model.patches[patch.0];
+    let formulas = Formulas::new(&mut graph, patch);
+    with_allowance(AT_ONCE, || {
+        let mut elements = Elements::new(&graph, model, patch, &formulas, Arguments::Split).ok()?;
+        // A root of both variables has no elementary integral by the rules here; writing it would be in vain.
+        if patch.variables.iter().all(|&variable| elements.square_depends_on(variable)) {
+            return None;
+        }
+        let (form, element) = shortest_element(&mut elements).ok()?;
+        if !elements.conditions.is_empty() || !element.bars.is_empty() {
+            return None;
+        }
+        let certificate = Certificate::new(model, patch, &formulas, &graph);
+        let names = certificate.names();
+        let proofs = certificate.check(&BTreeMap::from([(Quantity::Element, form.clone())]));
+        if proofs[&Quantity::Element] != Proof::Equal {
+            return None;
+        }
+        let mut total = Total { model, patch, graph: graph.clone(), names };
+        let area = total.area(&form)?;
+        let formula = parse_back(&mut total.graph, &area.text(), &total.names)?;
+        Some((area, evaluate_one(&total.graph, formula, values)))
+    })
 }
 
 /// The limits of the region; NaN or infinite where they depend on a variable or do not end.

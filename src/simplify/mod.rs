@@ -27,4 +27,4 @@ mod total;
 
 pub use facts::Fact;
 pub use form::{Form, NameKind};
-pub use forms::{ClosedForms, Quantity, closed_forms, evaluation_form};
+pub use forms::{ClosedForms, Quantity, closed_forms, evaluation_form, exact_area};
