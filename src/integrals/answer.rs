@@ -8,8 +8,8 @@ use super::run::{FunctionalOutcome, NEGLIGIBLE, Outcome, RUN_WORK, Run};
 use super::sides::chain_warnings;
 use crate::expression::{ExpressionId, Graph, SymbolId, differentiate, evaluate};
 use crate::language::{Bindings, Chain, Dimension, Functional, FunctionalId, FunctionalKind, Model, Unit, nearest};
-use crate::simplify::exact_area;
 use crate::quadrature::Limit;
+use crate::simplify::exact_area;
 use nalgebra::Matrix3;
 use rustc_hash::FxHashMap;
 use std::cell::Cell;
@@ -81,7 +81,9 @@ pub fn answer(
 fn exact(answer: &Answer, target: &Target, run: &Run<'_>) -> Option<String> {
     let ([component], [functional]) = (&target.components[..], &target.depends_on[..]) else { return None };
     let functional = &run.functionals[functional.0];
-    let ([(1 | -1, patch)], FunctionalKind::Area) = (&functional.chain.terms[..], &functional.kind) else { return None };
+    let ([(1 | -1, patch)], FunctionalKind::Area) = (&functional.chain.terms[..], &functional.kind) else {
+        return None;
+    };
     if run.graph.as_symbol(*component) != functional.results.first().copied() {
         return None;
     }

@@ -49,7 +49,7 @@ impl<'a> Certificate<'a> {
 
     /// What became of each form.
     pub fn check(mut self, forms: &BTreeMap<Quantity, Form>) -> BTreeMap<Quantity, Proof> {
-        let names = self.names();
+        let names = names(self.model, self.patch);
         let mut texts: Vec<(Quantity, ExpressionId)> = Vec::new();
         for (quantity, form) in forms {
             if let Some(formula) = parse_back(&mut self.graph, &form.text(), &names) {
@@ -75,13 +75,6 @@ impl<'a> Certificate<'a> {
             }
         }
         proofs
-    }
-
-    /// Symbols by name: a variable hides a parameter, as in the sheet.
-    pub fn names(&self) -> Vec<(String, SymbolId)> {
-        let variables = self.patch.variables.iter().map(|&symbol| (self.graph.symbol_name(symbol).to_owned(), symbol));
-        let parameters = self.model.parameters.iter().map(|parameter| (parameter.name.clone(), parameter.symbol));
-        variables.chain(parameters).collect()
     }
 
     fn check_in(&self, manner: Arguments, texts: &[(Quantity, ExpressionId)]) -> Step<Vec<(Quantity, bool)>> {
@@ -125,6 +118,13 @@ impl<'a> Certificate<'a> {
         }
         Ok(results)
     }
+}
+
+/// Symbols by name: a variable hides a parameter, as in the sheet.
+pub(super) fn names(model: &Model, patch: &Patch) -> Vec<(String, SymbolId)> {
+    let variables = patch.variables.iter().map(|&symbol| (model.graph.symbol_name(symbol).to_owned(), symbol));
+    let parameters = model.parameters.iter().map(|parameter| (parameter.name.clone(), parameter.symbol));
+    variables.chain(parameters).collect()
 }
 
 /// The definitions, straight from tangents and second derivatives.

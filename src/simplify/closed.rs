@@ -145,9 +145,11 @@ impl<'a> Elements<'a> {
         })
     }
 
-    /// Whether P depends on a symbol.
-    pub fn square_depends_on(&self, symbol: SymbolId) -> bool {
-        self.square.generators().into_iter().any(|g| self.ring().depends_on(g, symbol, self.reader.graph))
+    /// Whether what stands under the root depends on a symbol.
+    pub fn root_depends_on(&self, value: &Rooted, symbol: SymbolId) -> bool {
+        let depends =
+            |p: &Polynomial| p.generators().into_iter().any(|g| self.ring().depends_on(g, symbol, self.reader.graph));
+        depends(&value.root) || depends(&value.below)
     }
 
     fn ring(&self) -> &Ring {

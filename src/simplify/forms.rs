@@ -1,6 +1,6 @@
 //! All closed forms of a patch: derived, written, proved.
 
-use super::certificate::{Certificate, Proof};
+use super::certificate::{Certificate, Proof, names};
 use super::closed::{Elements, Formulas, Rooted};
 use super::facts::{Fact, facts};
 use super::form::Form;
@@ -10,6 +10,7 @@ use super::plan::Printer;
 use super::read::Arguments;
 use super::stability::is_stable;
 use super::total::Total;
+use crate::calculus::{cross, norm};
 use crate::expression::{ExpressionId, Graph, SymbolId, evaluate_one};
 use crate::language::{Bound, Model, Patch, PatchId};
 use std::collections::BTreeMap;
@@ -22,6 +23,9 @@ const WRITING: u64 = 6_000_000;
 
 /// Steps for proving all formulas.
 const PROVING: u64 = 60_000_000;
+
+/// Operations of the longest norm of a cross product that is compared with the closed form.
+const LONGEST_RAW: usize = 2_000;
 
 /// Steps for the element alone, where it is only evaluated.
 const EVALUATING: u64 = 4_000_000;
@@ -88,6 +92,7 @@ pub fn closed_forms(model: &Model, patch: PatchId) -> ClosedForms {
     let mut graph = model.graph.clone();
     let patch = &model.patches[patch.0];
     let formulas = Formulas::new(&mut graph, patch);
+    let raw = raw_element(&mut graph, patch, &formulas);
     let mut best = ClosedForms::default();
     for manner in formulas.manners(&graph) {
         let mut found = ClosedForms::default();
@@ -113,9 +118,15 @@ pub fn closed_forms(model: &Model, patch: PatchId) -> ClosedForms {
         found.conditions = elements.conditions.clone();
         merge(&mut best, found);
     }
+    if let (Some(raw), Some(element)) = (raw, best.forms.get_mut(&Quantity::Element))
+        && raw.operations() < element.operations()
+    {
+        *element = raw;
+        best.conditions.clear();
+        best.unproved_signs.clear();
+    }
     if let Some(element) = best.forms.get(&Quantity::Element) {
-        let names = Certificate::new(model, patch, &formulas, &graph).names();
-        let mut total = Total { model, patch, graph: graph.clone(), names };
+        let mut total = Total { model, patch, graph: graph.clone(), names: names(model, patch) };
         best.area = with_allowance(INTEGRATING, || total.area(element));
     }
     for list in [&mut best.cut_short, &mut best.failed] {
@@ -149,6 +160,46 @@ fn merge(best: &mut ClosedForms, found: ClosedForms) {
     best.facts.sort();
 }
 
+/// The closed form of the area element alone: its form and the conditions of [`ClosedForms::conditions`]; `None` where
+/// none was found and proved.
+pub fn element_form(model: &Model, patch: PatchId) -> Option<(Form, Vec<String>)> {
+    let mut graph = model.graph.clone();
+    let patch = &model.patches[patch.0];
+    let formulas = Formulas::new(&mut graph, patch);
+    let raw = raw_element(&mut graph, patch, &formulas);
+    let mut best: Option<(Form, Vec<String>)> = None;
+    for manner in formulas.manners(&graph) {
+        let found = with_allowance(EVALUATING, || -> Step<(Form, Vec<String>)> {
+            let mut elements = Elements::new(&graph, model, patch, &formulas, manner)?;
+            let (form, _) = shortest_element(&mut elements)?;
+            Ok((form, elements.conditions))
+        });
+        if let Ok((form, conditions)) = found
+            && best.as_ref().is_none_or(|(known, _)| form.operations() < known.operations())
+        {
+            best = Some((form, conditions));
+        }
+    }
+    let (form, conditions) = best?;
+    let certificate = Certificate::new(model, patch, &formulas, &graph);
+    let forms = BTreeMap::from([(Quantity::Element, form.clone())]);
+    let proofs = with_allowance(EVALUATING, || certificate.check(&forms));
+    if proofs[&Quantity::Element] != Proof::Equal {
+        return None;
+    }
+    match raw {
+        Some(raw) if raw.operations() < form.operations() => Some((raw, Vec::new())),
+        _ => Some((form, conditions)),
+    }
+}
+
+/// |phi_u x phi_v| as it is defined; `None` if it is longer than any form that is worth printing.
+fn raw_element(graph: &mut Graph, patch: &Patch, formulas: &Formulas) -> Option<Form> {
+    let normal = cross(graph, &formulas.tangents[0], &formulas.tangents[1]);
+    let element = norm(graph, &normal);
+    Form::of(graph, element, &patch.variables, LONGEST_RAW)
+}
+
 /// The area element as it is best evaluated: the proved closed form where it is about as accurate as the norm of the cross
 /// product and holds without further conditions; `None` where it is not.
 ///
@@ -160,26 +211,12 @@ pub fn evaluation_form(
     norm: ExpressionId,
     values: &dyn Fn(SymbolId) -> f64,
 ) -> Option<ExpressionId> {
-    let patch = &model.patches[patch.0];
-    let formulas = Formulas::new(graph, patch);
-    let form = formulas
-        .manners(graph)
-        .into_iter()
-        .filter_map(|manner| {
-            with_allowance(EVALUATING, || {
-                let mut elements = Elements::new(graph, model, patch, &formulas, manner).ok()?;
-                let (form, element) = shortest_element(&mut elements).ok()?;
-                (elements.conditions.is_empty() && element.bars.is_empty()).then_some(form)
-            })
-        })
-        .min_by_key(Form::operations)?;
-    let certificate = Certificate::new(model, patch, &formulas, graph);
-    let names = certificate.names();
-    let proofs = with_allowance(EVALUATING, || certificate.check(&BTreeMap::from([(Quantity::Element, form.clone())])));
-    if proofs[&Quantity::Element] != Proof::Equal {
+    let (form, conditions) = element_form(model, patch)?;
+    if !conditions.is_empty() {
         return None;
     }
-    let formula = parse_back(graph, &form.text(), &names)?;
+    let patch = &model.patches[patch.0];
+    let formula = parse_back(graph, &form.text(), &names(model, patch))?;
     let limits = limits(graph, patch, values);
     is_stable(graph, formula, norm, patch.variables, limits, values).then_some(formula)
 }
@@ -193,20 +230,21 @@ pub fn exact_area(model: &Model, patch: PatchId, values: &dyn Fn(SymbolId) -> f6
     with_allowance(AT_ONCE, || {
         let mut elements = Elements::new(&graph, model, patch, &formulas, Arguments::Split).ok()?;
         // A root of both variables has no elementary integral by the rules here; writing it would be in vain.
-        if patch.variables.iter().all(|&variable| elements.square_depends_on(variable)) {
+        let candidates = elements.element().ok()?;
+        let mixed = |candidate: &Rooted| patch.variables.iter().all(|&v| elements.root_depends_on(candidate, v));
+        if candidates.iter().all(mixed) {
             return None;
         }
-        let (form, element) = shortest_element(&mut elements).ok()?;
+        let (form, element) = shortest(&elements, candidates).ok()?;
         if !elements.conditions.is_empty() || !element.bars.is_empty() {
             return None;
         }
         let certificate = Certificate::new(model, patch, &formulas, &graph);
-        let names = certificate.names();
         let proofs = certificate.check(&BTreeMap::from([(Quantity::Element, form.clone())]));
         if proofs[&Quantity::Element] != Proof::Equal {
             return None;
         }
-        let mut total = Total { model, patch, graph: graph.clone(), names };
+        let mut total = Total { model, patch, graph: graph.clone(), names: names(model, patch) };
         let area = total.area(&form)?;
         let formula = parse_back(&mut total.graph, &area.text(), &total.names)?;
         Some((area, evaluate_one(&total.graph, formula, values)))
@@ -234,6 +272,10 @@ fn limits(graph: &Graph, patch: &Patch, values: &dyn Fn(SymbolId) -> f64) -> [(f
 /// The shortest form of the element and the value it was written from.
 fn shortest_element(elements: &mut Elements<'_>) -> Step<(Form, Rooted)> {
     let candidates = with_allowance(READING, || elements.element())?;
+    shortest(elements, candidates)
+}
+
+fn shortest(elements: &Elements<'_>, candidates: Vec<Rooted>) -> Step<(Form, Rooted)> {
     let mut printer = Printer::new(elements.reader.ring.clone(), elements.reader.graph, elements.variables, NODES);
     let mut shortest: Option<(Form, Rooted)> = None;
     for candidate in candidates {

@@ -27,4 +27,4 @@ mod total;
 
 pub use facts::Fact;
 pub use form::{Form, NameKind};
-pub use forms::{ClosedForms, Quantity, closed_forms, evaluation_form, exact_area};
+pub use forms::{ClosedForms, Quantity, closed_forms, element_form, evaluation_form, exact_area};

@@ -15,7 +15,8 @@ pub(super) fn product(number: &RBig, factors: Vec<(Form, Exponent)>) -> Form {
     for (form, exponent) in factors {
         dissolve(form, exponent, &mut number, &mut flat);
     }
-    let flat: Vec<(Form, Exponent)> = flat.into_iter().filter(|(_, (p, _))| *p != 0).collect();
+    let mut flat: Vec<(Form, Exponent)> = flat.into_iter().filter(|(_, (p, _))| *p != 0).collect();
+    join_conjugates(&mut flat);
     let mut best = arranged(&number, flat.clone());
     if let Some((number, joined)) = double_angles(&number, &flat) {
         let form = arranged(&number, joined);
@@ -133,7 +134,8 @@ fn dissolve(form: Form, exponent: Exponent, number: &mut RBig, flat: &mut Vec<(F
             above.into_iter().for_each(|form| dissolve(form, (power, 1), number, flat));
             below.into_iter().for_each(|form| dissolve(form, (-power, 1), number, flat));
         }
-        Form::Number(text) if root == 1 && text.len() <= 9 && text.parse::<u64>().is_ok_and(|n| n > 0) => {
+        // A long number is a named constant of the sheet and stays as it was typed.
+        Form::Number(text) if root == 1 && text.len() <= 4 && text.parse::<u64>().is_ok_and(|n| n > 0) => {
             let value = RBig::from(text.parse::<u64>().expect("just parsed"));
             let value = value.pow(power.abs() as isize);
             *number = if power < 0 { &*number / value } else { &*number * value };
@@ -145,10 +147,46 @@ fn dissolve(form: Form, exponent: Exponent, number: &mut RBig, flat: &mut Vec<(F
             }
             _ => flat.push((Form::Power(base, inner), exponent)),
         },
-        form => match flat.iter_mut().find(|(known, (_, own))| *known == form && *own == 1 && root == 1) {
-            Some((_, (total, _))) => *total += power,
+        form => match flat.iter_mut().find(|(known, (_, own))| *known == form && *own <= 2 && root <= 2) {
+            Some((_, total)) => {
+                // In halves: f^(p/2).
+                let halves = total.0 * (2 / total.1) + power * (2 / root);
+                *total = if halves % 2 == 0 { (halves / 2, 1) } else { (halves, 2) };
+            }
             None => flat.push((form, exponent)),
         },
+    }
+}
+
+/// (a + b)^n (a - b)^n as (a^2 - b^2)^n.
+fn join_conjugates(flat: &mut Vec<(Form, Exponent)>) {
+    let parts = |form: &Form| match form {
+        Form::Sum(terms) => match &terms[..] {
+            [(false, a), (minus, b)] => Some((a.clone(), b.clone(), *minus)),
+            _ => None,
+        },
+        _ => None,
+    };
+    for first in 0..flat.len() {
+        let Some((a, b, minus)) = parts(&flat[first].0) else { continue };
+        let other = flat.iter().position(|(form, exponent)| {
+            *exponent == flat[first].1
+                && parts(form)
+                    .is_some_and(|(c, d, other)| other != minus && ((c == a && d == b) || (!other && c == b && d == a)))
+        });
+        if let Some(second) = other {
+            // The difference says which square is subtracted.
+            let (a, b) = if minus { (a, b) } else { parts(&flat[second].0).map(|(a, b, _)| (a, b)).expect("matched") };
+            let square = |form: Form| product(&RBig::ONE, vec![(form, (2, 1))]);
+            let joined = Form::Sum(vec![(false, square(a)), (true, square(b))]);
+            if joined.operations() <= flat[first].0.operations() + flat[second].0.operations() + 1 {
+                let exponent = flat[first].1;
+                flat.remove(first.max(second));
+                flat.remove(first.min(second));
+                flat.push((joined, exponent));
+                return join_conjugates(flat);
+            }
+        }
     }
 }
 
