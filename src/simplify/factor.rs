@@ -125,7 +125,7 @@ pub(super) fn square_root(polynomial: &Polynomial) -> Step<Option<Polynomial>> {
 
 /// A square has even degrees and a square as its leading coefficient.
 fn may_be_square(polynomial: &Polynomial) -> bool {
-    polynomial.generators().iter().all(|&g| polynomial.degree(g) % 2 == 0)
+    polynomial.generators().iter().all(|&g| polynomial.degree(g).is_multiple_of(2))
         && integer_root(&polynomial.leading()).is_some()
 }
 

@@ -130,7 +130,7 @@ impl Ring {
         let shared = IBig::from(numerator.integer_content().gcd(&divisor));
         if shared != IBig::ONE {
             numerator = numerator.divided_by(&Polynomial::constant(shared.clone()))?.expect("it divides the content");
-            divisor = divisor / shared;
+            divisor /= shared;
         }
         Ok(Fraction { numerator, divisor, denominator })
     }

@@ -26,6 +26,9 @@ pub(super) struct Laurent {
     terms: Vec<(Exponents, RBig)>,
 }
 
+/// Forms with their exponents.
+type Powers = Vec<(Form, Exponent)>;
+
 /// Operations that no opaque function is printed beyond.
 const LONGEST_FUNCTION: usize = 400;
 
@@ -33,7 +36,7 @@ const LONGEST_FUNCTION: usize = 400;
 const BEAM: usize = 5;
 
 /// A form and whether it is subtracted.
-pub(super) type Signed_ = (bool, Form);
+pub(super) type SignedForm = (bool, Form);
 
 impl Laurent {
     pub fn of(polynomial: &Polynomial) -> Step<Self> {
@@ -55,7 +58,7 @@ impl Laurent {
             *sums.entry(exponents).or_insert(RBig::ZERO) += x;
         }
         let mut terms: Vec<_> = sums.into_iter().filter(|(_, x)| !x.is_zero()).collect();
-        terms.sort_unstable_by(|a, b| b.0.cmp(&a.0));
+        terms.sort_unstable_by_key(|term| std::cmp::Reverse(term.0));
         Self { terms }
     }
 
@@ -106,7 +109,7 @@ pub(super) struct Printer<'a> {
     pub ring: Ring,
     graph: &'a Graph,
     variables: [SymbolId; 2],
-    known: FxHashMap<Laurent, Signed_>,
+    known: FxHashMap<Laurent, SignedForm>,
     names: FxHashMap<usize, Form>,
     nodes: usize,
 }
@@ -209,7 +212,7 @@ impl<'a> Printer<'a> {
     }
 
     /// The shortest form found for a sum, and whether it is to be subtracted.
-    pub fn sum(&mut self, laurent: &Laurent) -> Step<Signed_> {
+    pub fn sum(&mut self, laurent: &Laurent) -> Step<SignedForm> {
         if laurent.len() == 0 {
             return Ok((false, Form::integer(0)));
         }
@@ -232,7 +235,7 @@ impl<'a> Printer<'a> {
         Ok(best)
     }
 
-    fn improve(&mut self, laurent: &Laurent, best: &mut Signed_) -> Step<()> {
+    fn improve(&mut self, laurent: &Laurent, best: &mut SignedForm) -> Step<()> {
         let (number, exponents, polynomial) = laurent.content();
         let is_free = exponents == [0; GENERATORS] && number.clone().abs().is_one();
         if !is_free {
@@ -246,7 +249,7 @@ impl<'a> Printer<'a> {
             let mixed = above != [0; GENERATORS] || !top.is_one();
             let divided = below != [0; GENERATORS] || number.denominator() != &dashu_int::UBig::ONE;
             if mixed && divided {
-                let bottom = ratio(number.numerator().signum().into(), IBig::from(number.denominator().clone()));
+                let bottom = ratio(number.numerator().signum(), IBig::from(number.denominator().clone()));
                 let inner = inner.times(&bottom, &below)?;
                 let partly = self.with_content(&top, &above, &inner)?;
                 keep(best, partly);
@@ -274,7 +277,7 @@ impl<'a> Printer<'a> {
         Ok(())
     }
 
-    fn with_content(&mut self, number: &RBig, exponents: &Exponents, inner: &Laurent) -> Step<Signed_> {
+    fn with_content(&mut self, number: &RBig, exponents: &Exponents, inner: &Laurent) -> Step<SignedForm> {
         let (negative, form) = self.sum(inner)?;
         let mut magnitude = number.clone().abs();
         let mut factors = self.generator_powers(exponents, &mut magnitude)?;
@@ -422,7 +425,7 @@ impl<'a> Printer<'a> {
         self.ring.pair_of(argument, pair.hyperbolic)
     }
 
-    fn factored(&mut self, polynomial: &Polynomial, negated: bool, best: &mut Signed_) -> Step<()> {
+    fn factored(&mut self, polynomial: &Polynomial, negated: bool, best: &mut SignedForm) -> Step<()> {
         let factored = factor(polynomial)?;
         if factored.factors.len() < 2 && factored.factors.iter().all(|(_, exponent)| *exponent == 1) {
             return Ok(());
@@ -439,7 +442,7 @@ impl<'a> Printer<'a> {
     }
 
     /// The plans for one sum as it stands: groupings and completed squares.
-    fn planned(&mut self, laurent: &Laurent, best: &mut Signed_) -> Step<()> {
+    fn planned(&mut self, laurent: &Laurent, best: &mut SignedForm) -> Step<()> {
         let flat = self.flat(laurent)?;
         keep(best, flat);
         let mut plans: Vec<(usize, Plan)> = Vec::new();
@@ -494,7 +497,7 @@ impl<'a> Printer<'a> {
         Ok(plans)
     }
 
-    fn carried_out(&mut self, plan: &Plan) -> Step<Signed_> {
+    fn carried_out(&mut self, plan: &Plan) -> Step<SignedForm> {
         let mut terms = Vec::new();
         for part in &plan.parts {
             let (negative, inner) = self.sum(&part.sum)?;
@@ -512,7 +515,7 @@ impl<'a> Printer<'a> {
     }
 
     /// Term by term.
-    fn flat(&mut self, laurent: &Laurent) -> Step<Signed_> {
+    fn flat(&mut self, laurent: &Laurent) -> Step<SignedForm> {
         let mut terms = Vec::with_capacity(laurent.len());
         for (exponents, x) in &laurent.terms {
             terms.push((is_negative(x), self.monomial(exponents, x)?));
@@ -641,7 +644,7 @@ impl<'a> Printer<'a> {
     }
 
     /// s^i c^j in twice the angle: s c = S/2, then s^2 = (1 - C)/2 or c^2 = (1 + C)/2; `None` if an odd power is left.
-    fn doubled_pair(&mut self, pair: &Pair, i: i8, j: i8) -> Step<Option<(Vec<(Form, Exponent)>, RBig)>> {
+    fn doubled_pair(&mut self, pair: &Pair, i: i8, j: i8) -> Step<Option<(Powers, RBig)>> {
         let shared = if i.signum() == j.signum() { i.signum() * i.abs().min(j.abs()) } else { 0 };
         let (i, j) = (i - shared, j - shared);
         if i % 2 != 0 || j % 2 != 0 || (i != 0 && j != 0) {
@@ -870,7 +873,7 @@ pub(super) fn single_generator(polynomial: &Polynomial) -> Option<usize> {
 }
 
 /// A sum in which a leading minus sign is taken out if every term has one.
-fn signed_sum(terms: Vec<(bool, Form)>) -> Signed_ {
+fn signed_sum(terms: Vec<(bool, Form)>) -> SignedForm {
     if terms.iter().all(|(negative, _)| *negative) {
         (true, sum(terms.into_iter().map(|(_, term)| (false, term)).collect()))
     } else {
@@ -879,9 +882,9 @@ fn signed_sum(terms: Vec<(bool, Form)>) -> Signed_ {
 }
 
 /// Keeps the shorter form; a sign outside counts as an operation.
-fn keep(best: &mut Signed_, candidate: Signed_) {
+fn keep(best: &mut SignedForm, candidate: SignedForm) {
     // Of equally long forms the one with fewer sums inside each other.
-    let cost = |(negative, form): &Signed_| (form.operations() + usize::from(*negative), form.sums());
+    let cost = |(negative, form): &SignedForm| (form.operations() + usize::from(*negative), form.sums());
     if cost(&candidate) < cost(best) {
         *best = candidate;
     }

@@ -97,7 +97,7 @@ impl Polynomial {
             *sums.entry(monomial).or_insert(IBig::ZERO) += coefficient;
         }
         let mut terms: Vec<_> = sums.into_iter().filter(|(_, coefficient)| *coefficient != IBig::ZERO).collect();
-        terms.sort_unstable_by(|a, b| b.0.cmp(&a.0));
+        terms.sort_unstable_by_key(|term| std::cmp::Reverse(term.0));
         Self { terms }
     }
 

@@ -551,7 +551,7 @@ fn primes(value: &IBig) -> Vec<IBig> {
     let mut found = Vec::new();
     for prime in [2, 3, 5, 7, 11, 13, 17, 19, 23, 29, 31, 37, 41, 43, 47].map(IBig::from) {
         if (&rest % &prime) == IBig::ZERO {
-            rest = rest / &prime;
+            rest /= &prime;
             found.push(prime);
         }
     }
@@ -617,7 +617,7 @@ fn rational_gcd(a: &RBig, b: &RBig) -> RBig {
     let numerator = (a.numerator() * IBig::from(b.denominator().clone()))
         .unsigned_abs()
         .gcd((b.numerator() * IBig::from(a.denominator().clone())).unsigned_abs());
-    RBig::from_parts(IBig::from(numerator), UBig::from(a.denominator() * b.denominator()))
+    RBig::from_parts(IBig::from(numerator), a.denominator() * b.denominator())
 }
 
 /// A formula as a sum of rational multiples of products, as far as it is written so; products of sums are multiplied out.
