@@ -31,6 +31,8 @@ pub mod calculus;
 
 pub mod language;
 
+pub mod enclosure;
+
 pub mod geometry;
 pub mod simplify;
 

@@ -20,7 +20,8 @@ const ORDER: &[&str] = &[
 ];
 
 /// Folders that may use less than everything before them.
-const ONLY: &[(&str, &[&str])] = &[("calculus", &["expression"]), ("kernel", &["expression"]), ("quadrature", &[])];
+const ONLY: &[(&str, &[&str])] =
+    &[("calculus", &["expression"]), ("enclosure", &["expression"]), ("kernel", &["expression"]), ("quadrature", &[])];
 
 /// Files that may contain unsafe code: they own machine code or choose processor features.
 const UNSAFE: &[&str] = &["src/kernel/machine_code.rs", "src/kernel/interpreter.rs"];
