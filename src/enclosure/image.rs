@@ -38,7 +38,7 @@ pub enum Truth {
 
 impl Truth {
     /// The opposite answer.
-    pub fn not(self) -> Truth {
+    pub fn opposite(self) -> Truth {
         match self {
             Truth::True => Truth::False,
             Truth::False => Truth::True,

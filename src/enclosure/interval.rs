@@ -263,7 +263,7 @@ impl Interval {
 
     /// Whether `a <= b` for members `a` of `self` and `b` of `other`: for all, for none, or for some.
     pub fn less_equal(self, other: Interval) -> Truth {
-        other.less(self).not()
+        other.less(self).opposite()
     }
 }
 
