@@ -141,7 +141,11 @@ impl Double {
         (sum + ONE).scaled(half).scaled(other) - ONE
     }
 
+    /// 0 below exp(-700), which no caller can tell from it.
     pub fn exp(self) -> Double {
+        if self.high < -700.0 {
+            return ZERO;
+        }
         if self.high < -0.5 {
             // 1 + (exp(x) - 1) would lose digits.
             return ONE / (-self).exp();
