@@ -33,8 +33,9 @@ pub mod language;
 
 pub mod enclosure;
 
-pub mod geometry;
 pub mod simplify;
+
+pub mod geometry;
 
 pub mod kernel;
 

@@ -48,7 +48,7 @@ impl<'a> Certificate<'a> {
     }
 
     /// What became of each form.
-    pub fn check(mut self, forms: &BTreeMap<Quantity, Form>) -> BTreeMap<Quantity, Proof> {
+    pub fn check(mut self, forms: &BTreeMap<Quantity, Form>, conditions: &[String]) -> BTreeMap<Quantity, Proof> {
         let names = names(self.model, self.patch);
         let mut texts: Vec<(Quantity, ExpressionId)> = Vec::new();
         for (quantity, form) in forms {
@@ -65,7 +65,7 @@ impl<'a> Certificate<'a> {
             // The others need the element.
             let left: Vec<_> =
                 texts.iter().filter(|(own, _)| open(own) || *own == Quantity::Element).copied().collect();
-            for (quantity, equal) in self.check_in(manner, &left).unwrap_or_default() {
+            for (quantity, equal) in self.check_in(manner, &left, !conditions.is_empty()).unwrap_or_default() {
                 let proof = proofs.get_mut(&quantity).expect("only what was asked for");
                 if equal {
                     *proof = Proof::Equal;
@@ -77,12 +77,21 @@ impl<'a> Certificate<'a> {
         proofs
     }
 
-    fn check_in(&self, manner: Arguments, texts: &[(Quantity, ExpressionId)]) -> Step<Vec<(Quantity, bool)>> {
+    /// `conditional`: the forms hold where signs are as they are for the values of the sheet.
+    fn check_in(
+        &self,
+        manner: Arguments,
+        texts: &[(Quantity, ExpressionId)],
+        conditional: bool,
+    ) -> Step<Vec<(Quantity, bool)>> {
         let mut roots: Vec<ExpressionId> = texts.iter().map(|(_, formula)| *formula).collect();
         roots.extend(self.formulas.tangents.iter().chain(&self.formulas.second).flatten());
         roots.extend(region::formulas(self.model, self.patch));
         let mut reader = Reader::new(&self.graph, &roots, manner, Purpose::Proving)?;
-        let ranges = region::read(&mut reader, self.model, self.patch);
+        let mut ranges = region::read(&mut reader, self.model, self.patch);
+        if conditional {
+            ranges = region::at_the_values(&mut reader, self.model, &ranges)?;
+        }
         let prove = |ring: &Ring, polynomial: &Polynomial| sign(ring, &self.graph, &ranges, polynomial);
         let mut vector = |formulas: &[ExpressionId; 3]| -> Step<[Fraction; 3]> {
             Ok([

@@ -105,7 +105,7 @@ pub fn closed_forms(model: &Model, patch: PatchId) -> ClosedForms {
             best.cut_short.push(Quantity::Element);
         }
         let certificate = Certificate::new(model, patch, &formulas, &graph);
-        let proofs = with_allowance(PROVING, || certificate.check(&found.forms));
+        let proofs = with_allowance(PROVING, || certificate.check(&found.forms, &elements.conditions));
         found.forms.retain(|quantity, _| proofs[quantity] == Proof::Equal);
         for (quantity, proof) in proofs {
             match proof {
@@ -183,7 +183,7 @@ pub fn element_form(model: &Model, patch: PatchId) -> Option<(Form, Vec<String>)
     let (form, conditions) = best?;
     let certificate = Certificate::new(model, patch, &formulas, &graph);
     let forms = BTreeMap::from([(Quantity::Element, form.clone())]);
-    let proofs = with_allowance(EVALUATING, || certificate.check(&forms));
+    let proofs = with_allowance(EVALUATING, || certificate.check(&forms, &conditions));
     if proofs[&Quantity::Element] != Proof::Equal {
         return None;
     }
@@ -212,7 +212,12 @@ pub fn evaluation_form(
     values: &dyn Fn(SymbolId) -> f64,
 ) -> Option<ExpressionId> {
     let (form, conditions) = element_form(model, patch)?;
-    if !conditions.is_empty() {
+    // Conditions were derived from the values of the sheet; other values might not fulfil them.
+    let as_in_the_sheet = model
+        .parameters
+        .iter()
+        .all(|parameter| evaluate_one(&model.graph, parameter.default, |_| f64::NAN) == values(parameter.symbol));
+    if !conditions.is_empty() && !as_in_the_sheet {
         return None;
     }
     let patch = &model.patches[patch.0];
@@ -240,7 +245,7 @@ pub fn exact_area(model: &Model, patch: PatchId, values: &dyn Fn(SymbolId) -> f6
             return None;
         }
         let certificate = Certificate::new(model, patch, &formulas, &graph);
-        let proofs = certificate.check(&BTreeMap::from([(Quantity::Element, form.clone())]));
+        let proofs = certificate.check(&BTreeMap::from([(Quantity::Element, form.clone())]), &[]);
         if proofs[&Quantity::Element] != Proof::Equal {
             return None;
         }

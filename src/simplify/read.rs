@@ -13,7 +13,7 @@ use super::polynomial::Polynomial;
 use super::ring::{AngleId, Kind, Ring};
 use crate::expression::{BinaryFunction, Exact, ExpressionId, Function, Graph, Node};
 use dashu_base::{Abs, Signed, UnsignedAbs};
-use dashu_int::{IBig, UBig};
+use dashu_int::IBig;
 use dashu_ratio::RBig;
 use rustc_hash::FxHashMap;
 
@@ -476,24 +476,36 @@ impl<'a> Reader<'a> {
         for (factor, exponent) in &radicand.denominator {
             match sign(&self.ring, factor) {
                 Some(sign) => {
-                    below.push((if sign < 0 { factor.negated() } else { factor.clone() }, *exponent));
-                    if sign < 0 && exponent % 2 == 1 {
-                        above = above.negated();
+                    below.push((Fraction::whole(factor.power(exponent / 2)?), None));
+                    if exponent / 2 % 2 == 1 && sign < 0 {
+                        below.push((Fraction::whole(Polynomial::integer(-1)), None));
+                    }
+                    if exponent % 2 == 1 {
+                        let positive = if sign < 0 { factor.negated() } else { factor.clone() };
+                        above = if sign < 0 { above.negated() } else { above };
+                        below.push((Fraction::whole(Polynomial::one()), Some(positive)));
                     }
                 }
-                None if exponent % 4 == 0 => below.push((factor.clone(), *exponent)),
-                None => return Ok(None),
+                // sqrt(p/f) = sqrt(p f)/|f|, sqrt(p/f^2) = sqrt(p)/|f|, and |f| is the root of f^2.
+                None => {
+                    if exponent % 2 == 1 {
+                        above = self.ring.canonical(&above.times(factor)?)?;
+                    }
+                    let bars = self.ring.canonical(&factor.power(2)?)?;
+                    let bars = self.generator(Kind::Root(2, bars))?;
+                    let power = self.ring.power(&bars, i64::from(exponent.div_ceil(2)))?.ok_or(Exhausted)?;
+                    below.push((power, None));
+                }
             }
         }
         let Some(mut value) = self.root_of_polynomial(&above, sign)? else { return Ok(None) };
         value = self
             .ring
             .multiply(&value, &Fraction { divisor: radicand.divisor.clone(), ..Fraction::whole(Polynomial::one()) })?;
-        for (factor, exponent) in below {
-            let power = factor.power(exponent / 2)?;
-            value = self.ring.divide(&value, &Fraction::whole(power))?.ok_or(Exhausted)?;
-            if exponent % 2 == 1 {
-                let Some(root) = self.root_of_polynomial(&factor, sign)? else { return Ok(None) };
+        for (divisor, root) in below {
+            value = self.ring.divide(&value, &divisor)?.ok_or(Exhausted)?;
+            if let Some(root) = root {
+                let Some(root) = self.root_of_polynomial(&root, sign)? else { return Ok(None) };
                 value = self.ring.divide(&value, &root)?.ok_or(Exhausted)?;
             }
         }

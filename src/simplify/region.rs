@@ -154,6 +154,13 @@ pub(super) fn guesses(reader: &mut Reader<'_>, model: &Model, ranges: &Ranges, u
             }
         }
     }
+    let exact = at_the_values(reader, model, ranges)?;
+    guesses.push(Guess { text: "the values of the sheet".to_owned(), ranges: exact });
+    Ok(guesses)
+}
+
+/// The ranges with every parameter at its value in the sheet.
+pub(super) fn at_the_values(reader: &mut Reader<'_>, model: &Model, ranges: &Ranges) -> Step<Ranges> {
     let mut exact = ranges.clone();
     for parameter in &model.parameters {
         let generator = reader.ring.generator(Kind::Symbol(parameter.symbol))?;
@@ -162,6 +169,5 @@ pub(super) fn guesses(reader: &mut Reader<'_>, model: &Model, ranges: &Ranges, u
             *exact.entry(generator) = super::sign::Range { lower: vec![value.clone()], upper: vec![value] };
         }
     }
-    guesses.push(Guess { text: "the values of the sheet".to_owned(), ranges: exact });
-    Ok(guesses)
+    Ok(exact)
 }

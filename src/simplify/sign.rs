@@ -449,11 +449,13 @@ impl Prover<'_> {
         if !(upper - lower < 6.0 && lower.abs() < 1e6) {
             return whole;
         }
-        // A margin far above the rounding errors; the ends are then exact in the quarter-turn arithmetic.
-        let quarter = |x: f64| x / (PI / 2.0);
-        let shift = if sine { 1.0 } else { 0.0 };
-        let from = RBig::try_from(quarter(lower) - shift - 1e-9).unwrap_or(RBig::ZERO);
-        let to = RBig::try_from(quarter(upper) - shift + 1e-9).unwrap_or(RBig::ZERO);
+        // A margin far above the rounding errors, but none at 0; the ends are then exact in the quarter-turn arithmetic.
+        let shift = if sine { RBig::ONE } else { RBig::ZERO };
+        let quarter = |x: f64, margin: f64| {
+            let turns = if x == 0.0 { 0.0 } else { x / (PI / 2.0) + margin };
+            RBig::try_from(turns).unwrap_or(RBig::ZERO) - &shift
+        };
+        let (from, to) = (quarter(lower, -1e-9), quarter(upper, 1e-9));
         let (lower, upper) = cosine_range(&from, &to);
         (lower, upper, true)
     }
@@ -552,13 +554,22 @@ impl Prover<'_> {
                 widened((lower.max(0.0).sqrt(), upper.max(0.0).sqrt()))
             }
             Kind::Root(..) => anything,
-            Kind::Call(function, _) => match function {
-                Function::Asin | Function::Atan => (-PI / 2.0 - 1e-15, PI / 2.0 + 1e-15),
-                Function::Acos => (0.0, PI + 1e-15),
-                Function::Acosh | Function::Erfc => (0.0, f64::INFINITY),
-                Function::Sign | Function::Erf => (-1.0, 1.0),
-                _ => anything,
-            },
+            Kind::Call(function, argument) => {
+                let (lower, upper) = self.numeric(argument, depth);
+                // Increasing functions, an outer margin far above their rounding.
+                let range = |low: f64, high: f64| {
+                    let end = |x: f64, out: f64| if x == 0.0 { 0.0 } else { function.evaluate(x) + out };
+                    (end(lower.max(low), -1e-12), end(upper.min(high), 1e-12))
+                };
+                match function {
+                    Function::Asin => range(-1.0, 1.0),
+                    Function::Atan | Function::Asinh | Function::Erf => range(-1e300, 1e300),
+                    Function::Acos => (0.0, PI + 1e-15),
+                    Function::Acosh | Function::Erfc => (0.0, f64::INFINITY),
+                    Function::Sign => (-1.0, 1.0),
+                    _ => anything,
+                }
+            }
             Kind::Opaque(expression) => match self.graph.node(*expression) {
                 Node::Call(Function::Abs | Function::Sqrt, _) => (0.0, f64::INFINITY),
                 _ => anything,

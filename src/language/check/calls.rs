@@ -325,11 +325,13 @@ impl Checker {
         self.arity(callee, arguments, &[2])?;
         let patch = self.patch(id).clone();
         let mut replacements = Vec::with_capacity(2);
-        for i in 0..2 {
-            let value = self.number(arguments[i])?;
-            let span = self.span(arguments[i]);
-            self.same_dimension(Some(patch.variable_dimensions[i]), value.dimension, span, "this argument")?;
-            replacements.push((patch.variables[i], value.components[0]));
+        for (&argument, (&variable, &dimension)) in
+            arguments.iter().zip(patch.variables.iter().zip(&patch.variable_dimensions))
+        {
+            let value = self.number(argument)?;
+            let span = self.span(argument);
+            self.same_dimension(Some(dimension), value.dimension, span, "this argument")?;
+            replacements.push((variable, value.components[0]));
         }
         self.step(self.graph.reachable(&patch.position).len(), callee.span)?;
         let components = self.graph.substitute(&patch.position, &replacements);
