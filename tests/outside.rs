@@ -229,3 +229,22 @@ fn ribs_that_fall_between_the_nodes() {
         holds(&checks, &[0.5]);
     }
 }
+
+/// A lid that is a thousandth too high leaves a gap; so does an open end beside one at infinity.
+#[test]
+fn small_gaps_are_noticed() {
+    let can = |height: &str| {
+        format!(
+            "wall(u, h) = (cos(u), sin(u), h) on u in [0, 2*pi], h in [0, 1]\n\
+             lid(s, u) = (s*cos(u), s*sin(u), {height}) on s in [0, 1], u in [0, 2*pi]\n\
+             floor(s, u) = (s*cos(u), s*sin(u), 0*s) on s in [0, 1], u in [0, 2*pi]\n\
+             v = volume(wall + lid - floor)"
+        )
+    };
+    let warned = |sheet: &str| answers(sheet)[0].warnings.iter().any(|warning| warning.contains("open"));
+    assert!(!warned(&can("1 + 0*s")), "a closed can");
+    assert!(warned(&can("1.001 + 0*s")), "a lid that is 1/1000 too high");
+    assert!(warned(&can("1.00001 + 0*s")), "a lid that is 1/100000 too high");
+    // The end at infinity is no boundary, the circle at h = 1 is one.
+    assert!(warned("horn(u, h) = (cos(u)/h, sin(u)/h, h) on u in [0, 2*pi], h in [1, inf]\nv = flux((x, y, 0), horn)"));
+}

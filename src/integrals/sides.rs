@@ -1,6 +1,7 @@
 //! Sides of patches: which of them meet, so that an open or one-sided chain under a flux or a volume is noticed.
 //!
-//! Sides are compared numerically: two sides meet if every sample of one lies on the other and the other way round. A side
+//! Sides are compared numerically: two sides meet if samples of one lie on the other and the other way round, each within
+//! rounding of its nearest point. A side at an infinite end is no boundary. A side
 //! that collapses to a point has no boundary. A chain is closed when the sides cancel: each meets another with opposite
 //! sense. It is one-sided where two sides of one patch meet with equal sense.
 
@@ -16,12 +17,23 @@ const SAMPLES: usize = 129;
 /// Distance, relative to the size of the chain, within which two sides are taken to meet.
 const MEETING: f64 = 1e-7;
 
-struct Side {
+/// Samples whose nearest point on the other side is searched for.
+const SEARCHED: usize = 17;
+
+/// Steps of that search; each leaves 0.62 of the interval.
+const SEARCH_STEPS: usize = 80;
+
+/// Where along an infinite interval the last sample of a side lies, as a part of the mapped length.
+const FAR: f64 = 0.999;
+
+struct Side<'a> {
     patch: String,
     label: String,
     /// Multiplicity with the sense of the boundary: positive when traversed with the surface on the left.
     coefficient: i64,
     points: Vec<Point>,
+    /// The point at a fraction of the side.
+    at: Box<dyn Fn(f64) -> Point + 'a>,
 }
 
 /// Warnings for a flux or a volume through a chain that is open or one-sided.
@@ -36,10 +48,7 @@ pub(super) fn chain_warnings(run: &Run<'_>, id: FunctionalId) -> Vec<String> {
         if patch.trim.is_some() {
             return vec![format!("{}: `{}` is trimmed, so its edge is not checked", functional.text, patch.name)];
         }
-        match sides_of(&run.graph, patch, coefficient, &run.bindings) {
-            Some(found) => sides.extend(found),
-            None => return Vec::new(),
-        }
+        sides.extend(sides_of(&run.graph, patch, coefficient, &run.bindings));
     }
     let size = extent(sides.iter().flat_map(|side| &side.points));
     sides.retain(|side| extent(side.points.iter()) > MEETING * size);
@@ -51,7 +60,7 @@ pub(super) fn chain_warnings(run: &Run<'_>, id: FunctionalId) -> Vec<String> {
             if left[a] == 0 || left[b] == 0 {
                 continue;
             }
-            let Some(same_sense) = meeting(&sides[a].points, &sides[b].points, MEETING * size) else { continue };
+            let Some(same_sense) = meeting(&sides[a], &sides[b], MEETING * size) else { continue };
             let sense = if same_sense { 1 } else { -1 };
             if sides[a].patch == sides[b].patch && left[a] * left[b] * sense > 0 {
                 warnings.push(format!(
@@ -81,34 +90,34 @@ pub(super) fn chain_warnings(run: &Run<'_>, id: FunctionalId) -> Vec<String> {
     warnings
 }
 
-/// The four sides, traversed counterclockwise in the plane of the variables; `None` where one is at infinity.
-fn sides_of(graph: &Graph, patch: &Patch, coefficient: i64, bindings: &Bindings) -> Option<Vec<Side>> {
-    let infinite = patch
-        .intervals
-        .iter()
-        .any(|interval| [interval.lower, interval.upper].iter().any(|bound| !matches!(bound, Bound::Finite(_))));
-    if infinite {
-        return None;
-    }
+/// The sides that are not at infinity, traversed counterclockwise in the plane of the variables.
+fn sides_of<'a>(graph: &'a Graph, patch: &'a Patch, coefficient: i64, bindings: &'a Bindings) -> Vec<Side<'a>> {
     let multiplicity = coefficient * i64::from(patch.orientation);
     let name = |index: usize| graph.symbol_name(patch.variables[index]).to_owned();
-    let side = |label: String, coefficient: i64, along: usize, upper: bool| {
-        let points = (0..SAMPLES)
-            .map(|i| {
-                let share = i as f64 / (SAMPLES - 1) as f64;
-                let mut shares = [share; 2];
-                shares[1 - along] = if upper { 1.0 } else { 0.0 };
-                position(graph, patch, shares, bindings)
-            })
-            .collect();
-        Side { patch: patch.name.clone(), label, coefficient, points }
+    let side = |end: &str, coefficient: i64, along: usize, upper: bool| {
+        let across = &patch.intervals[1 - along];
+        let bound = if upper { across.upper } else { across.lower };
+        if !matches!(bound, Bound::Finite(_)) {
+            return None;
+        }
+        let at = move |share: f64| {
+            let mut shares = [share; 2];
+            shares[1 - along] = if upper { 1.0 } else { 0.0 };
+            position(graph, patch, shares, bindings)
+        };
+        let points = (0..SAMPLES).map(|i| at(i as f64 / (SAMPLES - 1) as f64)).collect();
+        let label = format!("the {end} end of {}", name(1 - along));
+        Some(Side { patch: patch.name.clone(), label, coefficient, points, at: Box::new(at) })
     };
-    Some(vec![
-        side(format!("the lower end of {}", name(1)), multiplicity, 0, false),
-        side(format!("the upper end of {}", name(0)), multiplicity, 1, true),
-        side(format!("the upper end of {}", name(1)), -multiplicity, 0, true),
-        side(format!("the lower end of {}", name(0)), -multiplicity, 1, false),
-    ])
+    [
+        side("lower", multiplicity, 0, false),
+        side("upper", multiplicity, 1, true),
+        side("upper", -multiplicity, 0, true),
+        side("lower", -multiplicity, 1, false),
+    ]
+    .into_iter()
+    .flatten()
+    .collect()
 }
 
 /// The position at fractions of the two intervals.
@@ -124,15 +133,31 @@ fn position(graph: &Graph, patch: &Patch, shares: [f64; 2], bindings: &Bindings)
     for _ in 0..2 {
         for index in 0..2 {
             let interval = &patch.intervals[index];
-            if let (Bound::Finite(lower), Bound::Finite(upper)) = (interval.lower, interval.upper) {
-                let ends = value(&[lower, upper], coordinates);
-                coordinates[index] =
-                    if shares[index] >= 1.0 { ends[1] } else { ends[0] + shares[index] * (ends[1] - ends[0]) };
-            }
+            let end = |bound: Bound| match bound {
+                Bound::Finite(formula) => value(&[formula], coordinates)[0],
+                Bound::MinusInfinity => f64::NEG_INFINITY,
+                Bound::PlusInfinity => f64::INFINITY,
+            };
+            coordinates[index] = between(end(interval.lower), end(interval.upper), shares[index]);
         }
     }
     let position = value(&patch.position, coordinates);
     [position[0], position[1], position[2]]
+}
+
+/// The number at a fraction of an interval; infinite intervals are mapped to finite ones and end far out.
+fn between(lower: f64, upper: f64, share: f64) -> f64 {
+    let far = share.min(FAR);
+    match (lower.is_finite(), upper.is_finite()) {
+        (true, true) if share >= 1.0 => upper,
+        (true, true) => lower + share * (upper - lower),
+        (true, false) => lower + far / (1.0 - far),
+        (false, true) => upper - (1.0 - share).min(FAR) / (1.0 - (1.0 - share).min(FAR)),
+        (false, false) => {
+            let t = (2.0 * share - 1.0).clamp(-FAR, FAR);
+            t / (1.0 - t * t)
+        }
+    }
 }
 
 fn extent<'a>(points: impl Iterator<Item = &'a Point>) -> f64 {
@@ -147,15 +172,16 @@ fn extent<'a>(points: impl Iterator<Item = &'a Point>) -> f64 {
 }
 
 /// Whether two curves cover each other, and if so whether they are traversed in the same sense.
-fn meeting(a: &[Point], b: &[Point], tolerance: f64) -> Option<bool> {
-    // Between samples a curve is known up to its sagitta only; both ends of a chord allow for that.
+fn meeting(first: &Side<'_>, second: &Side<'_>, tolerance: f64) -> Option<bool> {
+    let (a, b) = (&first.points[..], &second.points[..]);
+    // Between samples a curve is known up to its sagitta only; this looks whether a closer search is worth while.
     let sagitta =
         |points: &[Point]| points.windows(3).map(|w| distance_to_segment(&w[1], &w[0], &w[2])).fold(0.0, f64::max);
     let near = tolerance + sagitta(a).max(sagitta(b));
     let covered = |from: &[Point], onto: &[Point]| {
         from.iter().all(|point| onto.windows(2).any(|w| distance_to_segment(point, &w[0], &w[1]) <= near))
     };
-    if !covered(a, b) || !covered(b, a) {
+    if !covered(a, b) || !covered(b, a) || !lies_on(a, second, tolerance) || !lies_on(b, first, tolerance) {
         return None;
     }
     let nearest = |point: &Point| {
@@ -170,6 +196,34 @@ fn meeting(a: &[Point], b: &[Point], tolerance: f64) -> Option<bool> {
         })
         .sum();
     Some(steps > 0)
+}
+
+/// Whether samples of a curve lie on a side, each found by a golden-section search around its nearest sample there.
+fn lies_on(points: &[Point], side: &Side<'_>, tolerance: f64) -> bool {
+    let last = (side.points.len() - 1) as f64;
+    let step = (points.len() - 1) / (SEARCHED - 1);
+    points.iter().step_by(step.max(1)).all(|point| {
+        let nearest = (0..side.points.len())
+            .min_by(|&i, &j| distance(point, &side.points[i]).total_cmp(&distance(point, &side.points[j])))
+            .unwrap_or(0) as f64;
+        let away = |share: f64| distance(point, &(side.at)(share));
+        let (mut low, mut high) = ((nearest - 1.0).max(0.0) / last, (nearest + 1.0).min(last) / last);
+        for end in [low, high, nearest / last] {
+            if away(end) <= tolerance {
+                return true;
+            }
+        }
+        const GOLDEN: f64 = 0.618_033_988_749_894_9;
+        for _ in 0..SEARCH_STEPS {
+            let (left, right) = (high - GOLDEN * (high - low), low + GOLDEN * (high - low));
+            if away(left) <= away(right) {
+                high = right;
+            } else {
+                low = left;
+            }
+        }
+        away(0.5 * (low + high)) <= tolerance
+    })
 }
 
 fn distance(a: &Point, b: &Point) -> f64 {
