@@ -229,17 +229,17 @@ each_function! {
 fn functions_of_two_arguments_are_enclosed() {
     let mut random = Random::new(99);
     for _ in 0..argument_count() {
-        let (x, y) = (random.spread(-1e3, 1e3), random.spread(-1e3, 1e3));
-        let (around_x, around_y) = (random.around(x, -1e4, 1e4), random.around(y, -1e4, 1e4));
-        let (a, b) = (Double::from(x), Double::from(y));
-        let found = image_of_two(BinaryFunction::Hypot, around_x, around_y);
-        assert!(contains(found.range, a.hypot(b)), "hypot over {around_x}, {around_y}: {}", found.range);
+        let (y, x) = (random.spread(-1e3, 1e3), random.spread(-1e3, 1e3));
+        let (around_y, around_x) = (random.around(y, -1e4, 1e4), random.around(x, -1e4, 1e4));
+        let (a, b) = (Double::from(y), Double::from(x));
+        let found = image_of_two(BinaryFunction::Hypot, around_y, around_x);
+        assert!(contains(found.range, a.hypot(b)), "hypot over {around_y}, {around_x}: {}", found.range);
         if x != 0.0 || y != 0.0 {
-            let found = image_of_two(BinaryFunction::Atan2, around_x, around_y);
+            let found = image_of_two(BinaryFunction::Atan2, around_y, around_x);
             let expected = Double::angle(a, b);
-            assert!(contains(found.range, expected), "atan2 over {around_x}, {around_y}: {}", found.range);
-            let crosses_cut = around_y.lower() < 0.0 && around_x.lower() < 0.0 && around_x.upper() >= 0.0;
-            assert!(!found.continuous || !crosses_cut, "atan2 over {around_x}, {around_y} is not continuous");
+            assert!(contains(found.range, expected), "atan2 over {around_y}, {around_x}: {}", found.range);
+            let crosses_cut = around_y.lower() < 0.0 && around_y.upper() >= 0.0 && around_x.lower() < 0.0;
+            assert!(!found.continuous || !crosses_cut, "atan2 over {around_y}, {around_x} is not continuous");
         }
     }
 }
@@ -473,6 +473,7 @@ fn edges_of_domains_are_judged() {
     }
     let angles = [
         (interval(-1.0, 1.0), interval(-2.0, -1.0), false, Everywhere),
+        (interval(-1.0, 0.0), interval(-2.0, -1.0), false, Everywhere),
         (interval(0.0, 1.0), interval(-2.0, -1.0), true, Everywhere),
         (interval(-1.0, 1.0), interval(1.0, 2.0), true, Everywhere),
         (interval(-1.0, 1.0), interval(0.0, 2.0), false, Partly),
@@ -480,6 +481,10 @@ fn edges_of_domains_are_judged() {
     for (y, x, continuous, defined) in angles {
         let image = image_of_two(BinaryFunction::Atan2, y, x);
         assert_eq!((image.continuous, image.defined), (continuous, defined), "atan2 over {y}, {x}");
+        if y.lower() < 0.0 && y.upper() >= 0.0 && x.upper() < 0.0 {
+            // On the cut the angle is pi, below it -pi is approached.
+            assert!(interval(-3.1, 3.1).is_within(image.range), "atan2 over {y}, {x}: {}", image.range);
+        }
     }
 }
 
@@ -902,6 +907,30 @@ fn branches_are_judged_under_their_conditions() {
         g.select(condition, log, one)
     });
     assert_eq!(closed.defined, Defined::Partly, "x may be 0 where 0 <= x");
+    let closed = image_over(wide, |g, x| {
+        let (zero, one) = (g.integer(0), g.integer(1));
+        let (condition, inverse) = (g.less_equal(x, zero), g.divide(one, x));
+        g.select(condition, inverse, one)
+    });
+    assert_eq!(closed.defined, Defined::Partly, "x may be 0 where x <= 0");
+    // x > 0 passes on to 2x, x^2 + y^2, sqrt and so on.
+    let derived = image_over(wide, |g, x| {
+        let (zero, one, two) = (g.integer(0), g.integer(1), g.integer(2));
+        let (condition, double, square) = (g.less(zero, x), g.multiply(two, x), g.square(x));
+        let sum = g.add(double, square);
+        let root = g.call(Function::Sqrt, sum);
+        let inverse = g.divide(one, root);
+        g.select(condition, inverse, one)
+    });
+    assert_eq!(derived.defined, Defined::Everywhere);
+    let repeated = image_over(wide, |g, x| {
+        let (zero, one) = (g.integer(0), g.integer(1));
+        let (condition, log, nothing) = (g.less_equal(x, one), g.call(Function::Log, x), g.divide(one, zero));
+        let inner = g.select(condition, zero, nothing);
+        let outer = g.select(condition, inner, log);
+        g.add(outer, one)
+    });
+    assert_eq!(repeated.defined, Defined::Everywhere, "the same condition is not asked twice");
     let both = image_over(wide, |g, x| {
         let (low, high) = (g.fraction(1, 2), g.integer(2));
         let (above, below) = (g.less(low, x), g.less(x, high));

@@ -50,18 +50,23 @@ pub(super) fn inside(x: Interval, (lower, lower_closed): (f64, bool), (upper, up
 
 /// The values of an increasing function.
 fn increasing(function: Function, x: Interval) -> Interval {
-    if x.is_empty() {
-        return x;
-    }
-    Interval::new(value(function, x.lower()).lower(), value(function, x.upper()).upper())
+    let (low, high) = at_ends(function, x);
+    Interval::new(low.lower(), high.upper())
 }
 
 /// The values of a decreasing function.
 fn decreasing(function: Function, x: Interval) -> Interval {
+    let (high, low) = at_ends(function, x);
+    Interval::new(low.lower(), high.upper())
+}
+
+/// The values at both ends of an interval, which are one for a thin interval and empty for the empty one.
+fn at_ends(function: Function, x: Interval) -> (Interval, Interval) {
     if x.is_empty() {
-        return x;
+        return (x, x);
     }
-    Interval::new(value(function, x.upper()).lower(), value(function, x.lower()).upper())
+    let first = value(function, x.lower());
+    (first, if x.is_thin() { first } else { value(function, x.upper()) })
 }
 
 /// The value of a function at one argument inside its domain, or its limit at an infinite or open end.
@@ -173,9 +178,11 @@ fn oscillation(function: Function, x: Interval, turns: Interval) -> Interval {
         let first = ((turns.lower() - remainder) / 2.0).ceil() * 2.0 + remainder;
         first <= turns.upper()
     };
-    // At an infinite end no value exists, but then both extreme values are taken.
-    let end = |x: f64| if x.is_finite() { value(function, x) } else { Interval::EMPTY };
-    let mut range = end(x.lower()).hull(end(x.upper()));
+    if !x.is_bounded() {
+        return Interval::new(-1.0, 1.0);
+    }
+    let (first, last) = at_ends(function, x);
+    let mut range = first.hull(last);
     if holds(0.0) {
         range = range.hull(Interval::ONE);
     }

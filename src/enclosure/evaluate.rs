@@ -96,6 +96,11 @@ impl<'g> Ranges<'g> {
 
     /// The image of a node that is neither a symbol nor a choice, from those of its operands.
     fn operation(&self, node: Node, place: usize, at: impl Fn(ExpressionId) -> Image) -> Image {
+        let image = self.bare_operation(node, place, &at);
+        Image { nonzero: image.nonzero || is_never_zero(node, at), ..image }
+    }
+
+    fn bare_operation(&self, node: Node, place: usize, at: impl Fn(ExpressionId) -> Image) -> Image {
         match node {
             Node::Number(_) => Image::everywhere(self.numbers[place]),
             Node::Pi => Image::everywhere(Interval::pi()),
@@ -161,6 +166,21 @@ fn open_at_zero(image: Image, argument: Image) -> Image {
         Image::everywhere(image.range)
     } else {
         image
+    }
+}
+
+/// Whether a node is not 0 for a reason that its range need not show: because its operands are not, or because the function
+/// has no zeros (its range may still have an end at 0).
+fn is_never_zero(node: Node, at: impl Fn(ExpressionId) -> Image) -> bool {
+    use Function::*;
+    let nonzero = |a: ExpressionId| at(a).nonzero;
+    match node {
+        Node::Negate(a) | Node::Divide(a, _) | Node::Power(a, _) => nonzero(a),
+        Node::Multiply(a, b) => nonzero(a) && nonzero(b),
+        Node::Add(a, b) => at(a).range.lower() >= 0.0 && at(b).range.lower() >= 0.0 && (nonzero(a) || nonzero(b)),
+        Node::Call(Exp | Erfc | Cosh | Gamma | EllipticK(_) | EllipticE(_), _) => true,
+        Node::Call(Abs | Sign | Sqrt | Cbrt | Sinh | Asinh | Atan | Asin | Tanh | Atanh | Erf, a) => nonzero(a),
+        _ => false,
     }
 }
 
@@ -238,6 +258,7 @@ impl Sweep<'_, '_> {
     fn assume(&self, condition: ExpressionId, holds: bool, narrowed: &mut Narrowed) -> Option<()> {
         let mut claims = vec![(condition, holds)];
         while let Some((condition, holds)) = claims.pop() {
+            narrowed.insert(condition, Image::everywhere(if holds { Interval::ONE } else { Interval::ZERO }));
             match (self.ranges.graph.node(condition), holds) {
                 (Node::Truth(truth), _) if truth != holds => return None,
                 (Node::Not(a), _) => claims.push((a, !holds)),

@@ -157,7 +157,8 @@ fn valley(function: Function, x: Interval, least: f64) -> Interval {
     Interval::new(lower.max(least), ends.upper())
 }
 
-/// The gamma function. 0.88560319441088870027... is its least value on x > 0 (DLMF 5.4.20), here rounded down.
+/// The gamma function. 0.88560319441088870027... is its least value on x > 0 (DLMF 5.4(iii)), here rounded
+/// down.
 pub(super) fn gamma(x: Interval) -> Image {
     const LEAST: f64 = 0.885_603_194_410_888_6;
     with_poles(x, Interval::ENTIRE, || {
@@ -228,7 +229,8 @@ pub(super) fn bessel_second(n: u8, x: Interval) -> Image {
     if defined == Defined::Nowhere {
         return Image::NOWHERE;
     }
-    // The first maximum of Y_0 is at 2.197, of Y_1 at 3.683 (DLMF 10.21, table 10.21.2 in its source), of Y_n above n.
+    // The first maximum of Y_0 is at 2.19714, of Y_1 at 3.68302 (Abramowitz and Stegun, table 9.5), of Y_n above n
+    // (DLMF 10.21.3).
     let summit = match n {
         0 => 2.1875,
         1 => 3.65625,
