@@ -35,11 +35,16 @@ pub fn answers_text(answers: &[Answer]) -> String {
             let scale = answer.shown_as.as_ref().map_or(1.0, |shown| shown.from_si(1.0));
             for (moment, axis) in principal.moments.iter().zip(&principal.axes) {
                 let shown = value_with_error(moment * scale, principal.error * scale);
-                let _ = writeln!(
-                    text,
-                    "  principal moment {shown}{unit}, axis ({:.6}, {:.6}, {:.6})",
-                    axis[0], axis[1], axis[2]
-                );
+                // Axes of equal moments are any two perpendicular ones in their plane.
+                let near = |other: &&f64| (**other - moment).abs() <= 4.0 * principal.error + 1e-12 * moment.abs();
+                let axis = if principal.moments.iter().filter(near).count() > 1 {
+                    "axis not determined: equal moments".to_owned()
+                } else {
+                    // Adding 0 turns -0 into 0.
+                    let [x, y, z] = axis.map(|part| (part * 1e6).round() / 1e6 + 0.0);
+                    format!("axis ({x:.6}, {y:.6}, {z:.6})")
+                };
+                let _ = writeln!(text, "  principal moment {shown}{unit}, {axis}");
             }
         }
         if let Some(reason) = &answer.reason {
