@@ -1,8 +1,9 @@
 //! Checks against facts from outside the project; each names its source.
 
 use approx::assert_relative_eq;
-use quadrel::integrals::{Answer, AnswerKind, NoProgress, Settings, answer};
+use quadrel::integrals::{Answer, AnswerKind, NoProgress, Settings, answer, answer_each};
 use quadrel::language::{Source, check};
+use quadrel::report::{Stamp, answers_json, answers_text};
 use std::f64::consts::PI;
 
 fn answers(sheet: &str) -> Vec<Answer> {
@@ -11,6 +12,24 @@ fn answers(sheet: &str) -> Vec<Answer> {
     });
     let bindings = model.bind(&[]).unwrap_or_else(|errors| panic!("{errors}"));
     answer(&model, &bindings, &[], &Settings::default(), &NoProgress).unwrap()
+}
+
+/// All answers of a sheet, those without a value too.
+fn each(sheet: &str, settings: &Settings) -> Vec<Answer> {
+    let model = check(Source::new("test.sheet", sheet)).expect("a valid sheet");
+    answer_each(&model, &model.bind(&[]).expect("its own parameters"), &[], settings, &NoProgress).expect("known names")
+}
+
+/// Asserts that the value of an answer is within its error of the expected one.
+fn close(answer: &Answer, expected: f64) {
+    let component = &answer.components[0];
+    assert!(
+        (component.value - expected).abs() <= component.error + 4.0 * f64::EPSILON * expected.abs(),
+        "{}: {} ± {:e}, expected {expected}",
+        answer.name,
+        component.value,
+        component.error
+    );
 }
 
 /// The one answer of a sheet, component by component; each must hold the expected value within its error.
@@ -215,15 +234,80 @@ fn undefined_and_divergent_integrals_are_refused() {
     assert_eq!(error.code, "divergent");
 }
 
+/// An answer without a value takes no other down: area 4 pi and volume 4 pi/3 of the unit sphere (Archimedes) stand beside
+/// an integrand that is undefined on one half, although they share a pass over the patch.
+#[test]
+fn a_failing_answer_leaves_the_others() {
+    let sheet = format!(
+        "r = 1\n{OUTWARD}A = area(s)\n  B = integral(sqrt(z), s)\nC = volume(s)\nD = 2*B + A\nE = integral(B*z, s)\nF = C/A\n"
+    );
+    let found = each(&sheet, &Settings::default());
+    assert_eq!(found.iter().map(|a| a.name.as_str()).collect::<Vec<_>>(), ["A", "B", "C", "D", "E", "F"]);
+    for (index, expected) in [(0, 4.0 * PI), (2, 4.0 / 3.0 * PI), (5, 1.0 / 3.0)] {
+        assert_eq!(found[index].kind, AnswerKind::Estimate);
+        close(&found[index], expected);
+    }
+    for index in [1, 3, 4] {
+        let answer = &found[index];
+        let failure = answer.failure.as_ref().expect("no value");
+        assert_eq!((answer.kind, failure.error.code), (AnswerKind::Unreached, "undefined"));
+        assert_eq!(failure.line, index + 3);
+        assert!(failure.error.message.contains(&format!("`{}`", answer.name)), "{}", failure.error.message);
+        let place = failure.error.place.as_ref().expect("a place");
+        assert!(place.expression.starts_with("sqrt(") && place.value.is_nan(), "{place:?}");
+        assert!(place.position[2] < 0.0, "{place:?}");
+    }
+    assert_eq!(found[1].failure.as_ref().expect("no value").column, 3);
+    let document = answers_json(&found, &[], &Stamp::new(&sheet, ""));
+    let failed = &document["answers"][1];
+    assert!(failed["value"].is_null() && failed["error"].is_null() && failed["kind"] == "unreached", "{failed}");
+    assert!(failed["reason"].as_str().expect("a reason").contains("sqrt("));
+    let errors = document["errors"].as_array().expect("errors");
+    assert_eq!(errors.iter().map(|e| e["line"].as_u64().expect("a line")).collect::<Vec<_>>(), [4, 6, 7]);
+    assert!(answers_json(&found[..1], &[], &Stamp::new(&sheet, ""))["errors"].is_null());
+    let text = answers_text(&found);
+    assert!(text.contains("\nB has no value") && text.contains("A = 12.566370"), "{text}");
+}
+
+/// sqrt(r^2 - x^2 - y^2) is |z| on the sphere, but rounding makes its argument negative beside the equator. The integral of
+/// |z| is the radius times twice the disc below: 2 pi r^3.
+#[test]
+fn rounding_that_leaves_the_domain_gets_a_hint() {
+    let found = each(&format!("r = 1\n{OUTWARD}a = integral(sqrt(r^2 - x^2 - y^2), s)"), &Settings::default());
+    if let Some(failure) = &found[0].failure {
+        let hint = failure.error.hint.as_ref().expect("a hint");
+        assert!(hint.contains("sqrt(max(0, "), "{hint}");
+        assert!(failure.error.message.contains("`sqrt("), "{}", failure.error.message);
+    } else {
+        close(&found[0], 2.0 * PI);
+    }
+    let found = each(&format!("r = 1\n{OUTWARD}a = integral(sqrt(max(0, r^2 - x^2 - y^2)), s)"), &Settings::default());
+    close(&found[0], 2.0 * PI);
+}
+
+/// A surface without area has no centroid.
+#[test]
+fn what_has_no_bound_is_not_shown_with_one() {
+    let found = each("s(u, v) = (u, u, u) on u in [0, 1], v in [0, 1]\na = centroid(s)", &Settings::default());
+    assert_eq!(found[0].failure.as_ref().expect("no centroid").error.code, "undefined");
+    for answer in &found {
+        let text = answers_text(std::slice::from_ref(answer));
+        assert!(!text.contains("inf") && !text.contains("NaN"), "{text}");
+        assert!(answers_json(&found, &[], &Stamp::new("", ""))["answers"][0]["error"].is_null());
+    }
+}
+
 /// Ribs whose number is a multiple of two node counts of the trapezoid rule (253 = 11*23, 1081 = 23*47) must not look
 /// constant. The mean of exp(cos x) over a period is the modified Bessel function I0(1), Abramowitz & Stegun 9.6.16; its
 /// value from mpmath 1.3, besseli(0, 1).
 #[test]
 fn ribs_that_fall_between_the_nodes() {
     for ribs in [23, 253, 506, 759, 1081] {
-        let plate = format!("s(u, v) = (u, v, 0*u) on u in [0, 1], v in [0, 1]\na = integral(exp(cos(2*pi*{ribs}*x)), s)");
+        let plate =
+            format!("s(u, v) = (u, v, 0*u) on u in [0, 1], v in [0, 1]\na = integral(exp(cos(2*pi*{ribs}*x)), s)");
         holds(&plate, &[1.266_065_877_752_008_4]);
-        let checks = format!("s(u, v) = (u, v, 0*u) on u in [0, 1], v in [0, 1]\na = integral(cos(2*pi*{ribs}*x)^2, s)");
+        let checks =
+            format!("s(u, v) = (u, v, 0*u) on u in [0, 1], v in [0, 1]\na = integral(cos(2*pi*{ribs}*x)^2, s)");
         holds(&checks, &[0.5]);
     }
 }

@@ -3,7 +3,7 @@
 
 use super::error::{IntegralError, Place};
 use super::roots::{SignChanges, bisect, point, sign_changes};
-use super::rounding::evaluate_bounded;
+use super::rounding::{at_edge_of_domain, evaluate_bounded, remedy};
 use super::sharp::{SharpPlace, sharp_places};
 use super::structure::{Feature, Kink, features, is_periodic, kinks};
 use crate::expression::{ExpressionId, Graph, SymbolId, evaluate, first_undefined, print_limited};
@@ -61,7 +61,7 @@ impl Question<'_> {
         preparation: u64,
     ) -> Result<PatchIntegrand, IntegralError> {
         let patch = self.patch;
-        let outer = usize::from(self.depends(graph, 0, patch.variables[1]));
+        let outer = self.outer(graph);
         let variables = [patch.variables[outer], patch.variables[1 - outer]];
         let value_of = |symbol: SymbolId| self.bindings.value(symbol);
         let roots: Vec<ExpressionId> = self.densities.iter().copied().chain(self.trim).collect();
@@ -204,10 +204,22 @@ impl Question<'_> {
         checked(segment, self.patch, outer)
     }
 
-    /// The point of the surface at which a density is undefined, for a message.
-    pub(super) fn place(&self, graph: &Graph, outer: f64, inner: Option<f64>, component: usize) -> Place {
+    /// Index of the outer variable: the second where the limits of the first depend on it.
+    pub(super) fn outer(&self, graph: &Graph) -> usize {
+        usize::from(self.depends(graph, 0, self.patch.variables[1]))
+    }
+
+    /// The point of the surface at which a density is undefined, for a message, and what to change if only rounding
+    /// makes it so.
+    pub(super) fn place(
+        &self,
+        graph: &Graph,
+        outer: f64,
+        inner: Option<f64>,
+        component: usize,
+    ) -> (Place, Option<String>) {
         let patch = self.patch;
-        let index = usize::from(self.depends(graph, 0, patch.variables[1]));
+        let index = self.outer(graph);
         let inner = inner.unwrap_or_else(|| {
             self.constant_segment(graph, 1 - index, &|symbol| self.bindings.value(symbol))
                 .map_or(f64::NAN, |segment| point(segment, 0.5))
@@ -220,16 +232,24 @@ impl Question<'_> {
             Some(position) => coordinates[position],
             None => self.bindings.value(symbol),
         };
-        let undefined = self.densities.get(component).and_then(|&density| first_undefined(graph, density, value_of));
+        let density = self.densities.get(component).or(self.trim.as_ref());
+        // The kernel rounds differently from the tree, so that a node at the edge of its domain may be defined here.
+        let undefined = density.and_then(|&density| {
+            first_undefined(graph, density, value_of)
+                .map(|found| (found.expression, found.value))
+                .or_else(|| at_edge_of_domain(graph, density, value_of).map(|found| (found, f64::NAN)))
+        });
+        let hint = undefined.and_then(|(expression, _)| remedy(graph, expression, value_of));
         let position = evaluate(graph, &patch.position, value_of);
         let name = |i: usize| graph.symbol_name(patch.variables[i]).to_owned();
-        Place {
+        let place = Place {
             patch: patch.name.clone(),
             variables: [(name(0), coordinates[0]), (name(1), coordinates[1])],
             position: [position[0], position[1], position[2]],
-            expression: undefined.map_or_else(String::new, |found| print_limited(graph, found.expression, 120)),
-            value: undefined.map_or(f64::NAN, |found| found.value),
-        }
+            expression: undefined.map_or_else(String::new, |(found, _)| print_limited(graph, found, 120)),
+            value: undefined.map_or(f64::NAN, |(_, value)| value),
+        };
+        (place, hint)
     }
 }
 

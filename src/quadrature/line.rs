@@ -10,6 +10,7 @@
 //! frequency only at multiples of their product.
 
 use super::map::{MAXIMUM_ORDER, Map, Segment};
+use super::nested::{Axis, Growth};
 use super::rules::{KRONROD_NODES, TRAPEZOID_NODES, kronrod, trapezoid_shift};
 
 /// Values of a vector-valued function at a batch of points, component-major: `values[k * count + i]`.
@@ -23,8 +24,9 @@ pub struct Samples {
     pub magnitudes: Vec<f64>,
     /// Evaluations spent.
     pub evaluations: u64,
-    /// For values that are not finite: the second coordinate at which the function was found undefined.
-    pub failures: Vec<(usize, f64)>,
+    /// For values that are not finite: the index of the point, the second coordinate at which the function was found
+    /// undefined, and the component.
+    pub failures: Vec<(usize, f64, usize)>,
     /// Number of points at which an inner end with growth like 1/distance or worse was met.
     pub divergent: usize,
     /// Whether an integral behind a value gave up for want of evaluations.
@@ -63,12 +65,27 @@ pub(super) struct LineSum {
     pub(super) magnitudes: Vec<f64>,
     pub(super) evaluations: u64,
     pub(super) outcome: Outcome,
-    /// Where an end with non-integrable growth was met, and the exponent.
-    pub(super) growth: Option<(f64, f64)>,
+    /// The steepest growth at an end that is not integrable.
+    pub(super) growth: Option<EndGrowth>,
     /// Samples at which the inner integral met such an end, and all samples.
     pub(super) divergent: (usize, usize),
     /// Whether an integral behind a sample gave up for want of evaluations.
     pub(super) exhausted: bool,
+}
+
+/// Growth like distance^exponent towards an end.
+#[derive(Clone, Copy, PartialEq, Debug)]
+pub(super) struct EndGrowth {
+    pub(super) end: f64,
+    pub(super) exponent: f64,
+    pub(super) component: usize,
+}
+
+impl EndGrowth {
+    pub(super) fn along(self, axis: Axis) -> Growth {
+        let EndGrowth { end, exponent, component } = self;
+        Growth { axis, end, exponent, component }
+    }
 }
 
 /// How a line integration ended.
@@ -370,9 +387,13 @@ fn finite_samples(line: &impl Line, x: &[f64], nudges: &[f64], budget: u64) -> R
     for (position, &i) in bad.iter().enumerate() {
         let candidates = [2 * position, 2 * position + 1];
         let Some(&good) = candidates.iter().find(|&&j| undefined(&again, j, moved.len()).is_none()) else {
-            let second = samples.failures.iter().find(|(index, _)| *index == i).map(|(_, second)| *second);
-            let component = undefined(&samples, i, count).unwrap_or(0);
-            return Err(NotFinite { x: x[i], second, component });
+            let inner = samples.failures.iter().find(|(index, ..)| *index == i);
+            let component = inner.map(|(.., component)| *component).or_else(|| undefined(&samples, i, count));
+            return Err(NotFinite {
+                x: x[i],
+                second: inner.map(|(_, second, _)| *second),
+                component: component.unwrap_or(0),
+            });
         };
         for k in 0..components {
             samples.values[k * count + i] = again.values[k * moved.len() + good];
@@ -391,12 +412,7 @@ fn finite_samples(line: &impl Line, x: &[f64], nudges: &[f64], budget: u64) -> R
 const PROBES: [f64; 3] = [1e-3, 1e-6, 1e-9];
 
 /// Chooses the orders of the map of each segment from samples near its ends.
-fn probe_ends(
-    line: &impl Line,
-    segments: &[Segment],
-    budget: u64,
-    spent: &mut Spent,
-) -> (Vec<Map>, Option<(f64, f64)>) {
+fn probe_ends(line: &impl Line, segments: &[Segment], budget: u64, spent: &mut Spent) -> (Vec<Map>, Option<EndGrowth>) {
     let plain: Vec<Map> = segments.iter().map(|&segment| Map::new(segment, (1, 1))).collect();
     let mut x = Vec::new();
     let mut slopes = Vec::new();
@@ -410,15 +426,15 @@ fn probe_ends(
     let samples = line.sample(&x, budget);
     spent.evaluations += samples.evaluations;
     let count = x.len();
-    let mut growth: Option<(f64, f64)> = None;
+    let mut growth: Option<EndGrowth> = None;
     let mut end_order = |first: usize, end: f64| {
         let mut order = 1;
         for k in 0..line.components() {
             let value = |j: usize| samples.values[k * count + first + j] * slopes[first + j];
             let noise = (0..3).map(|j| samples.error(k, first + j, count) * slopes[first + j]).fold(0.0, f64::max);
             let Some(exponent) = end_exponent([value(0), value(1), value(2)], noise) else { continue };
-            if exponent <= -0.99 && growth.is_none_or(|(_, known)| exponent < known) {
-                growth = Some((end, exponent));
+            if exponent <= -0.99 && growth.is_none_or(|known| exponent < known.exponent) {
+                growth = Some(EndGrowth { end, exponent, component: k });
             }
             order = order.max(order_for(exponent));
         }

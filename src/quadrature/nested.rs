@@ -2,7 +2,7 @@
 //! integrated with its own splits, maps and errors, and those errors are carried into the outer sum.
 
 use super::line::{
-    Effort, Line, LineSum, NotFinite, Outcome, Samples, Tolerance, integrate_period, integrate_segments,
+    Effort, EndGrowth, Line, LineSum, NotFinite, Outcome, Samples, Tolerance, integrate_period, integrate_segments,
 };
 use super::map::{Map, Segment};
 use super::rules::gauss_legendre;
@@ -84,14 +84,29 @@ pub enum Failure {
         component: usize,
     },
     /// The function grows like distance^exponent, exponent <= -1, towards an end.
-    Divergent {
-        /// Outer coordinate of the end, if it is an end of the outer line.
-        outer: Option<f64>,
-        /// Inner coordinate of the end, if it is an end of the inner lines.
-        inner: Option<f64>,
-        /// The exponent measured.
-        exponent: f64,
-    },
+    Divergent(Growth),
+}
+
+/// Growth towards an end of a line, as far as samples show it.
+#[derive(Clone, Copy, PartialEq, Debug)]
+pub struct Growth {
+    /// The line it is seen on.
+    pub axis: Axis,
+    /// The end: a number or an infinity.
+    pub end: f64,
+    /// The function grows like distance^exponent towards a finite end, like x^(-2 - exponent) towards an infinite one.
+    pub exponent: f64,
+    /// The component.
+    pub component: usize,
+}
+
+/// Which of the two variables.
+#[derive(Clone, Copy, PartialEq, Eq, Debug)]
+pub enum Axis {
+    /// The outer one.
+    Outer,
+    /// The inner one.
+    Inner,
 }
 
 /// Integrates `function` over its region until each component k is within `tolerance(k, value, magnitude)`.
@@ -278,7 +293,7 @@ impl Line for OuterLine<'_> {
                     samples.divergent += usize::from(sum.growth.is_some());
                     samples.exhausted |= sum.exhausted || sum.outcome == Outcome::Budget;
                 }
-                Err(failure) => samples.failures.push((i, failure.x)),
+                Err(failure) => samples.failures.push((i, failure.x, failure.component)),
             }
         }
         if !x.is_empty() {
@@ -318,8 +333,8 @@ fn integrate_outer(
     if 2 * divergent > samples {
         return Err(divergent_inside(line, sides));
     }
-    if let (Some((end, exponent)), true) = (sum.growth, sum.outcome != Outcome::Reached) {
-        return Err(Failure::Divergent { outer: Some(end), inner: None, exponent });
+    if let (Some(growth), true) = (sum.growth, sum.outcome != Outcome::Reached) {
+        return Err(Failure::Divergent(growth.along(Axis::Outer)));
     }
     match sum.values.iter().position(|value| !value.is_finite()) {
         Some(component) => {
@@ -334,10 +349,11 @@ fn integrate_outer(
 fn divergent_inside(line: &OuterLine<'_>, sides: &Sides) -> Failure {
     let middle = sides.outer.first().map_or(0.5, |segment| Map::new(*segment, (1, 1)).at(0.4321).0);
     let growth = line.inner_integral(middle, line.longest).ok().and_then(|sum| sum.growth);
-    match growth {
-        Some((end, exponent)) => Failure::Divergent { outer: None, inner: Some(end), exponent },
-        None => Failure::Divergent { outer: Some(middle), inner: None, exponent: -1.0 },
-    }
+    let missing = EndGrowth { end: middle, exponent: -1.0, component: 0 };
+    Failure::Divergent(match growth {
+        Some(growth) => growth.along(Axis::Inner),
+        None => missing.along(Axis::Outer),
+    })
 }
 
 /// First guess at the values and the integrals of |f|: a tensor rule with few nodes. Undefined samples are skipped.

@@ -24,8 +24,21 @@ fn one_or_many(values: Vec<f64>) -> Value {
 
 /// The document of `answer`.
 pub fn answers_json(answers: &[Answer], warnings: &[String], stamp: &Stamp) -> Value {
+    let errors: Vec<Value> = answers
+        .iter()
+        .filter_map(|answer| answer.failure.as_deref())
+        .map(|failure| error_json(&failure.error, Some((failure.line, failure.column))))
+        .collect();
     let answers: Vec<Value> = answers.iter().map(answer_json).collect();
-    json!({"schema": SCHEMA, "answers": answers, "warnings": warnings, "stamp": stamp.json()})
+    let mut document = Map::new();
+    document.insert("schema".into(), json!(SCHEMA));
+    document.insert("answers".into(), json!(answers));
+    document.insert("warnings".into(), json!(warnings));
+    if !errors.is_empty() {
+        document.insert("errors".into(), json!(errors));
+    }
+    document.insert("stamp".into(), stamp.json());
+    Value::Object(document)
 }
 
 fn answer_json(answer: &Answer) -> Value {
@@ -71,6 +84,11 @@ pub fn sheet_errors_json(errors: &SheetErrors) -> Value {
 
 /// The document of a run that failed for another reason.
 pub fn failure_json(error: &IntegralError) -> Value {
+    json!({"schema": SCHEMA, "errors": [error_json(error, None)]})
+}
+
+/// One numerical failure, with line and column of what failed where they are known.
+fn error_json(error: &IntegralError, definition: Option<(usize, usize)>) -> Value {
     let place = error.place.as_ref().map(|place| {
         json!({
             "patch": place.patch,
@@ -80,15 +98,12 @@ pub fn failure_json(error: &IntegralError) -> Value {
         })
     });
     json!({
-        "schema": SCHEMA,
-        "errors": [{
-            "code": error.code,
-            "severity": "error",
-            "message": error.message,
-            "line": null,
-            "column": null,
-            "hint": error.hint,
-            "place": place,
-        }],
+        "code": error.code,
+        "severity": "error",
+        "message": error.message,
+        "line": definition.map(|(line, _)| line),
+        "column": definition.map(|(_, column)| column),
+        "hint": error.hint,
+        "place": place,
     })
 }
