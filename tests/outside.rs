@@ -297,6 +297,46 @@ fn what_has_no_bound_is_not_shown_with_one() {
     }
 }
 
+/// A can of radius 1 and height 2: closed whatever the parametrizations of its rims, open with a lid that is not in its place.
+#[test]
+fn small_gaps_are_noticed() {
+    let warnings = |sheet: &str| each(sheet, &Settings::default())[0].warnings.join("\n");
+    let can = |lift: &str, turn: &str| {
+        format!(
+            "wall(u, h) = (cos(u), sin(u), h) on u in [0, 2*pi], h in [0, 2]\n\
+             floor(u, t) = (t*cos(u), t*sin(u), 0) on u in [0, 2*pi], t in [0, 1]\n\
+             lid(t, u) = (t*cos(u), t*sin(u), 2 + {lift}) on t in [0, 1], u in [{turn}, {turn} + 2*pi]\n\
+             a = volume(wall + lid + floor)"
+        )
+    };
+    for turn in ["0", "1", "sqrt(2)"] {
+        let sound = each(&can("0", turn), &Settings::default());
+        // pi r^2 h
+        close(&sound[0], 2.0 * PI);
+        assert_eq!(sound[0].warnings, Vec::<String>::new());
+        for (lift, gap) in [("0.001", "1.000e-3"), ("1e-6", "1.000e-6"), ("1e-8", "1.0")] {
+            let text = warnings(&can(lift, turn));
+            assert!(text.contains("open") && text.contains(&format!("gap of {gap}")), "{turn}, {lift}: {text}");
+            assert!(text.contains("`lid` at the upper end of t"), "{text}");
+        }
+    }
+    // A half sphere in Mercator's map, with an end at infinity, and a disc below.
+    let half = |lift: &str| {
+        format!(
+            "cap(u, w) = (cos(u)/cosh(w), sin(u)/cosh(w), tanh(w)) on u in [0, 2*pi], w in [0, inf)\n\
+             disc(u, t) = (t*cos(u), t*sin(u), -{lift}) on u in [0, 2*pi], t in [0, 1]\n\
+             a = volume(cap + disc)"
+        )
+    };
+    let sound = each(&half("0"), &Settings::default());
+    close(&sound[0], 2.0 / 3.0 * PI);
+    assert_eq!(sound[0].warnings, Vec::<String>::new());
+    assert!(warnings(&half("0.001")).contains("gap of 1.000e-3"));
+    let bowl =
+        "s(u, t) = (t*cos(u), t*sin(u), t^2) on u in [0, 2*pi], t in [0, inf)\na = flux((0, 0, exp(-x^2 - y^2)), s)";
+    assert!(warnings(bowl).contains("runs to infinity at the upper end of t"), "{}", warnings(bowl));
+}
+
 /// Ribs whose number is a multiple of two node counts of the trapezoid rule (253 = 11*23, 1081 = 23*47) must not look
 /// constant. The mean of exp(cos x) over a period is the modified Bessel function I0(1), Abramowitz & Stegun 9.6.16; its
 /// value from mpmath 1.3, besseli(0, 1).
