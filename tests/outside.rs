@@ -337,6 +337,20 @@ fn small_gaps_are_noticed() {
     assert!(warnings(bowl).contains("runs to infinity at the upper end of t"), "{}", warnings(bowl));
 }
 
+/// An integrand that is infinite at an end of its range, but integrable: the integrals of t^-1/2 and t^-1/3 over [0, 1] are 2
+/// and 3/2, whichever end is singular.
+#[test]
+fn integrable_ends() {
+    for (integrand, expected) in [("(1 - v)^-0.5", 2.0), ("(1 - u)^(-1/3)", 1.5), ("1/sqrt(v)", 2.0)] {
+        let sheet = format!("s(u, v) = (u, v, 0) on u in [0, 1], v in [0, 1]\na = integral({integrand}, s)");
+        close(&each(&sheet, &Settings::default())[0], expected);
+    }
+    // The tail within rounding of the end holds a fortieth of the integral, 10: no digits, but no failure either.
+    let steep =
+        each("s(u, v) = (u, v, 0) on u in [0, 1], v in [0, 1]\na = integral((1 - v)^-0.9, s)", &Settings::default());
+    close(&steep[0], 10.0);
+}
+
 /// Ribs whose number is a multiple of two node counts of the trapezoid rule (253 = 11*23, 1081 = 23*47) must not look
 /// constant. The mean of exp(cos x) over a period is the modified Bessel function I0(1), Abramowitz & Stegun 9.6.16; its
 /// value from mpmath 1.3, besseli(0, 1).
