@@ -3,7 +3,7 @@
 use super::bounded::Bounded;
 use super::error::{IntegralError, Progress};
 use super::outcome::{Answer, AnswerFailure, AnswerKind, Component, Principal, Settings};
-use super::rounding::evaluate_bounded;
+use super::rounding::{evaluate_bounded, evaluate_with_errors};
 use super::run::{FunctionalOutcome, NEGLIGIBLE, Outcome, RUN_WORK, Run};
 use super::sides::chain_warnings;
 use crate::expression::{ExpressionId, Graph, SymbolId, differentiate, evaluate};
@@ -222,10 +222,14 @@ fn assemble(target: &Target, run: &mut Run<'_>, outcomes: &FxHashMap<FunctionalI
         }
     }
     let limit = behind.iter().find_map(|id| outcomes.get(id).and_then(|outcome| outcome.limit));
+    let doubt = behind.iter().find_map(|id| {
+        let doubt = outcomes.get(id)?.doubt.as_ref()?;
+        Some(format!("in `{}`, {doubt}", run.functionals[id.0].text))
+    });
     let failure = failure(target, &components, &behind, run, outcomes);
     let reason = match &failure {
         Some(failure) => Some(failure.error.message.clone()),
-        None => (!reached).then(|| reason(finite, limit, worst, allowed)),
+        None => (!reached).then(|| doubt.unwrap_or_else(|| reason(finite, limit, worst, allowed))),
     };
     Answer {
         name: target.name.clone(),
@@ -276,8 +280,12 @@ fn reason(finite: bool, limit: Option<Limit>, worst: f64, allowed: f64) -> Strin
         Some(Limit::Evaluations) => "the budget of evaluations is spent (raise --evaluations or loosen --rel)",
         Some(Limit::Rounding) => "rounding errors of the integrand are larger than the tolerance",
         Some(Limit::Stopped) => "the run was interrupted",
+        Some(Limit::Growth(_)) => "whether the integral exists cannot be told from samples",
         None => "the errors of the integrals add up to more than the tolerance",
     };
+    if !worst.is_finite() {
+        return format!("{why}; there is no error bound");
+    }
     format!("{why}; error {worst:.2e}, allowed {allowed:.2e}")
 }
 
@@ -337,8 +345,12 @@ fn combine(component: ExpressionId, run: &mut Run<'_>, known: &FxHashMap<SymbolI
         magnitude += at(0.0) * result.magnitude;
         rounding += at(0.0) * result.rounding;
     }
-    // A slope that is infinite or undefined leaves the error unbounded.
-    let error = if error.is_nan() { f64::INFINITY } else { error };
+    // Slopes at a few points say nothing where a divisor may be zero between them.
+    let whole = evaluate_with_errors(&run.graph, &[component], |symbol| match known.get(&symbol) {
+        Some(result) => result.bounded,
+        None => Bounded::exact(run.bindings.value(symbol)),
+    })[0];
+    let error = if error.is_nan() || whole.error.is_infinite() { f64::INFINITY } else { error };
     Outcome { bounded: Bounded { value: own.value, error }, magnitude, rounding }
 }
 

@@ -9,13 +9,27 @@ use crate::expression::{ExpressionId, Function, Graph, Node, SymbolId, power, pr
 /// Relative error of one function of the table, a few units in the last place (measured in `tests/functions.rs`).
 const FUNCTION_ERROR: f64 = 8.0 * f64::EPSILON;
 
+/// A symbol's value, rounded once.
+fn rounded(value: f64) -> Bounded {
+    Bounded { value, error: f64::EPSILON * value.abs() }
+}
+
 /// Values of `roots` with their rounding errors, when symbols have the given values, each rounded once.
 pub(super) fn evaluate_bounded(
     graph: &Graph,
     roots: &[ExpressionId],
     value_of: impl Fn(SymbolId) -> f64,
 ) -> Vec<Bounded> {
-    let known = every_node(graph, roots, value_of);
+    evaluate_with_errors(graph, roots, |symbol| rounded(value_of(symbol)))
+}
+
+/// The same when symbols have errors of their own. An error is infinite where a divisor may be zero.
+pub(super) fn evaluate_with_errors(
+    graph: &Graph,
+    roots: &[ExpressionId],
+    bounded_of: impl Fn(SymbolId) -> Bounded,
+) -> Vec<Bounded> {
+    let known = every_node(graph, roots, bounded_of);
     roots.iter().map(|root| known[root.index()]).collect()
 }
 
@@ -26,7 +40,7 @@ pub(super) fn at_edge_of_domain(
     root: ExpressionId,
     value_of: impl Fn(SymbolId) -> f64,
 ) -> Option<ExpressionId> {
-    let known = every_node(graph, &[root], value_of);
+    let known = every_node(graph, &[root], |symbol| rounded(value_of(symbol)));
     graph.reachable(&[root]).into_iter().find(|id| {
         let at = |child: ExpressionId| known[child.index()];
         let somewhere = |a: Bounded, f: &dyn Fn(f64) -> f64| {
@@ -71,7 +85,7 @@ pub(super) fn remedy(graph: &Graph, undefined: ExpressionId, value_of: impl Fn(S
 }
 
 /// All nodes under `roots`, by index.
-fn every_node(graph: &Graph, roots: &[ExpressionId], value_of: impl Fn(SymbolId) -> f64) -> Vec<Bounded> {
+fn every_node(graph: &Graph, roots: &[ExpressionId], bounded_of: impl Fn(SymbolId) -> Bounded) -> Vec<Bounded> {
     let Some(last) = roots.iter().max() else { return Vec::new() };
     let mut known = vec![Bounded::exact(f64::NAN); last.index() + 1];
     for id in graph.reachable(roots) {
@@ -99,10 +113,7 @@ fn every_node(graph: &Graph, roots: &[ExpressionId], value_of: impl Fn(SymbolId)
                 Bounded { value, error }
             }
             Node::Pi => Bounded { value: std::f64::consts::PI, error: f64::EPSILON },
-            Node::Symbol(symbol) => {
-                let value = value_of(symbol);
-                Bounded { value, error: f64::EPSILON * value.abs() }
-            }
+            Node::Symbol(symbol) => bounded_of(symbol),
             Node::Truth(value) => truth(value),
             Node::Negate(a) => Bounded { value: -at(a).value, error: at(a).error },
             Node::Add(a, b) => at(a).add(at(b)),

@@ -30,6 +30,8 @@ pub(super) struct FunctionalOutcome {
     pub(super) evaluations: u64,
     pub(super) seconds: f64,
     pub(super) limit: Option<Limit>,
+    /// Why it is not known whether one of its integrals exists.
+    pub(super) doubt: Option<String>,
     /// Why there are no results, where there are none.
     pub(super) failure: Option<IntegralError>,
 }
@@ -63,8 +65,11 @@ const PASS_WORK: u64 = 2_500_000_000;
 /// Default work of a whole run: a few hard patches have [`PASS_WORK`] each, many hard ones share what is left.
 pub(super) const RUN_WORK: u64 = 4 * PASS_WORK;
 
-/// Work for finding kinks and sharp places of one patch at least, however many patches there are.
+/// Work for finding kinks and sharp places of one patch at least, while some of [`RUN_WORK`] is left.
 const LEAST_PREPARATION: u64 = 20_000_000;
+
+/// The same when nothing is left: what a formula takes that is smooth or nearly so.
+const LAST_PREPARATION: u64 = 2_000_000;
 
 /// Default evaluations of a pass at most, whatever they cost.
 const MOST_EVALUATIONS: u64 = 20_000_000;
@@ -73,7 +78,7 @@ const MOST_EVALUATIONS: u64 = 20_000_000;
 const HARD_EVALUATIONS: u64 = 50_000;
 
 /// Default evaluations of a pass at least, whatever they cost: what a smooth integrand needs.
-const LEAST_EVALUATIONS: u64 = 5_000;
+const LEAST_EVALUATIONS: u64 = 10_000;
 
 /// Functionals that need integrals over one side of one patch.
 struct Pass {
@@ -109,6 +114,8 @@ struct Part {
     evaluations: u64,
     seconds: f64,
     limit: Option<Limit>,
+    /// Why it is not known whether the integral exists.
+    doubt: Option<String>,
 }
 
 /// Densities of several members that are integrated together.
@@ -189,6 +196,7 @@ impl Joint {
             evaluations: integral.evaluations,
             seconds,
             limit: integral.limit,
+            doubt: None,
         }
     }
 }
@@ -198,7 +206,14 @@ impl FunctionalOutcome {
     fn failed(failure: IntegralError, results: usize) -> Self {
         let undefined = Bounded { value: f64::NAN, error: f64::INFINITY };
         let result = Outcome { bounded: undefined, magnitude: 0.0, rounding: 0.0 };
-        Self { results: vec![result; results], evaluations: 0, seconds: 0.0, limit: None, failure: Some(failure) }
+        Self {
+            results: vec![result; results],
+            evaluations: 0,
+            seconds: 0.0,
+            limit: None,
+            doubt: None,
+            failure: Some(failure),
+        }
     }
 }
 
@@ -215,8 +230,14 @@ fn collect(functional: &Functional, shares: Vec<Share>, pivot: &Pivot) -> Functi
     let mut sums = vec![Bounded::exact(0.0); count];
     let mut magnitudes = vec![0.0; count];
     let mut roundings = vec![0.0; count];
-    let mut outcome =
-        FunctionalOutcome { results: Vec::new(), evaluations: 0, seconds: 0.0, limit: None, failure: None };
+    let mut outcome = FunctionalOutcome {
+        results: Vec::new(),
+        evaluations: 0,
+        seconds: 0.0,
+        limit: None,
+        doubt: None,
+        failure: None,
+    };
     for (weight, part) in parts {
         for k in 0..count {
             sums[k] = sums[k].add(part.sums[k].scale(weight));
@@ -226,6 +247,7 @@ fn collect(functional: &Functional, shares: Vec<Share>, pivot: &Pivot) -> Functi
         outcome.evaluations += part.evaluations;
         outcome.seconds += part.seconds;
         outcome.limit = outcome.limit.or(part.limit);
+        outcome.doubt = outcome.doubt.or(part.doubt);
     }
     let size: Vec<f64> = combine_magnitudes(&sums, &magnitudes, count);
     outcome.results = combine(&functional.kind, &sums, pivot)
@@ -340,12 +362,23 @@ impl Run<'_> {
             });
             let start = Instant::now();
             match self.integrate_joint(&joint, relative) {
+                // Doubt about one integral must not keep the others from their tolerance.
+                Ok(Integral { limit: Some(Limit::Growth(growth)), evaluations, .. }) if members.len() > 1 => {
+                    self.done.set(self.done.get() + evaluations);
+                    let member = members.remove(joint.member_of(growth.component));
+                    groups.extend([members, vec![member]]);
+                }
                 Ok(integral) => {
                     self.done.set(self.done.get() + integral.evaluations);
                     let seconds = start.elapsed().as_secs_f64();
                     let error_of = |symbol: SymbolId| self.error_of(symbol, outcomes);
+                    let doubt = match integral.limit {
+                        Some(Limit::Growth(growth)) => Some(self.doubt(&joint, growth)),
+                        _ => None,
+                    };
                     for (index, member) in members.iter().enumerate() {
                         let part = joint.part(index, &integral, seconds, &error_of);
+                        let part = Part { doubt: doubt.clone(), ..part };
                         shares[member.functional][member.share].integrals = Ok(Some(part));
                     }
                 }
@@ -390,8 +423,8 @@ impl Run<'_> {
             let default = || default_evaluations(integrand.work(), self.work_left.get());
             self.settings.evaluations.unwrap_or_else(default)
         };
-        let integrand =
-            question.prepare(&mut self.graph, &budget, (self.work_left.get() / 8).max(LEAST_PREPARATION))?;
+        let least = if self.work_left.get() > 0 { LEAST_PREPARATION } else { LAST_PREPARATION };
+        let integrand = question.prepare(&mut self.graph, &budget, (self.work_left.get() / 8).max(least))?;
         let (work, budget) = (integrand.work(), budget(&integrand));
         let tolerance = |k: usize, value: f64, magnitude: f64| {
             // Integrals that only carry errors need two digits.
@@ -415,6 +448,14 @@ impl Run<'_> {
             }
         }
         Ok(integral)
+    }
+
+    /// Says where an integrand grows so fast that samples cannot tell whether its integral exists.
+    fn doubt(&self, joint: &Joint, growth: Growth) -> String {
+        let patch = &self.model.patches[joint.patch.0];
+        let question = Question { patch, densities: &joint.densities, trim: None, bindings: &self.bindings };
+        let text = growth_text(&question, &self.graph, growth);
+        format!("{}: {text}: whether the integral exists cannot be told from samples", patch.name)
     }
 
     fn error_of(&self, symbol: SymbolId, outcomes: &FxHashMap<FunctionalId, FunctionalOutcome>) -> f64 {

@@ -47,8 +47,15 @@ fn answer_json(answer: &Answer) -> Value {
     let unit_name = unit_text(answer);
     let mut object = Map::new();
     object.insert("name".into(), json!(answer.name));
-    object.insert("value".into(), one_or_many(shown.iter().map(|(value, _)| *value).collect()));
-    object.insert("error".into(), one_or_many(shown.iter().map(|(_, error)| *error).collect()));
+    let [value, error] = match answer.failure {
+        Some(_) => [Value::Null, Value::Null],
+        None => [
+            one_or_many(shown.iter().map(|(value, _)| *value).collect()),
+            one_or_many(shown.iter().map(|(_, error)| *error).collect()),
+        ],
+    };
+    object.insert("value".into(), value);
+    object.insert("error".into(), error);
     object.insert("kind".into(), json!(answer.kind.word()));
     object.insert("unit".into(), if unit_name.is_empty() { Value::Null } else { json!(unit_name) });
     object.insert("components".into(), json!(answer.components.iter().map(|c| c.label).collect::<Vec<_>>()));
