@@ -104,7 +104,7 @@ fn exit_codes() {
         (&["answer", "-"], Some("a = "), 3),
         (&["answer", "-", "--set", "r=x"], Some(SPHERE), 3),
         (&["answer", "-"], Some("s(u, v) = (u, v, sqrt(u - 1)) on u in [0, 2], v in [0, 1]"), 4),
-        (&["answer", "-"], Some("s(u, v) = (u, v, 0) on u in [0, 1], v in [0, 1]\na = integral(1/u, s)"), 4),
+        (&["answer", "-"], Some("s(u, v) = (u, v, 0) on u in [0, 1], v in [0, 1]\na = integral(1/u^2, s)"), 4),
         (&["answer", "no/such.sheet"], None, 5),
         (&["element", "-", "t"], Some(SPHERE), 2),
         (&["nodes", "-", "-o", "no/such/folder/x.npy"], Some(SPHERE), 5),

@@ -90,3 +90,29 @@ q = integral(sum(i in 1..2000, abs(u - i/2001)), p)";
     let component = &found.components[0];
     assert!((component.value - truth).abs() <= component.error, "{} ± {}", component.value, component.error);
 }
+
+/// Hard patches share a stock of work, so that many of them end too: the later ones get fewer evaluations, and every error
+/// still covers the truth. With s = u v of density -log(s), the integral is that of -log(s) sin(1000 s) |sin(500 s)| over
+/// [0, 1]; its value by mpmath 1.3 at 25 digits, split at the zeros of both sines.
+#[test]
+fn hard_patches_share_a_stock() {
+    let truth = 0.004_147_440_926_811_073;
+    let sheet: String = (0..6)
+        .map(|i| {
+            format!(
+                "p{i}(u, v) = (u, v, {i}) on u in [0, 1], v in [0, 1]
+q{i} = integral(sin(1000*u*v)*abs(sin(500*u*v)), p{i})
+"
+            )
+        })
+        .collect();
+    let model = check(Source::new("kinks.sheet", sheet)).expect("a valid sheet");
+    let bindings = model.bind(&[]).expect("no parameters");
+    let found = answer(&model, &bindings, &[], &Settings::default(), &NoProgress).expect("answers");
+    assert_eq!(found.len(), 6);
+    for answer in &found {
+        let component = &answer.components[0];
+        assert!((component.value - truth).abs() <= component.error, "{} ± {}", component.value, component.error);
+    }
+    assert!(found[5].evaluations < found[0].evaluations, "the stock is shared");
+}

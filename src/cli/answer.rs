@@ -3,14 +3,14 @@
 use super::arguments::{AnswerOptions, KindOption};
 use super::progress::Watch;
 use super::{Exit, Failure, load, output};
-use crate::integrals::{Answer, AnswerKind, Settings, answer};
+use crate::integrals::{Answer, AnswerKind, Settings, answer_each};
 use crate::report::{Stamp, answers_json, answers_text};
 
 pub(super) fn run(options: &AnswerOptions) -> Result<Exit, Failure> {
     let (model, bindings) = load(&options.sheet, &options.set)?;
     let settings = Settings { relative: options.rel, absolute: options.abs, evaluations: options.evaluations };
     let watch = Watch::new();
-    let compute = || answer(&model, &bindings, &options.names, &settings, &watch);
+    let compute = || answer_each(&model, &bindings, &options.names, &settings, &watch);
     let mut answers = match options.threads {
         Some(threads) => rayon::ThreadPoolBuilder::new()
             .num_threads(threads)
@@ -36,11 +36,22 @@ pub(super) fn run(options: &AnswerOptions) -> Result<Exit, Failure> {
     } else {
         output::print(&answers_text(&answers));
     }
+    for failure in answers.iter().filter_map(|answer| answer.failure.as_deref()) {
+        output::diagnostic(&model.source, &failure.diagnostic());
+    }
     if Watch::interrupted() {
         return Ok(Exit::Interrupted);
     }
-    let reached = answers.iter().all(|answer| answer.kind != AnswerKind::Unreached);
-    Ok(if reached { Exit::Reached } else { Exit::No })
+    Ok(answers.iter().map(exit_of).max().unwrap_or(Exit::Reached))
+}
+
+/// What one answer means for the run, which ends with the gravest.
+fn exit_of(answer: &Answer) -> Exit {
+    match (&answer.failure, answer.kind) {
+        (Some(failure), _) => Exit::of(&failure.error),
+        (None, AnswerKind::Unreached) => Exit::No,
+        (None, AnswerKind::Proved | AnswerKind::Estimate) => Exit::Reached,
+    }
 }
 
 /// A proof that was asked for and cannot be given; the value and its estimate stay.

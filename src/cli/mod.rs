@@ -37,6 +37,13 @@ pub enum Exit {
     Interrupted = 130,
 }
 
+impl Exit {
+    /// For a number that could not be had.
+    fn of(error: &IntegralError) -> Self {
+        if error.code == "limits" { Exit::Sheet } else { Exit::Numerical }
+    }
+}
+
 /// Why a command could not finish.
 enum Failure {
     Sheet(SheetErrors),
@@ -127,8 +134,7 @@ fn report(failure: &Failure, json: bool) -> Exit {
             if let Some(hint) = &error.hint {
                 output::note(&format!("hint: {hint}"));
             }
-            let exit = if error.code == "limits" { Exit::Sheet } else { Exit::Numerical };
-            (exit, failure_json(error))
+            (Exit::of(error), failure_json(error))
         }
         Failure::Usage(message) => {
             output::problem(message);

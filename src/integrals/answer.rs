@@ -2,12 +2,14 @@
 
 use super::bounded::Bounded;
 use super::error::{IntegralError, Progress};
-use super::outcome::{Answer, AnswerKind, Component, Principal, Settings};
-use super::rounding::evaluate_bounded;
+use super::outcome::{Answer, AnswerFailure, AnswerKind, Component, Principal, Settings};
+use super::rounding::{evaluate_bounded, evaluate_with_errors};
 use super::run::{FunctionalOutcome, NEGLIGIBLE, Outcome, RUN_WORK, Run};
 use super::sides::chain_warnings;
 use crate::expression::{ExpressionId, Graph, SymbolId, differentiate, evaluate};
-use crate::language::{Bindings, Chain, Dimension, Functional, FunctionalId, FunctionalKind, Model, Unit, nearest};
+use crate::language::{
+    Bindings, Chain, Dimension, Functional, FunctionalId, FunctionalKind, Model, Span, Unit, nearest,
+};
 use crate::quadrature::Limit;
 use crate::simplify::exact_area;
 use nalgebra::Matrix3;
@@ -21,6 +23,30 @@ struct Target {
     dimension: Dimension,
     shown_as: Option<Unit>,
     depends_on: Vec<FunctionalId>,
+    /// Its definition in the text.
+    span: Span,
+}
+
+/// All answers or none: [`answer_each`], where the first failure of an answer fails the whole.
+///
+/// # Errors
+/// For an unknown name, and for the first answer without a value; the message then names it with its line and column.
+pub fn answer(
+    model: &Model,
+    bindings: &Bindings,
+    requests: &[String],
+    settings: &Settings,
+    progress: &dyn Progress,
+) -> Result<Vec<Answer>, IntegralError> {
+    let answers = answer_each(model, bindings, requests, settings, progress)?;
+    match answers.iter().find_map(|answer| answer.failure.clone()) {
+        Some(failure) => {
+            let AnswerFailure { mut error, line, column, .. } = *failure;
+            error.message = format!("line {line}, column {column}: {}", error.message);
+            Err(error)
+        }
+        None => Ok(answers),
+    }
 }
 
 /// Answers `requests`: names of values, patches or chains (their area) in the sheet. Without any, every answer of the
@@ -29,10 +55,12 @@ struct Target {
 /// Values are in coherent SI units. The error of an answer covers the quadrature, rounding, and the errors of all
 /// integrals that went in; a shared integral counts once, so that `a/a` is exact.
 ///
+/// An answer whose density is undefined in the region, or whose integral does not exist, has a [`Answer::failure`]; the
+/// others have their values. Not reaching the tolerance is no failure: the answer then says [`AnswerKind::Unreached`].
+///
 /// # Errors
-/// For an unknown name, a density that is undefined in the region, or an integral that does not exist. Not reaching
-/// the tolerance is not an error: the answer then says [`AnswerKind::Unreached`].
-pub fn answer(
+/// For an unknown name.
+pub fn answer_each(
     model: &Model,
     bindings: &Bindings,
     requests: &[String],
@@ -57,13 +85,13 @@ pub fn answer(
     };
     let mut relative = 0.5 * settings.relative;
     for attempt in 0..3 {
-        let outcomes = run.outcomes(&wanted, relative)?;
+        let outcomes = run.outcomes(&wanted, relative);
         let mut answers = Vec::with_capacity(targets.len());
         for target in &targets {
             answers.push(assemble(target, &mut run, &outcomes));
         }
         // An answer that combines integrals may need them more exactly than it is asked for itself.
-        let short = answers.iter().any(|answer| answer.kind == AnswerKind::Unreached);
+        let short = answers.iter().any(|answer| answer.kind == AnswerKind::Unreached && answer.failure.is_none());
         let stuck = outcomes.values().any(|outcome| outcome.limit.is_some());
         if !short || stuck || attempt == 2 {
             for (answer, target) in answers.iter_mut().zip(&targets) {
@@ -105,6 +133,7 @@ fn targets(
         dimension: value.dimension,
         shown_as: value.shown_as.clone(),
         depends_on: value.depends_on.clone(),
+        span: value.span,
     };
     let mut chosen = Vec::new();
     if requests.is_empty() {
@@ -163,6 +192,7 @@ fn area_of(model: &Model, name: &str, chain: Chain, graph: &mut Graph, functiona
         dimension: length.multiply(length).unwrap_or(length),
         shown_as: None,
         depends_on: vec![id],
+        span,
     }
 }
 
@@ -213,31 +243,71 @@ fn assemble(target: &Target, run: &mut Run<'_>, outcomes: &FxHashMap<FunctionalI
         }
     }
     let limit = behind.iter().find_map(|id| outcomes.get(id).and_then(|outcome| outcome.limit));
+    let doubt = behind.iter().find_map(|id| {
+        let doubt = outcomes.get(id)?.doubt.as_ref()?;
+        Some(format!("in `{}`, {doubt}", run.functionals[id.0].text))
+    });
+    let failure = failure(target, &components, &behind, run, outcomes);
+    let reason = match &failure {
+        Some(failure) => Some(failure.error.message.clone()),
+        None => (!reached).then(|| doubt.unwrap_or_else(|| reason(finite, limit, worst, allowed))),
+    };
     Answer {
         name: target.name.clone(),
         exact: None,
         principal: (combined.len() == 6).then(|| principal(&components)).flatten(),
         kind: if reached { AnswerKind::Estimate } else { AnswerKind::Unreached },
-        reason: (!reached).then(|| reason(finite, limit, worst, allowed)),
+        reason,
         dimension: target.dimension,
         shown_as: target.shown_as.clone(),
         evaluations: behind.iter().filter_map(|id| outcomes.get(id)).map(|outcome| outcome.evaluations).sum(),
         seconds: behind.iter().filter_map(|id| outcomes.get(id)).map(|outcome| outcome.seconds).sum(),
         components,
         warnings,
+        failure,
     }
+}
+
+/// Why the target has no value: the first integral behind it that has none, or a formula of results that is undefined.
+fn failure(
+    target: &Target,
+    components: &[Component],
+    behind: &[FunctionalId],
+    run: &Run<'_>,
+    outcomes: &FxHashMap<FunctionalId, FunctionalOutcome>,
+) -> Option<Box<AnswerFailure>> {
+    let name = &target.name;
+    let failed = behind.iter().find_map(|id| Some((id, outcomes.get(id)?.failure.as_ref()?)));
+    let error = if let Some((id, error)) = failed {
+        let mut error = error.clone();
+        let text = &run.functionals[id.0].text;
+        let part = if text == name { String::new() } else { format!(" in `{text}`") };
+        error.message = format!("`{name}` has no value:{part} {}", error.message);
+        error
+    } else if components.iter().any(|component| !component.value.is_finite()) {
+        let why = "a divisor is zero, or an argument is outside the domain of its function";
+        IntegralError::new("undefined", format!("`{name}` has no value: its formula is undefined there, {why}"))
+    } else {
+        return None;
+    };
+    let (line, column) = run.model.source.line_column(target.span.start);
+    Some(Box::new(AnswerFailure { error, span: target.span, line, column }))
 }
 
 fn reason(finite: bool, limit: Option<Limit>, worst: f64, allowed: f64) -> String {
     if !finite && limit.is_none() {
-        return "the value is undefined: a divisor is zero within its error".to_owned();
+        return "there is no error bound: a divisor is zero within its error".to_owned();
     }
     let why = match limit {
         Some(Limit::Evaluations) => "the budget of evaluations is spent (raise --evaluations or loosen --rel)",
         Some(Limit::Rounding) => "rounding errors of the integrand are larger than the tolerance",
         Some(Limit::Stopped) => "the run was interrupted",
+        Some(Limit::Growth(_)) => "whether the integral exists cannot be told from samples",
         None => "the errors of the integrals add up to more than the tolerance",
     };
+    if !worst.is_finite() {
+        return format!("{why}; there is no error bound");
+    }
     format!("{why}; error {worst:.2e}, allowed {allowed:.2e}")
 }
 
@@ -297,6 +367,12 @@ fn combine(component: ExpressionId, run: &mut Run<'_>, known: &FxHashMap<SymbolI
         magnitude += at(0.0) * result.magnitude;
         rounding += at(0.0) * result.rounding;
     }
+    // Slopes at a few points say nothing where a divisor may be zero between them.
+    let whole = evaluate_with_errors(&run.graph, &[component], |symbol| match known.get(&symbol) {
+        Some(result) => result.bounded,
+        None => Bounded::exact(run.bindings.value(symbol)),
+    })[0];
+    let error = if error.is_nan() || whole.error.is_infinite() { f64::INFINITY } else { error };
     Outcome { bounded: Bounded { value: own.value, error }, magnitude, rounding }
 }
 

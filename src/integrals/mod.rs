@@ -15,8 +15,8 @@ mod sides;
 mod speed;
 mod structure;
 
-pub use answer::answer;
+pub use answer::{answer, answer_each};
 pub use error::{IntegralError, NoProgress, Place, Progress};
 pub use nodes::{NodeRow, NodesError, SurfaceNodes};
-pub use outcome::{Answer, AnswerKind, Component, Principal, Settings};
+pub use outcome::{Answer, AnswerFailure, AnswerKind, Component, Principal, Settings};
 pub use speed::{SpeedRun, Timing};

@@ -1,6 +1,7 @@
 //! What is asked and what is answered: values with their errors and how they were got.
 
-use crate::language::{Dimension, Unit};
+use super::error::IntegralError;
+use crate::language::{Diagnostic, Dimension, Span, Unit};
 
 /// How an answer was got.
 #[derive(Clone, Copy, PartialEq, Eq, Debug)]
@@ -89,4 +90,28 @@ pub struct Answer {
     pub principal: Option<Principal>,
     /// What the reader should know: open chain, one-sided patch, condition number.
     pub warnings: Vec<String>,
+    /// Why there is no value, where there is none: the components are then NaN, the kind is [`AnswerKind::Unreached`].
+    pub failure: Option<Box<AnswerFailure>>,
+}
+
+/// Why an answer has no value, and where it is defined.
+#[derive(Clone, PartialEq, Debug)]
+pub struct AnswerFailure {
+    /// What went wrong; the message names the answer.
+    pub error: IntegralError,
+    /// The definition of the answer in the sheet.
+    pub span: Span,
+    /// Line of the definition, from 1.
+    pub line: usize,
+    /// Column of the definition in characters, from 1.
+    pub column: usize,
+}
+
+impl AnswerFailure {
+    /// The failure as a problem of the sheet, to be drawn with the text of the definition.
+    pub fn diagnostic(&self) -> Diagnostic {
+        let mut diagnostic = Diagnostic::error(self.error.code, self.span, self.error.message.clone());
+        diagnostic.hint.clone_from(&self.error.hint);
+        diagnostic
+    }
 }

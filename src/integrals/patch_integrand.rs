@@ -3,13 +3,14 @@
 
 use super::error::{IntegralError, Place};
 use super::roots::{SignChanges, bisect, point, sign_changes};
-use super::rounding::evaluate_bounded;
+use super::rounding::{at_edge_of_domain, evaluate_bounded, remedy};
 use super::sharp::{SharpPlace, sharp_places};
 use super::structure::{Feature, Kink, features, is_periodic, kinks};
 use crate::expression::{ExpressionId, Graph, SymbolId, evaluate, first_undefined, print_limited};
 use crate::kernel::{Kernel, Program};
 use crate::language::{Bindings, Bound, Patch};
 use crate::quadrature::{PlaneIntegrand, Segment, Sides};
+use std::sync::atomic::{AtomicU64, Ordering};
 
 /// Densities per du dv of one patch, ready to be integrated.
 pub(super) struct PatchIntegrand {
@@ -20,6 +21,11 @@ pub(super) struct PatchIntegrand {
     breaks: Vec<f64>,
     /// Formulas whose sign changes split an inner line at places that depend on the outer variable.
     kinks: Vec<Kernel>,
+    /// Work of the searches on inner lines so far, in additions; read while one thread prepares.
+    searched: AtomicU64,
+    /// Work of the search on an average line, and the parts it is split into.
+    line_work: u64,
+    line_parts: u64,
     trim: Option<Kernel>,
     /// Whether parts of lines may straddle the edge of the trim: densities are then cut point by point.
     straddles: bool,
@@ -61,7 +67,7 @@ impl Question<'_> {
         preparation: u64,
     ) -> Result<PatchIntegrand, IntegralError> {
         let patch = self.patch;
-        let outer = usize::from(self.depends(graph, 0, patch.variables[1]));
+        let outer = self.outer(graph);
         let variables = [patch.variables[outer], patch.variables[1 - outer]];
         let value_of = |symbol: SymbolId| self.bindings.value(symbol);
         let roots: Vec<ExpressionId> = self.densities.iter().copied().chain(self.trim).collect();
@@ -98,6 +104,9 @@ impl Question<'_> {
             limits,
             breaks: Vec::new(),
             kinks: Vec::new(),
+            searched: AtomicU64::new(0),
+            line_work: 0,
+            line_parts: 1,
             trim: self.trim.map(|trim| compile(graph, &[trim])).transpose()?,
             straddles: false,
             prepared: 0,
@@ -204,10 +213,22 @@ impl Question<'_> {
         checked(segment, self.patch, outer)
     }
 
-    /// The point of the surface at which a density is undefined, for a message.
-    pub(super) fn place(&self, graph: &Graph, outer: f64, inner: Option<f64>, component: usize) -> Place {
+    /// Index of the outer variable: the second where the limits of the first depend on it.
+    pub(super) fn outer(&self, graph: &Graph) -> usize {
+        usize::from(self.depends(graph, 0, self.patch.variables[1]))
+    }
+
+    /// The point of the surface at which a density is undefined, for a message, and what to change if only rounding
+    /// makes it so.
+    pub(super) fn place(
+        &self,
+        graph: &Graph,
+        outer: f64,
+        inner: Option<f64>,
+        component: usize,
+    ) -> (Place, Option<String>) {
         let patch = self.patch;
-        let index = usize::from(self.depends(graph, 0, patch.variables[1]));
+        let index = self.outer(graph);
         let inner = inner.unwrap_or_else(|| {
             self.constant_segment(graph, 1 - index, &|symbol| self.bindings.value(symbol))
                 .map_or(f64::NAN, |segment| point(segment, 0.5))
@@ -220,16 +241,24 @@ impl Question<'_> {
             Some(position) => coordinates[position],
             None => self.bindings.value(symbol),
         };
-        let undefined = self.densities.get(component).and_then(|&density| first_undefined(graph, density, value_of));
+        let density = self.densities.get(component).or(self.trim.as_ref());
+        // The kernel rounds differently from the tree, so that a node at the edge of its domain may be defined here.
+        let undefined = density.and_then(|&density| {
+            first_undefined(graph, density, value_of)
+                .map(|found| (found.expression, found.value))
+                .or_else(|| at_edge_of_domain(graph, density, value_of).map(|found| (found, f64::NAN)))
+        });
+        let hint = undefined.and_then(|(expression, _)| remedy(graph, expression, value_of));
         let position = evaluate(graph, &patch.position, value_of);
         let name = |i: usize| graph.symbol_name(patch.variables[i]).to_owned();
-        Place {
+        let place = Place {
             patch: patch.name.clone(),
             variables: [(name(0), coordinates[0]), (name(1), coordinates[1])],
             position: [position[0], position[1], position[2]],
-            expression: undefined.map_or_else(String::new, |found| print_limited(graph, found.expression, 120)),
-            value: undefined.map_or(f64::NAN, |found| found.value),
-        }
+            expression: undefined.map_or_else(String::new, |(found, _)| print_limited(graph, found, 120)),
+            value: undefined.map_or(f64::NAN, |(_, value)| value),
+        };
+        (place, hint)
     }
 }
 
@@ -298,8 +327,11 @@ const EVALUATIONS_PER_LINE: u64 = 70;
 /// What a call of a kernel for one point costs, in evaluations of a batch.
 const SINGLE_CALL: u64 = 40;
 
-/// Evaluations of one formula to find its sign changes on a line, calls counted as some points each.
+/// Evaluations of one formula to find its sign changes along a variable, calls counted as some points each.
 const SEARCH_EVALUATIONS: u64 = 200;
+
+/// Work of a call of a kernel beside that of its points.
+const CALL_WORK: u64 = 100;
 
 /// Work of a search beside the evaluations: what any formula costs, however short.
 const SEARCH_WORK: u64 = 10_000;
@@ -322,9 +354,6 @@ const CHANGES_TOGETHER: usize = 8;
 
 /// Where the next change is looked for, behind one that is found, as a share of the distance of samples.
 const BESIDE: f64 = 1e-6;
-
-/// A first round this short is affordable, whatever the budget.
-const UNSPLIT_ROUND: u64 = 10_000;
 
 /// Samples along the outer line at which the arrangement of kinks is compared.
 const STRUCTURE_SAMPLES: usize = 97;
@@ -444,16 +473,10 @@ impl PatchIntegrand {
                 _ => mixed.push(kernel),
             }
         }
-        let line: u64 = mixed.iter().map(|kernel| SEARCH_WORK / 8 + SEARCH_EVALUATIONS * kernel.program().work()).sum();
-        let search = line.saturating_mul(STRUCTURE_LINES);
-        if search > *work_left {
-            self.leave_rough();
-            return Ok(outer_breaks);
-        }
-        *work_left -= search;
         self.kinks = mixed;
         if !self.kinks.is_empty() || self.trim.is_some() {
-            outer_breaks.extend(self.structure_changes(outer_segment));
+            outer_breaks.extend(self.structure_changes(outer_segment, *work_left));
+            *work_left = work_left.saturating_sub(self.searched.load(Ordering::Relaxed));
         }
         if self.sides.rough {
             self.leave_rough();
@@ -464,6 +487,8 @@ impl PatchIntegrand {
     /// Gives up the splits at kinks that cross inner lines; rules are then trusted less.
     fn leave_rough(&mut self) {
         self.kinks.clear();
+        self.line_work = 0;
+        self.line_parts = 1;
         self.sides.rough = true;
         self.straddles = self.trim.is_some();
     }
@@ -501,8 +526,7 @@ impl PatchIntegrand {
         places: &[SharpPlace],
         budget: &dyn Fn(&PatchIntegrand) -> u64,
     ) {
-        let first = self.first_round();
-        if first <= UNSPLIT_ROUND || first <= budget(self) {
+        if self.first_round() <= budget(self) {
             return;
         }
         self.breaks.clear();
@@ -547,6 +571,12 @@ impl PatchIntegrand {
         (splits.into_iter().map(|(kink, _)| kink).chain(self.kept(outer)).collect(), settled)
     }
 
+    /// Counts the work of one call of `kernel` in a search.
+    fn count(&self, kernel: &Kernel, points: usize) {
+        let work = CALL_WORK + (points as u64).max(SINGLE_CALL) * kernel.program().work();
+        self.searched.fetch_add(work, Ordering::Relaxed);
+    }
+
     /// Which parts of the line the trim keeps, as numbers beyond those of kinks.
     fn kept(&self, outer: f64) -> Vec<usize> {
         match &self.trim {
@@ -558,6 +588,7 @@ impl PatchIntegrand {
     }
 
     fn holds(&self, trim: &Kernel, outer: f64, part: Segment) -> bool {
+        self.count(trim, 1);
         values(trim, &self.parameters, &[outer], &[point(part, 0.5)])[0] == 1.0
     }
 
@@ -571,7 +602,10 @@ impl PatchIntegrand {
         let mut found = Vec::new();
         let mut settled = true;
         for (index, kernel) in self.kinks.iter().enumerate().filter(|(index, _)| considered(*index)) {
-            let mut f = |x: &[f64]| values(kernel, &self.parameters, &vec![outer; x.len()], x);
+            let mut f = |x: &[f64]| {
+                self.count(kernel, x.len());
+                values(kernel, &self.parameters, &vec![outer; x.len()], x)
+            };
             let changes: SignChanges = sign_changes(segment, &mut f);
             settled &= changes.settled;
             found.extend(changes.at.into_iter().map(|at| (index, at)));
@@ -593,26 +627,29 @@ impl PatchIntegrand {
     }
 
     /// Outer values at which kinks appear, vanish, cross or leave through a limit, to the last place. Two or more changes
-    /// close together may leave some unfound; the integrand is then rough.
-    fn structure_changes(&mut self, outer_segment: Segment) -> Vec<f64> {
+    /// close together may leave some unfound; the integrand is then rough. So it is where looking takes more than `work_left`.
+    fn structure_changes(&mut self, outer_segment: Segment, work_left: u64) -> Vec<f64> {
         let everything = |_: usize| true;
         let at = |i: usize| point(outer_segment, (i as f64 + 0.5) / STRUCTURE_SAMPLES as f64);
         let mut changes = Vec::new();
         let (mut before, settled) = self.arrangement(at(0), &everything);
-        let mut rough = !settled;
+        let searched = |lines: u64| lines.saturating_mul(self.searched.load(Ordering::Relaxed));
+        let mut rough = !settled || searched(STRUCTURE_SAMPLES as u64) > work_left;
         let mut lines = 0;
+        let mut parts = before.len() as u64 + 1;
         let all = self.kinks.len().max(1) as u64;
         for i in 1..STRUCTURE_SAMPLES {
             let (here, settled) = self.arrangement(at(i), &everything);
-            rough |= !settled;
+            rough |= !settled || searched(1) > work_left;
             lines += 1;
+            parts += here.len() as u64 + 1;
             if rough {
                 break;
             }
             let mut low = at(i - 1);
             let mut count = 0;
             while here != before {
-                if count == CHANGES_TOGETHER || lines > STRUCTURE_LINES {
+                if count == CHANGES_TOGETHER || lines > STRUCTURE_LINES || searched(1) > work_left {
                     rough = true;
                     break;
                 }
@@ -638,6 +675,9 @@ impl PatchIntegrand {
             }
             before = here;
         }
+        // Each sample along the outer line looks at a whole line, with the trim at its parts.
+        self.line_work = searched(1) / (1 + lines);
+        self.line_parts = parts / STRUCTURE_SAMPLES as u64 + 1;
         self.sides.rough |= rough;
         changes
     }
@@ -708,17 +748,19 @@ impl PlaneIntegrand for PatchIntegrand {
     }
 
     fn work(&self) -> u64 {
-        // Kinks, limits and the trim are resolved once for each line; a line has some 70 evaluations.
+        // Kinks, limits and the trim are resolved once for each line, which has some 70 evaluations, or 31 for each part.
         let own = |kernel: &Kernel| kernel.program().work();
         let limits = match &self.limits {
             Limits::Constant(_) => 0,
             Limits::Varying(kernel, _) => own(kernel),
         };
-        let line =
-            SEARCH_EVALUATIONS * self.kinks.iter().map(own).sum::<u64>() + self.trim.as_ref().map_or(0, own) + limits;
+        let trim = self.trim.as_ref().map_or(0, own);
+        let (trim_of_point, trim_of_line) = if self.straddles { (trim, 0) } else { (0, trim) };
+        let line = self.line_work + trim_of_line + limits;
+        let evaluations = EVALUATIONS_PER_LINE.max(31 * self.line_parts);
         // A call for one point costs as much as one for some tens.
         let calls = if self.sides.inner_independent { SINGLE_CALL } else { 1 };
-        calls * own(&self.densities) + line / EVALUATIONS_PER_LINE + 1
+        calls * (own(&self.densities) + trim_of_point) + line / evaluations + 1
     }
 
     fn evaluate(&self, outer: f64, inner: &[f64], out: &mut [f64]) {

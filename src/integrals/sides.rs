@@ -1,39 +1,56 @@
 //! Sides of patches: which of them meet, so that an open or one-sided chain under a flux or a volume is noticed.
 //!
-//! Sides are compared numerically: two sides meet if samples of one lie on the other and the other way round, each within
-//! rounding of its nearest point. A side at an infinite end is no boundary. A side
-//! that collapses to a point has no boundary. A chain is closed when the sides cancel: each meets another with opposite
-//! sense. It is one-sided where two sides of one patch meet with equal sense.
+//! Sides are compared numerically: two sides meet if every sample of one lies on the other and the other way round. A side
+//! that collapses to a point has no boundary, one at an infinite end is looked at far out. A chain is closed when the sides
+//! cancel: each meets another with opposite sense. It is one-sided where two sides of one patch meet with equal sense.
 
+use super::roots::point;
 use super::run::Run;
-use crate::expression::{ExpressionId, Graph, SymbolId, evaluate};
-use crate::language::{Bindings, Bound, FunctionalId, FunctionalKind, Patch};
+use crate::expression::{Graph, SymbolId};
+use crate::kernel::{Kernel, Program};
+use crate::language::{Bindings, Bound, Dimension, FunctionalId, FunctionalKind, Patch};
+use crate::quadrature::Segment;
+use std::rc::Rc;
 
 type Point = [f64; 3];
 
 /// Samples along one side.
 const SAMPLES: usize = 129;
 
-/// Distance, relative to the size of the chain, within which two sides are taken to meet.
-const MEETING: f64 = 1e-7;
+/// Distance, relative to the size of the chain, within which two sides are taken to meet: rounding of formulas, no gap
+/// that anyone could mean.
+const MEETING: f64 = 1e-9;
 
-/// Samples whose nearest point on the other side is searched for.
-const SEARCHED: usize = 17;
+/// Distance, relative to the size of the chain, within which two open sides are said to leave a gap.
+const GAP: f64 = 0.05;
 
-/// Steps of that search; each leaves 0.62 of the interval.
-const SEARCH_STEPS: usize = 80;
+/// A side at an infinite end is at infinity where it is this many times farther away than the chain is large.
+const FAR_AWAY: f64 = 1e3;
 
-/// Where along an infinite interval the last sample of a side lies, as a part of the mapped length.
-const FAR: f64 = 0.999;
+/// Steps of the search for the nearest point: each takes a share of 0.38 off the distance of two samples.
+const REFINEMENTS: usize = 60;
 
-struct Side<'a> {
+/// Values in place of an infinite end: the first at which the patch is defined.
+const FAR: [f64; 7] = [1e150, 1e40, 1e12, 1e6, 1e3, 100.0, 10.0];
+
+struct Side {
     patch: String,
     label: String,
     /// Multiplicity with the sense of the boundary: positive when traversed with the surface on the left.
     coefficient: i64,
+    curve: Curve,
     points: Vec<Point>,
-    /// The point at a fraction of the side.
-    at: Box<dyn Fn(f64) -> Point + 'a>,
+    /// Whether the variable that is constant here is infinite.
+    at_infinity: bool,
+}
+
+/// Where two sides are farthest from each other.
+#[derive(Clone, Copy)]
+struct Separation {
+    distance: f64,
+    at: Point,
+    /// Whether both are traversed in the same sense.
+    same_sense: bool,
 }
 
 /// Warnings for a flux or a volume through a chain that is open or one-sided.
@@ -43,25 +60,49 @@ pub(super) fn chain_warnings(run: &Run<'_>, id: FunctionalId) -> Vec<String> {
         return Vec::new();
     }
     let mut sides = Vec::new();
+    let mut unit = Dimension::NONE;
     for &(coefficient, patch) in &functional.chain.terms {
         let patch = &run.model.patches[patch.0];
+        unit = patch.dimension;
         if patch.trim.is_some() {
             return vec![format!("{}: `{}` is trimmed, so its edge is not checked", functional.text, patch.name)];
         }
-        sides.extend(sides_of(&run.graph, patch, coefficient, &run.bindings));
+        match sides_of(&run.graph, patch, coefficient, &run.bindings) {
+            Some(found) => sides.extend(found),
+            None => {
+                return vec![format!("{}: the edge of `{}` is undefined and not checked", functional.text, patch.name)];
+            }
+        }
     }
-    let size = extent(sides.iter().flat_map(|side| &side.points));
-    sides.retain(|side| extent(side.points.iter()) > MEETING * size);
     let mut warnings = Vec::new();
-    let mut open: Vec<String> = Vec::new();
+    // The part of a side that may run to infinity is left out of the size.
+    let middle = |side: &Side| side.points[SAMPLES / 4..=3 * SAMPLES / 4].to_vec();
+    let near: Vec<Point> = sides.iter().filter(|side| !side.at_infinity).flat_map(middle).collect();
+    let whole = sides.iter().filter(|side| side.curve.map.is_finite()).flat_map(|side| &side.points);
+    let size = extent(near.iter().chain(whole));
+    sides.retain(|side| {
+        let away = side.at_infinity && !near.is_empty() && distance_beyond(&side.points, &near) > FAR_AWAY * size;
+        if away {
+            warnings.push(format!(
+                "{}: `{}` runs to infinity at {}, where its edge is not checked",
+                functional.text, side.patch, side.label
+            ));
+        }
+        !away && extent(side.points.iter()) > tolerance(size, &side.points[0])
+    });
     let mut left: Vec<i64> = sides.iter().map(|side| side.coefficient).collect();
+    let mut gaps: Vec<(usize, usize, Separation)> = Vec::new();
     for a in 0..sides.len() {
         for b in a + 1..sides.len() {
             if left[a] == 0 || left[b] == 0 {
                 continue;
             }
-            let Some(same_sense) = meeting(&sides[a], &sides[b], MEETING * size) else { continue };
-            let sense = if same_sense { 1 } else { -1 };
+            let Some(between) = separation(&sides[a], &sides[b], size) else { continue };
+            if between.distance > tolerance(size, &between.at) {
+                gaps.push((a, b, between));
+                continue;
+            }
+            let sense = if between.same_sense { 1 } else { -1 };
             if sides[a].patch == sides[b].patch && left[a] * left[b] * sense > 0 {
                 warnings.push(format!(
                     "{}: `{}` is one-sided, its normal has no consistent direction",
@@ -75,10 +116,10 @@ pub(super) fn chain_warnings(run: &Run<'_>, id: FunctionalId) -> Vec<String> {
                 left[b] -= left[b].signum() * common;
             }
         }
-        if left[a] != 0 {
-            open.push(format!("`{}` at {}", sides[a].patch, sides[a].label));
-        }
     }
+    let named = |side: &Side| format!("`{}` at {}", side.patch, side.label);
+    let open: Vec<String> =
+        sides.iter().zip(&left).filter(|(_, left)| **left != 0).map(|(side, _)| named(side)).collect();
     if !open.is_empty() {
         let shown = open.iter().take(3).cloned().collect::<Vec<_>>().join(", ");
         let what = match functional.kind {
@@ -87,80 +128,153 @@ pub(super) fn chain_warnings(run: &Run<'_>, id: FunctionalId) -> Vec<String> {
         };
         warnings.push(format!("{}: the surface is open ({shown}): {what}", functional.text));
     }
+    gaps.retain(|(a, b, _)| left[*a] != 0 && left[*b] != 0);
+    gaps.sort_by(|a, b| a.2.distance.total_cmp(&b.2.distance));
+    for (a, b, between) in gaps.into_iter().take(3) {
+        let [x, y, z] = between.at;
+        let unit = if unit.is_none() { String::new() } else { format!(" {unit}") };
+        warnings.push(format!(
+            "{}: {} and {} leave a gap of {:.3e}{unit} at ({x:.6}, {y:.6}, {z:.6})",
+            functional.text,
+            named(&sides[a]),
+            named(&sides[b]),
+            between.distance
+        ));
+    }
     warnings
 }
 
-/// The sides that are not at infinity, traversed counterclockwise in the plane of the variables.
-fn sides_of<'a>(graph: &'a Graph, patch: &'a Patch, coefficient: i64, bindings: &'a Bindings) -> Vec<Side<'a>> {
+/// What rounding may move a point of a chain of this size.
+fn tolerance(size: f64, at: &Point) -> f64 {
+    MEETING * size + 64.0 * f64::EPSILON * at.iter().fold(0.0_f64, |most, x| most.max(x.abs()))
+}
+
+/// How far the farthest of `points` is from the first of `near`.
+fn distance_beyond(points: &[Point], near: &[Point]) -> f64 {
+    points.iter().map(|point| distance(point, &near[0])).fold(0.0, f64::max)
+}
+
+/// The four sides, traversed counterclockwise in the plane of the variables; `None` where one is undefined.
+fn sides_of(graph: &Graph, patch: &Patch, coefficient: i64, bindings: &Bindings) -> Option<Vec<Side>> {
     let multiplicity = coefficient * i64::from(patch.orientation);
     let name = |index: usize| graph.symbol_name(patch.variables[index]).to_owned();
-    let side = |end: &str, coefficient: i64, along: usize, upper: bool| {
-        let across = &patch.intervals[1 - along];
-        let bound = if upper { across.upper } else { across.lower };
-        if !matches!(bound, Bound::Finite(_)) {
-            return None;
-        }
-        let at = move |share: f64| {
-            let mut shares = [share; 2];
-            shares[1 - along] = if upper { 1.0 } else { 0.0 };
-            position(graph, patch, shares, bindings)
+    let map = Rc::new(PatchMap::new(graph, patch, bindings)?);
+    let fars: &[f64] = if map.is_finite() { &FAR[..1] } else { &FAR };
+    fars.iter().find_map(|&far| {
+        let side = |label: String, coefficient: i64, along: usize, upper: bool| {
+            let curve = Curve { map: Rc::clone(&map), far, along, upper };
+            let points = curve.points(&(0..SAMPLES).map(share).collect::<Vec<f64>>());
+            let defined = points.iter().flatten().all(|x| x.is_finite());
+            let at_infinity = map.ends[1 - along][usize::from(upper)] == End::Infinite;
+            defined.then(|| Side { patch: patch.name.clone(), label, coefficient, curve, points, at_infinity })
         };
-        let points = (0..SAMPLES).map(|i| at(i as f64 / (SAMPLES - 1) as f64)).collect();
-        let label = format!("the {end} end of {}", name(1 - along));
-        Some(Side { patch: patch.name.clone(), label, coefficient, points, at: Box::new(at) })
-    };
-    [
-        side("lower", multiplicity, 0, false),
-        side("upper", multiplicity, 1, true),
-        side("upper", -multiplicity, 0, true),
-        side("lower", -multiplicity, 1, false),
-    ]
-    .into_iter()
-    .flatten()
-    .collect()
+        [
+            side(format!("the lower end of {}", name(1)), multiplicity, 0, false),
+            side(format!("the upper end of {}", name(0)), multiplicity, 1, true),
+            side(format!("the upper end of {}", name(1)), -multiplicity, 0, true),
+            side(format!("the lower end of {}", name(0)), -multiplicity, 1, false),
+        ]
+        .into_iter()
+        .collect()
+    })
 }
 
-/// The position at fractions of the two intervals.
-fn position(graph: &Graph, patch: &Patch, shares: [f64; 2], bindings: &Bindings) -> Point {
-    let mut coordinates = [0.0; 2];
-    let value = |formulas: &[ExpressionId], coordinates: [f64; 2]| {
-        evaluate(graph, formulas, |symbol: SymbolId| match patch.variables.iter().position(|&v| v == symbol) {
-            Some(index) => coordinates[index],
-            None => bindings.value(symbol),
-        })
-    };
-    // Twice: the second time an interval that depends on the other variable has its value.
-    for _ in 0..2 {
-        for index in 0..2 {
+fn share(i: usize) -> f64 {
+    i as f64 / (SAMPLES - 1) as f64
+}
+
+/// An end of an interval: an output of the kernel, or an infinity.
+#[derive(Clone, Copy, PartialEq)]
+enum End {
+    Output(usize),
+    Infinite,
+}
+
+/// Position and limits of a patch, compiled.
+struct PatchMap {
+    kernel: Kernel,
+    parameters: Vec<f64>,
+    /// Lower and upper end of each variable.
+    ends: [[End; 2]; 2],
+}
+
+impl PatchMap {
+    fn new(graph: &Graph, patch: &Patch, bindings: &Bindings) -> Option<Self> {
+        let mut outputs = patch.position.to_vec();
+        let ends = [0, 1].map(|index| {
             let interval = &patch.intervals[index];
-            let end = |bound: Bound| match bound {
-                Bound::Finite(formula) => value(&[formula], coordinates)[0],
-                Bound::MinusInfinity => f64::NEG_INFINITY,
-                Bound::PlusInfinity => f64::INFINITY,
-            };
-            coordinates[index] = between(end(interval.lower), end(interval.upper), shares[index]);
-        }
+            [interval.lower, interval.upper].map(|bound| match bound {
+                Bound::Finite(formula) => {
+                    outputs.push(formula);
+                    End::Output(outputs.len() - 1)
+                }
+                Bound::MinusInfinity | Bound::PlusInfinity => End::Infinite,
+            })
+        });
+        let parameters: Vec<SymbolId> =
+            graph.symbols_of(&outputs).into_iter().filter(|symbol| !patch.variables.contains(symbol)).collect();
+        let program = Program::new(graph, &outputs, patch.variables, &parameters).ok()?;
+        let values = parameters.iter().map(|&symbol| bindings.value(symbol)).collect();
+        Some(Self { kernel: Kernel::interpreted(program), parameters: values, ends })
     }
-    let position = value(&patch.position, coordinates);
-    [position[0], position[1], position[2]]
+
+    fn is_finite(&self) -> bool {
+        self.ends.iter().flatten().all(|end| *end != End::Infinite)
+    }
+
+    /// Positions at fractions of the two intervals; `far` stands for an infinite end.
+    fn positions(&self, shares: &[[f64; 2]], far: f64) -> Vec<Point> {
+        let count = shares.len();
+        let mut out = vec![0.0; count * self.kernel.program().outputs().len()];
+        let mut coordinates = [vec![0.0; count], vec![0.0; count]];
+        // Twice: the second time an interval that depends on the other variable has its value.
+        for _ in 0..2 {
+            self.kernel.evaluate(&self.parameters, &coordinates[0], &coordinates[1], &mut out);
+            for (index, coordinates) in coordinates.iter_mut().enumerate() {
+                for (i, coordinate) in coordinates.iter_mut().enumerate() {
+                    let value = |end: End, infinity: f64| match end {
+                        End::Output(output) => out[output * count + i],
+                        End::Infinite => infinity,
+                    };
+                    let [lower, upper] = self.ends[index];
+                    let segment = Segment::new(value(lower, f64::NEG_INFINITY), value(upper, f64::INFINITY));
+                    let at = match shares[i][index] {
+                        share if share <= 0.0 => segment.from,
+                        share if share >= 1.0 => segment.to,
+                        share => point(segment, share),
+                    };
+                    let infinite = lower == End::Infinite || upper == End::Infinite;
+                    *coordinate = if infinite { at.clamp(-far, far) } else { at };
+                }
+            }
+        }
+        self.kernel.evaluate(&self.parameters, &coordinates[0], &coordinates[1], &mut out);
+        (0..count).map(|i| [out[i], out[count + i], out[2 * count + i]]).collect()
+    }
 }
 
-/// The number at a fraction of an interval; infinite intervals are mapped to finite ones and end far out.
-fn between(lower: f64, upper: f64, share: f64) -> f64 {
-    let far = share.min(FAR);
-    match (lower.is_finite(), upper.is_finite()) {
-        (true, true) if share >= 1.0 => upper,
-        (true, true) => lower + share * (upper - lower),
-        (true, false) => lower + far / (1.0 - far),
-        (false, true) => upper - (1.0 - share).min(FAR) / (1.0 - (1.0 - share).min(FAR)),
-        (false, false) => {
-            let t = (2.0 * share - 1.0).clamp(-FAR, FAR);
-            t / (1.0 - t * t)
-        }
+/// A side as a curve.
+#[derive(Clone)]
+struct Curve {
+    map: Rc<PatchMap>,
+    far: f64,
+    /// The variable that runs along it.
+    along: usize,
+    /// Whether the other one is at its upper end.
+    upper: bool,
+}
+
+impl Curve {
+    fn points(&self, shares: &[f64]) -> Vec<Point> {
+        let end = if self.upper { 1.0 } else { 0.0 };
+        let shares: Vec<[f64; 2]> =
+            shares.iter().map(|&share| if self.along == 0 { [share, end] } else { [end, share] }).collect();
+        self.map.positions(&shares, self.far)
     }
 }
 
-fn extent<'a>(points: impl Iterator<Item = &'a Point>) -> f64 {
+/// The corners of the box around points.
+fn corners<'a>(points: impl Iterator<Item = &'a Point>) -> [Point; 2] {
     let (mut low, mut high) = ([f64::INFINITY; 3], [f64::NEG_INFINITY; 3]);
     for point in points {
         for axis in 0..3 {
@@ -168,62 +282,105 @@ fn extent<'a>(points: impl Iterator<Item = &'a Point>) -> f64 {
             high[axis] = high[axis].max(point[axis]);
         }
     }
+    [low, high]
+}
+
+/// The longest edge of the box around points.
+fn extent<'a>(points: impl Iterator<Item = &'a Point>) -> f64 {
+    let [low, high] = corners(points);
     (0..3).map(|axis| high[axis] - low[axis]).fold(0.0, f64::max)
 }
 
-/// Whether two curves cover each other, and if so whether they are traversed in the same sense.
-fn meeting(first: &Side<'_>, second: &Side<'_>, tolerance: f64) -> Option<bool> {
-    let (a, b) = (&first.points[..], &second.points[..]);
-    // Between samples a curve is known up to its sagitta only; this looks whether a closer search is worth while.
+/// How far two sides are from covering each other, and whether they are traversed in the same sense; `None` where they are
+/// far apart.
+fn separation(a: &Side, b: &Side, size: f64) -> Option<Separation> {
+    // Between samples a curve is known up to its sagitta only; both ends of a chord allow for that.
     let sagitta =
         |points: &[Point]| points.windows(3).map(|w| distance_to_segment(&w[1], &w[0], &w[2])).fold(0.0, f64::max);
-    let near = tolerance + sagitta(a).max(sagitta(b));
+    let near = GAP * size + sagitta(&a.points).max(sagitta(&b.points));
+    let boxes = [a, b].map(|side| corners(side.points.iter()));
+    if (0..2).any(|end| (0..3).any(|axis| (boxes[0][end][axis] - boxes[1][end][axis]).abs() > near)) {
+        return None;
+    }
     let covered = |from: &[Point], onto: &[Point]| {
         from.iter().all(|point| onto.windows(2).any(|w| distance_to_segment(point, &w[0], &w[1]) <= near))
     };
-    if !covered(a, b) || !covered(b, a) || !lies_on(a, second, tolerance) || !lies_on(b, first, tolerance) {
+    if !covered(&a.points, &b.points) || !covered(&b.points, &a.points) {
         return None;
     }
-    let nearest = |point: &Point| {
-        (0..b.len()).min_by(|&i, &j| distance(point, &b[i]).total_cmp(&distance(point, &b[j]))).unwrap_or(0)
-    };
+    let (mut distance, mut at) = farthest(&a.points, b, size);
+    let other = farthest(&b.points, a, size);
+    if other.0 > distance {
+        (distance, at) = other;
+    }
     // The sense is what most neighbouring samples say; a jump over the seam of a closed side is a minority.
-    let steps: i64 = [a.len() / 7, a.len() / 3, a.len() / 2, 2 * a.len() / 3]
+    let steps: i64 = [SAMPLES / 7, SAMPLES / 3, SAMPLES / 2, 2 * SAMPLES / 3]
         .iter()
         .map(|&i| {
-            let step = nearest(&a[i + 3]) as i64 - nearest(&a[i]) as i64;
-            if step.unsigned_abs() as usize > b.len() / 2 { -step.signum() } else { step.signum() }
+            let step = nearest(&a.points[i + 3], &b.points) as i64 - nearest(&a.points[i], &b.points) as i64;
+            if step.unsigned_abs() as usize > SAMPLES / 2 { -step.signum() } else { step.signum() }
         })
         .sum();
-    Some(steps > 0)
+    Some(Separation { distance, at, same_sense: steps > 0 })
 }
 
-/// Whether samples of a curve lie on a side, each found by a golden-section search around its nearest sample there.
-fn lies_on(points: &[Point], side: &Side<'_>, tolerance: f64) -> bool {
-    let last = (side.points.len() - 1) as f64;
-    let step = (points.len() - 1) / (SEARCHED - 1);
-    points.iter().step_by(step.max(1)).all(|point| {
-        let nearest = (0..side.points.len())
-            .min_by(|&i, &j| distance(point, &side.points[i]).total_cmp(&distance(point, &side.points[j])))
-            .unwrap_or(0) as f64;
-        let away = |share: f64| distance(point, &(side.at)(share));
-        let (mut low, mut high) = ((nearest - 1.0).max(0.0) / last, (nearest + 1.0).min(last) / last);
-        for end in [low, high, nearest / last] {
-            if away(end) <= tolerance {
-                return true;
-            }
+/// The sample with the largest distance from a side, and that distance.
+fn farthest(samples: &[Point], side: &Side, size: f64) -> (f64, Point) {
+    let mut distances = Vec::with_capacity(samples.len());
+    let mut searched = Vec::new();
+    for (i, sample) in samples.iter().enumerate() {
+        let closest = nearest(sample, &side.points);
+        let known = distance(sample, &side.points[closest]);
+        distances.push(known);
+        if known > 0.01 * tolerance(size, sample) {
+            // A closed side has its seam at both ends.
+            let seam = match closest {
+                0 => Some(SAMPLES - 1),
+                last if last == SAMPLES - 1 => Some(0),
+                _ => None,
+            };
+            searched.extend([Some(closest), seam].into_iter().flatten().map(|closest| (i, closest)));
         }
-        const GOLDEN: f64 = 0.618_033_988_749_894_9;
-        for _ in 0..SEARCH_STEPS {
-            let (left, right) = (high - GOLDEN * (high - low), low + GOLDEN * (high - low));
-            if away(left) <= away(right) {
-                high = right;
+    }
+    for (&(i, _), found) in searched.iter().zip(refined(samples, &searched, side)) {
+        distances[i] = f64::min(distances[i], found);
+    }
+    let worst = (0..samples.len()).max_by(|&i, &j| distances[i].total_cmp(&distances[j])).unwrap_or(0);
+    (distances[worst], samples[worst])
+}
+
+/// Distances of samples from a side beside one of its own samples each: golden-section search, all at once.
+fn refined(samples: &[Point], searched: &[(usize, usize)], side: &Side) -> Vec<f64> {
+    let ratio = 0.5 * (5f64.sqrt() - 1.0);
+    let last = SAMPLES - 1;
+    let mut low: Vec<f64> = searched.iter().map(|&(_, near)| share(near.saturating_sub(1))).collect();
+    let mut high: Vec<f64> = searched.iter().map(|&(_, near)| share((near + 1).min(last))).collect();
+    let mut best = vec![f64::INFINITY; searched.len()];
+    if searched.is_empty() {
+        return best;
+    }
+    let distances = |shares: &[f64]| -> Vec<f64> {
+        let points = side.curve.points(shares);
+        searched.iter().zip(&points).map(|(&(i, _), point)| distance(&samples[i], point)).collect()
+    };
+    for _ in 0..REFINEMENTS {
+        let left: Vec<f64> = low.iter().zip(&high).map(|(low, high)| high - ratio * (high - low)).collect();
+        let right: Vec<f64> = low.iter().zip(&high).map(|(low, high)| low + ratio * (high - low)).collect();
+        let (at_left, at_right) = (distances(&left), distances(&right));
+        for k in 0..searched.len() {
+            best[k] = best[k].min(at_left[k]).min(at_right[k]);
+            if at_left[k] < at_right[k] {
+                high[k] = right[k];
             } else {
-                low = left;
+                low[k] = left[k];
             }
         }
-        away(0.5 * (low + high)) <= tolerance
-    })
+    }
+    best
+}
+
+fn nearest(point: &Point, points: &[Point]) -> usize {
+    (0..points.len()).min_by(|&i, &j| distance(point, &points[i]).total_cmp(&distance(point, &points[j]))).unwrap_or(0)
 }
 
 fn distance(a: &Point, b: &Point) -> f64 {

@@ -10,6 +10,7 @@
 //! frequency only at multiples of their product.
 
 use super::map::{MAXIMUM_ORDER, Map, Segment};
+use super::nested::{Axis, Growth};
 use super::rules::{KRONROD_NODES, TRAPEZOID_NODES, kronrod, trapezoid_shift};
 
 /// Values of a vector-valued function at a batch of points, component-major: `values[k * count + i]`.
@@ -23,9 +24,10 @@ pub struct Samples {
     pub magnitudes: Vec<f64>,
     /// Evaluations spent.
     pub evaluations: u64,
-    /// For values that are not finite: the second coordinate at which the function was found undefined.
-    pub failures: Vec<(usize, f64)>,
-    /// Number of points at which an inner end with growth like 1/distance or worse was met.
+    /// For values that are not finite: the index of the point, the second coordinate at which the function was found
+    /// undefined, and the component.
+    pub failures: Vec<(usize, f64, usize)>,
+    /// Number of points at which an inner end with growth that is not integrable, or may not be, was met.
     pub divergent: usize,
     /// Whether an integral behind a value gave up for want of evaluations.
     pub exhausted: bool,
@@ -34,8 +36,30 @@ pub struct Samples {
 /// A vector-valued function of one variable.
 pub(super) trait Line {
     fn components(&self) -> usize;
-    /// Values at `x`. Where each of them is an integral, they share about `budget` evaluations.
-    fn sample(&self, x: &[f64], budget: u64) -> Samples;
+    /// Values at `x`; `None` if even the least effort is more than allowed.
+    fn sample(&self, x: &[f64], allowance: Allowance) -> Option<Samples>;
+}
+
+/// Evaluations that a batch of samples may take. Where each sample is an integral, each has its smallest round, and they
+/// share what `usual` leaves beyond that.
+#[derive(Clone, Copy, PartialEq, Debug)]
+pub(super) struct Allowance {
+    pub(super) usual: u64,
+    pub(super) most: u64,
+}
+
+impl Allowance {
+    /// What is left of a budget; more for samples that are needed in any case.
+    pub(super) fn of(left: u64, needed: bool) -> Self {
+        Self { usual: left, most: if needed { u64::MAX } else { left } }
+    }
+}
+
+/// Not even the smallest round was within the budget.
+#[derive(Clone, Copy, PartialEq, Debug)]
+pub(super) struct Unaffordable {
+    /// Evaluations that were made nevertheless.
+    pub(super) evaluations: u64,
 }
 
 /// How exact a component must be: within `absolute`, or within `relative` times the integral of |f|.
@@ -63,12 +87,40 @@ pub(super) struct LineSum {
     pub(super) magnitudes: Vec<f64>,
     pub(super) evaluations: u64,
     pub(super) outcome: Outcome,
-    /// Where an end with non-integrable growth was met, and the exponent.
-    pub(super) growth: Option<(f64, f64)>,
+    /// The steepest growth at an end that is not integrable.
+    pub(super) growth: Option<EndGrowth>,
+    /// Growth of which samples cannot tell whether it is integrable.
+    pub(super) doubt: Option<Growth>,
     /// Samples at which the inner integral met such an end, and all samples.
     pub(super) divergent: (usize, usize),
     /// Whether an integral behind a sample gave up for want of evaluations.
     pub(super) exhausted: bool,
+}
+
+/// From this exponent on, growth like distance^exponent is doubtful: samples cannot tell it from distance^-1.
+const DOUBTFUL: f64 = -0.99;
+
+/// From this exponent on, growth like distance^exponent is certainly not integrable.
+const DIVERGENT: f64 = -1.02;
+
+/// Growth like distance^exponent towards an end.
+#[derive(Clone, Copy, PartialEq, Debug)]
+pub(super) struct EndGrowth {
+    pub(super) end: f64,
+    pub(super) exponent: f64,
+    pub(super) component: usize,
+}
+
+impl EndGrowth {
+    /// Whether the integral certainly does not exist.
+    pub(super) fn diverges(self) -> bool {
+        self.exponent <= DIVERGENT
+    }
+
+    pub(super) fn along(self, axis: Axis) -> Growth {
+        let EndGrowth { end, exponent, component } = self;
+        Growth { axis, end, exponent, component }
+    }
 }
 
 /// How a line integration ended.
@@ -111,8 +163,10 @@ const ROUGH_SHARE: f64 = 0.125;
 /// How much work a line is worth, and how far its rules are trusted.
 #[derive(Clone, Copy, PartialEq, Debug)]
 pub(super) struct Effort {
-    /// Evaluations after which it gives up; a round that has begun is finished.
+    /// Most evaluations; a round that would take more is not begun.
     pub(super) budget: u64,
+    /// Whether the first round is made even if it takes more.
+    pub(super) needed: bool,
     /// Whether the function has kinks or jumps that no split resolves.
     pub(super) rough: bool,
 }
@@ -147,6 +201,11 @@ struct Panel {
     magnitudes: Vec<f64>,
 }
 
+/// Samples of the smallest round over `segments`: the probes of their ends and one panel for each.
+pub(super) fn least_samples(segments: usize) -> u64 {
+    (PROBES.len() * 2 + KRONROD_NODES) as u64 * segments as u64
+}
+
 /// Integrates over `segments`, one after the other. `keep_going` is told the evaluations so far after each round.
 pub(super) fn integrate_segments(
     line: &impl Line,
@@ -154,26 +213,27 @@ pub(super) fn integrate_segments(
     tolerances: &[Tolerance],
     effort: Effort,
     keep_going: &dyn Fn(u64) -> bool,
-) -> Result<LineSum, NotFinite> {
+) -> Result<Result<LineSum, Unaffordable>, NotFinite> {
     let components = line.components();
-    let Effort { budget, rough } = effort;
+    let Effort { budget, needed, rough } = effort;
     let mut spent = Spent::default();
-    let (maps, growth) = probe_ends(line, segments, budget / 8, &mut spent);
-    let mut panels: Vec<Panel> = Vec::new();
-    let mut pending: Vec<Panel> = Vec::new();
-    for map in 0..maps.len() {
-        if rough || maps.len() >= MANY_SEGMENTS {
-            pending.push(Panel::new(map, 0.0, 1.0, 0));
-        } else {
-            pending.push(Panel::new(map, 0.0, 0.5, 0));
-            pending.push(Panel::new(map, 0.5, 1.0, 0));
+    let Some((maps, growth)) = probe_ends(line, segments, effort, &mut spent) else {
+        return Ok(Err(Unaffordable { evaluations: 0 }));
+    };
+    let whole = || (0..maps.len()).map(|map| Panel::new(map, 0.0, 1.0, 0)).collect::<Vec<Panel>>();
+    let mut panels = whole();
+    if !rough && maps.len() < MANY_SEGMENTS {
+        panels = panels.iter().flat_map(|panel| panel.halves(0)).collect();
+    }
+    if !evaluate_panels(line, &maps, &mut panels, effort, false, &mut spent)? {
+        panels = whole();
+        if !evaluate_panels(line, &maps, &mut panels, effort, needed, &mut spent)? {
+            return Ok(Err(Unaffordable { evaluations: spent.evaluations }));
         }
     }
     // On a rough line the first difference of rules alone says nothing.
     let unconfirmed = |panel: &Panel| rough && panel.before.is_empty();
     let outcome = loop {
-        evaluate_panels(line, &maps, &mut pending, effort, &mut spent)?;
-        panels.append(&mut pending);
         let total = |part: &dyn Fn(&Panel) -> &Vec<f64>, k: usize| panels.iter().map(|p| part(p)[k]).sum::<f64>();
         let allowed: Vec<f64> = (0..components).map(|k| tolerances[k].allowed(total(&|p| &p.magnitudes, k))).collect();
         let reached =
@@ -199,31 +259,32 @@ pub(super) fn integrate_segments(
                 && panel.stalls < MAXIMUM_STALLS
                 && maps[panel.map].resolves(panel.from, panel.to)
         };
-        let mut kept = Vec::with_capacity(panels.len());
-        for panel in panels {
-            if splittable(&panel) && (unconfirmed(&panel) || weight(&panel) > share) {
-                pending.extend(panel.halves());
-            } else {
-                kept.push(panel);
-            }
-        }
+        let (split, kept): (Vec<Panel>, Vec<Panel>) =
+            panels.into_iter().partition(|panel| splittable(panel) && (unconfirmed(panel) || weight(panel) > share));
         panels = kept;
-        if pending.is_empty() {
+        if split.is_empty() {
             break Outcome::Noise;
         }
+        let mut halves: Vec<Panel> = split.iter().flat_map(|panel| panel.halves(panel.depth + 1)).collect();
+        if !evaluate_panels(line, &maps, &mut halves, effort, false, &mut spent)? {
+            panels.extend(split);
+            break Outcome::Budget;
+        }
+        panels.append(&mut halves);
     };
     panels.sort_by(|a, b| (a.map, a.from).partial_cmp(&(b.map, b.from)).expect("panel ends are numbers"));
     let sum = |k: usize, part: &dyn Fn(&Panel) -> &Vec<f64>| compensated(panels.iter().map(|panel| part(panel)[k]));
-    Ok(LineSum {
+    Ok(Ok(LineSum {
         values: (0..components).map(|k| sum(k, &|p| &p.values)).collect(),
         errors: (0..components).map(|k| sum(k, &|p| &p.errors) + sum(k, &|p| &p.inherited)).collect(),
         magnitudes: (0..components).map(|k| sum(k, &|p| &p.magnitudes)).collect(),
         evaluations: spent.evaluations,
         outcome,
         growth,
+        doubt: None,
         divergent: spent.divergent,
         exhausted: spent.exhausted,
-    })
+    }))
 }
 
 impl Panel {
@@ -251,12 +312,12 @@ impl Panel {
     }
 
     /// The two halves, which carry the error of the whole until they are evaluated.
-    fn halves(self) -> [Panel; 2] {
+    fn halves(&self, depth: u8) -> [Panel; 2] {
         let middle = 0.5 * (self.from + self.to);
         let half = |from, to| Panel {
             from,
             to,
-            depth: self.depth + 1,
+            depth,
             stalls: self.stalls,
             errors: self.errors.clone(),
             ..Panel::new(self.map, from, to, 0)
@@ -265,14 +326,15 @@ impl Panel {
     }
 }
 
-/// Evaluates the rule on every panel in one batch of samples.
+/// Evaluates the rule on every panel in one batch of samples; `false` if that would take more than the budget.
 fn evaluate_panels(
     line: &impl Line,
     maps: &[Map],
     panels: &mut [Panel],
     effort: Effort,
+    needed: bool,
     spent: &mut Spent,
-) -> Result<(), NotFinite> {
+) -> Result<bool, NotFinite> {
     let rule = kronrod();
     let mut x = Vec::with_capacity(panels.len() * KRONROD_NODES);
     let mut slopes = Vec::with_capacity(x.capacity());
@@ -286,7 +348,9 @@ fn evaluate_panels(
             nudges.push(1e-7 * slope * half);
         }
     }
-    let samples = finite_samples(line, &x, &nudges, effort.budget.saturating_sub(spent.evaluations))?;
+    let left = effort.budget.saturating_sub(spent.evaluations);
+    let allowance = Allowance::of(left, needed);
+    let Some(samples) = finite_samples(line, &x, &nudges, allowance)? else { return Ok(false) };
     spent.add(&samples);
     spent.divergent.0 += samples.divergent;
     spent.divergent.1 += x.len();
@@ -318,7 +382,7 @@ fn evaluate_panels(
         }
     }
     note_progress(panels);
-    Ok(())
+    Ok(true)
 }
 
 /// Counts generations in which a bisection did not help: both halves keep a good part of the error of the whole. Near a
@@ -351,9 +415,15 @@ impl Samples {
 }
 
 /// Samples at `x`. A point at which the function is undefined is replaced by a near one (an isolated 0/0, such as the
-/// normal at a cone tip, has no weight in an integral); if that is undefined too, the function is.
-fn finite_samples(line: &impl Line, x: &[f64], nudges: &[f64], budget: u64) -> Result<Samples, NotFinite> {
-    let mut samples = line.sample(x, budget);
+/// normal at a cone tip, has no weight in an integral); if that is undefined too, the function is. `None` if the samples
+/// would take more than the budget.
+fn finite_samples(
+    line: &impl Line,
+    x: &[f64],
+    nudges: &[f64],
+    allowance: Allowance,
+) -> Result<Option<Samples>, NotFinite> {
+    let Some(mut samples) = line.sample(x, allowance) else { return Ok(None) };
     let components = line.components();
     let count = x.len();
     let undefined = |samples: &Samples, i: usize, count: usize| {
@@ -361,18 +431,23 @@ fn finite_samples(line: &impl Line, x: &[f64], nudges: &[f64], budget: u64) -> R
     };
     let bad: Vec<usize> = (0..count).filter(|&i| undefined(&samples, i, count).is_some()).collect();
     if bad.is_empty() {
-        return Ok(samples);
+        return Ok(Some(samples));
     }
     let moved: Vec<f64> = bad.iter().flat_map(|&i| [x[i] + nudges[i], x[i] - nudges[i]]).collect();
-    let again = line.sample(&moved, budget.saturating_sub(samples.evaluations));
+    let left = allowance.usual.saturating_sub(samples.evaluations);
+    let again = line.sample(&moved, Allowance::of(left, true)).expect("needed samples are made");
     samples.evaluations += again.evaluations;
     samples.exhausted |= again.exhausted;
     for (position, &i) in bad.iter().enumerate() {
         let candidates = [2 * position, 2 * position + 1];
         let Some(&good) = candidates.iter().find(|&&j| undefined(&again, j, moved.len()).is_none()) else {
-            let second = samples.failures.iter().find(|(index, _)| *index == i).map(|(_, second)| *second);
-            let component = undefined(&samples, i, count).unwrap_or(0);
-            return Err(NotFinite { x: x[i], second, component });
+            let inner = samples.failures.iter().find(|(index, ..)| *index == i);
+            let component = inner.map(|(.., component)| *component).or_else(|| undefined(&samples, i, count));
+            return Err(NotFinite {
+                x: x[i],
+                second: inner.map(|(_, second, _)| *second),
+                component: component.unwrap_or(0),
+            });
         };
         for k in 0..components {
             samples.values[k * count + i] = again.values[k * moved.len() + good];
@@ -384,19 +459,19 @@ fn finite_samples(line: &impl Line, x: &[f64], nudges: &[f64], budget: u64) -> R
             }
         }
     }
-    Ok(samples)
+    Ok(Some(samples))
 }
 
 /// Distances from an end, as fractions of the segment, at which the behaviour is probed.
 const PROBES: [f64; 3] = [1e-3, 1e-6, 1e-9];
 
-/// Chooses the orders of the map of each segment from samples near its ends.
+/// Chooses the orders of the map of each segment from samples near its ends; `None` if they would take more than the budget.
 fn probe_ends(
     line: &impl Line,
     segments: &[Segment],
-    budget: u64,
+    effort: Effort,
     spent: &mut Spent,
-) -> (Vec<Map>, Option<(f64, f64)>) {
+) -> Option<(Vec<Map>, Option<EndGrowth>)> {
     let plain: Vec<Map> = segments.iter().map(|&segment| Map::new(segment, (1, 1))).collect();
     let mut x = Vec::new();
     let mut slopes = Vec::new();
@@ -407,18 +482,19 @@ fn probe_ends(
             slopes.push(slope);
         }
     }
-    let samples = line.sample(&x, budget);
+    let samples =
+        line.sample(&x, Allowance { usual: effort.budget / 8, ..Allowance::of(effort.budget, effort.needed) })?;
     spent.evaluations += samples.evaluations;
     let count = x.len();
-    let mut growth: Option<(f64, f64)> = None;
+    let mut growth: Option<EndGrowth> = None;
     let mut end_order = |first: usize, end: f64| {
         let mut order = 1;
         for k in 0..line.components() {
             let value = |j: usize| samples.values[k * count + first + j] * slopes[first + j];
             let noise = (0..3).map(|j| samples.error(k, first + j, count) * slopes[first + j]).fold(0.0, f64::max);
             let Some(exponent) = end_exponent([value(0), value(1), value(2)], noise) else { continue };
-            if exponent <= -0.99 && growth.is_none_or(|(_, known)| exponent < known) {
-                growth = Some((end, exponent));
+            if exponent <= DOUBTFUL && growth.is_none_or(|known| exponent < known.exponent) {
+                growth = Some(EndGrowth { end, exponent, component: k });
             }
             order = order.max(order_for(exponent));
         }
@@ -433,7 +509,7 @@ fn probe_ends(
             Map::new(segment, (lower, upper))
         })
         .collect();
-    (maps, growth)
+    Some((maps, growth))
 }
 
 /// The exponent alpha of f ~ c + d^alpha from values at the three probe distances d, if it is below 1.
@@ -463,7 +539,8 @@ fn order_for(exponent: f64) -> u8 {
     MAXIMUM_ORDER
 }
 
-/// Integrates over one period. `None` if the rule does not converge: the caller then uses [`integrate_segments`].
+/// Integrates over one period. `None` if the rule does not converge, or the budget is too small for two node counts: the
+/// caller then uses [`integrate_segments`], for which enough of the budget is left.
 pub(super) fn integrate_period(
     line: &impl Line,
     segment: Segment,
@@ -475,14 +552,16 @@ pub(super) fn integrate_period(
     let width = segment.to - segment.from;
     let mut last: Option<Vec<f64>> = None;
     let mut last_differences: Option<Vec<f64>> = None;
+    // The best so far, for the case that the budget ends here.
+    let mut best: Option<LineSum> = None;
     for (level, nodes) in TRAPEZOID_NODES.into_iter().enumerate() {
         let step = width / nodes as f64;
         let shift = trapezoid_shift(level);
         let x: Vec<f64> = (0..nodes).map(|i| segment.from + width * ((i as f64 + shift) / nodes as f64)).collect();
-        if *evaluations > budget {
-            return Ok(None);
-        }
-        let samples = finite_samples(line, &x, &vec![1e-7 * step; nodes], budget - *evaluations)?;
+        let left = budget.saturating_sub(*evaluations);
+        let Some(samples) = finite_samples(line, &x, &vec![1e-7 * step; nodes], Allowance::of(left, false))? else {
+            return Ok(best);
+        };
         *evaluations += samples.evaluations;
         let sum = |part: &dyn Fn(usize) -> f64| step * compensated((0..nodes).map(part));
         let values: Vec<f64> = (0..components).map(|k| sum(&|i| samples.values[k * nodes + i])).collect();
@@ -496,30 +575,34 @@ pub(super) fn integrate_period(
                 .collect();
             let reached = (0..components)
                 .all(|k| errors[k] <= tolerances[k].allowed(magnitudes[k]).max(ROUNDING * magnitudes[k]));
+            let sum = LineSum {
+                errors: (0..components).map(|k| errors[k] + inherited[k]).collect(),
+                values: values.clone(),
+                magnitudes: magnitudes.clone(),
+                evaluations: *evaluations,
+                outcome: if reached { Outcome::Reached } else { Outcome::Budget },
+                growth: None,
+                doubt: None,
+                divergent: (samples.divergent, nodes),
+                exhausted: samples.exhausted,
+            };
             if reached {
-                return Ok(Some(LineSum {
-                    errors: (0..components).map(|k| errors[k] + inherited[k]).collect(),
-                    values,
-                    magnitudes,
-                    evaluations: *evaluations,
-                    outcome: Outcome::Reached,
-                    growth: None,
-                    divergent: (samples.divergent, nodes),
-                    exhausted: samples.exhausted,
-                }));
+                return Ok(Some(sum));
             }
+            best = Some(sum);
             let hopeless = nodes > 100
                 && last_differences.as_ref().is_some_and(|older| {
                     (0..components).any(|k| differences[k] > 0.1 * older[k].max(1e-3 * magnitudes[k]))
                 });
             if hopeless {
-                return Ok(None);
+                // Panels take as much again at least.
+                return Ok(if 2 * *evaluations > budget { best } else { None });
             }
             last_differences = Some(differences);
         }
         last = Some(values);
     }
-    Ok(None)
+    Ok(if 2 * *evaluations > budget { best } else { None })
 }
 
 /// Neumaier's compensated sum.

@@ -57,7 +57,9 @@ impl Map {
             (true, true) => {
                 let width = to - from;
                 let x = if fraction <= 0.5 { from + width * fraction } else { to - width * complement };
-                (x, width * slope)
+                // Rounding must not put a node on an end, where the function may be infinite.
+                let inside = if from.next_up() < to { x.clamp(from.next_up(), to.next_down()) } else { x };
+                (inside, width * slope)
             }
             (true, false) => {
                 (from + self.scale * fraction / complement, self.scale * slope / (complement * complement))

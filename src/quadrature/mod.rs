@@ -8,5 +8,5 @@ mod nested;
 mod rules;
 
 pub use map::Segment;
-pub use nested::{Failure, Integral, Limit, PlaneIntegrand, Sides, integrate};
+pub use nested::{Axis, Failure, Growth, Integral, Limit, PlaneIntegrand, Sides, integrate};
 pub use rules::gauss_legendre;

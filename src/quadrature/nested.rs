@@ -2,7 +2,8 @@
 //! integrated with its own splits, maps and errors, and those errors are carried into the outer sum.
 
 use super::line::{
-    Effort, Line, LineSum, NotFinite, Outcome, Samples, Tolerance, integrate_period, integrate_segments,
+    Allowance, Effort, EndGrowth, Line, LineSum, NotFinite, Outcome, Samples, Tolerance, Unaffordable,
+    integrate_period, integrate_segments, least_samples,
 };
 use super::map::{Map, Segment};
 use super::rules::gauss_legendre;
@@ -69,6 +70,8 @@ pub enum Limit {
     Rounding,
     /// The caller asked to stop.
     Stopped,
+    /// The function grows so fast that samples cannot tell whether the integral exists.
+    Growth(Growth),
 }
 
 /// Why there is no value.
@@ -83,21 +86,40 @@ pub enum Failure {
         /// The component.
         component: usize,
     },
-    /// The function grows like distance^exponent, exponent <= -1, towards an end.
-    Divergent {
-        /// Outer coordinate of the end, if it is an end of the outer line.
-        outer: Option<f64>,
-        /// Inner coordinate of the end, if it is an end of the inner lines.
-        inner: Option<f64>,
-        /// The exponent measured.
-        exponent: f64,
-    },
+    /// The function grows towards an end so fast that the integral does not exist.
+    Divergent(Growth),
+}
+
+/// Growth towards an end of a line, as far as samples show it.
+#[derive(Clone, Copy, PartialEq, Debug)]
+pub struct Growth {
+    /// The line it is seen on.
+    pub axis: Axis,
+    /// The end: a number or an infinity.
+    pub end: f64,
+    /// The function grows like distance^exponent towards a finite end, like x^(-2 - exponent) towards an infinite one.
+    pub exponent: f64,
+    /// The component.
+    pub component: usize,
+}
+
+/// Which of the two variables.
+#[derive(Clone, Copy, PartialEq, Eq, Debug)]
+pub enum Axis {
+    /// The outer one.
+    Outer,
+    /// The inner one.
+    Inner,
 }
 
 /// Integrates `function` over its region until each component k is within `tolerance(k, value, magnitude)`.
 ///
 /// `tolerance` gives the error allowed for a component with this value and this integral of |f|. `keep_going` is told the
-/// evaluations so far and returns whether to go on. Results have the same bits for any number of threads.
+/// evaluations so far and returns whether to go on.
+///
+/// `budget` is the largest number of evaluations; the first look, 9 x 9 points for each part of the region, and a second
+/// look beside undefined points are made in any case. A budget below the smallest round of rules, some 37 x 37 points for
+/// each part, leaves the first look with infinite errors. Results have the same bits for any number of threads.
 ///
 /// # Errors
 /// If the function is undefined on more than isolated points or grows so fast that the integral does not exist.
@@ -112,6 +134,7 @@ pub fn integrate(
     let rounding = |k: usize, sum: &LineSum| ROUNDING_PER_SUM * sum.magnitudes[k] + 2.0 * sides.rounding[k];
     let mut spent = 0;
     let (mut values, mut magnitudes) = coarse(function, sides, &mut spent);
+    let mut before: Option<Integral> = None;
     for attempt in 0..4 {
         // Half of what is allowed for the outer rule, a quarter for the inner integrals, the rest for rounding.
         // Nothing can be had below the rounding of the function itself.
@@ -130,7 +153,22 @@ pub fn integrate(
         let line = OuterLine { function, sides, tolerances: inner_tolerances, longest, cost: AtomicU64::new(64) };
         let watch = |evaluations: u64| keep_going(spent + evaluations);
         let sum = integrate_outer(&line, sides, &outer_tolerances, budget.saturating_sub(spent), &watch)?;
-        spent += sum.evaluations;
+        spent += match &sum {
+            Ok(LineSum { evaluations, .. }) | Err(Unaffordable { evaluations }) => *evaluations,
+        };
+        let Ok(sum) = sum else {
+            // Not even the smallest round: what there is has no error bound, or that of the round before.
+            let guess = || Integral {
+                errors: vec![f64::INFINITY; components],
+                rounding: vec![0.0; components],
+                values: values.clone(),
+                magnitudes: magnitudes.clone(),
+                evaluations: spent,
+                limit: None,
+            };
+            let limit = Some(Limit::Evaluations);
+            return Ok(Integral { evaluations: spent, limit, ..before.unwrap_or_else(guess) });
+        };
         values.clone_from(&sum.values);
         magnitudes.clone_from(&sum.magnitudes);
         let errors: Vec<f64> =
@@ -139,6 +177,7 @@ pub fn integrate(
             (0..components).any(|k| errors[k] > tolerance(k, values[k], magnitudes[k]).max(8.0 * sides.rounding[k]));
         let limit = match sum.outcome {
             Outcome::Stopped => Some(Limit::Stopped),
+            _ if sum.doubt.is_some() => sum.doubt.map(Limit::Growth),
             _ if !short => None,
             Outcome::Budget => Some(Limit::Evaluations),
             _ if spent >= budget => Some(Limit::Evaluations),
@@ -147,10 +186,16 @@ pub fn integrate(
             Outcome::Reached if attempt == 3 && sum.exhausted => Some(Limit::Evaluations),
             Outcome::Reached if attempt == 3 => Some(Limit::Rounding),
             // The first guess at the size of the integral was too large: once more with the better one.
-            Outcome::Reached => continue,
+            Outcome::Reached => None,
         };
+        let again = short && limit.is_none();
         let rounding = (0..components).map(|k| rounding(k, &sum)).collect();
-        return Ok(Integral { values, errors, magnitudes, evaluations: spent, rounding, limit });
+        let integral =
+            Integral { values: sum.values, errors, magnitudes: sum.magnitudes, evaluations: spent, rounding, limit };
+        if !again {
+            return Ok(integral);
+        }
+        before = Some(integral);
     }
     unreachable!("the last attempt returns")
 }
@@ -192,20 +237,23 @@ impl Line for InnerLine<'_> {
         self.function.components()
     }
 
-    fn sample(&self, x: &[f64], _: u64) -> Samples {
+    fn sample(&self, x: &[f64], allowance: Allowance) -> Option<Samples> {
+        if x.len() as u64 > allowance.most {
+            return None;
+        }
         let mut values = vec![0.0; x.len() * self.components()];
         self.function.evaluate(self.outer, x, &mut values);
-        Samples { values, evaluations: x.len() as u64, ..Samples::default() }
+        Some(Samples { values, evaluations: x.len() as u64, ..Samples::default() })
     }
 }
 
 impl OuterLine<'_> {
-    fn inner_integral(&self, outer: f64, budget: u64) -> Result<LineSum, NotFinite> {
+    /// The integral over one inner line; `budget` is at least [`OuterLine::least`] for its segments.
+    fn inner_integral(&self, outer: f64, segments: &[Segment], budget: u64) -> Result<LineSum, NotFinite> {
         let line = InnerLine { function: self.function, outer };
-        let segments = self.function.inner_segments(outer);
         let mut evaluations = 0;
         if self.sides.inner_independent {
-            return Ok(constant_line(&line, &segments, budget));
+            return Ok(constant_line(&line, segments, Allowance::of(budget, true)).expect("needed samples are made"));
         }
         if self.sides.inner_periodic
             && let [segment] = segments[..]
@@ -213,19 +261,25 @@ impl OuterLine<'_> {
         {
             return Ok(sum);
         }
-        let effort = Effort { budget, rough: self.sides.rough };
-        let mut sum = integrate_segments(&line, &segments, &self.tolerances, effort, &|_| true)?;
+        let effort = Effort { budget: budget.saturating_sub(evaluations), needed: true, rough: self.sides.rough };
+        let sum = integrate_segments(&line, segments, &self.tolerances, effort, &|_| true)?;
+        let mut sum = sum.expect("the needed first round is made");
         sum.evaluations += evaluations;
         Ok(sum)
     }
+
+    /// Evaluations of the smallest round over the segments of an inner line.
+    fn least(&self, segments: &[Segment]) -> u64 {
+        if self.sides.inner_independent { 1 } else { least_samples(segments.len()) }
+    }
 }
 
-/// The integral of a function that does not change along the line.
-fn constant_line(line: &impl Line, segments: &[Segment], budget: u64) -> LineSum {
+/// The integral of a function that does not change along the line; `None` if one sample is more than the budget.
+fn constant_line(line: &impl Line, segments: &[Segment], allowance: Allowance) -> Option<LineSum> {
     let components = line.components();
     let length: f64 = segments.iter().map(|segment| segment.to - segment.from).sum();
     let middle: Vec<f64> = segments.iter().take(1).map(|s| s.from + 0.5 * (s.to - s.from)).collect();
-    let samples = line.sample(&middle, budget);
+    let samples = line.sample(&middle, allowance)?;
     let at = |part: &[f64], k: usize| part.get(k).copied().unwrap_or(0.0);
     let values: Vec<f64> = (0..components).map(|k| length * at(&samples.values, k)).collect();
     let magnitudes = if samples.magnitudes.is_empty() {
@@ -233,16 +287,17 @@ fn constant_line(line: &impl Line, segments: &[Segment], budget: u64) -> LineSum
     } else {
         (0..components).map(|k| length * at(&samples.magnitudes, k)).collect()
     };
-    LineSum {
+    Some(LineSum {
         values,
         errors: (0..components).map(|k| length * at(&samples.errors, k)).collect(),
         magnitudes,
         evaluations: samples.evaluations,
         outcome: Outcome::Reached,
         growth: None,
+        doubt: None,
         divergent: (samples.divergent, middle.len()),
         exhausted: samples.exhausted,
-    }
+    })
 }
 
 impl Line for OuterLine<'_> {
@@ -250,13 +305,28 @@ impl Line for OuterLine<'_> {
         self.function.components()
     }
 
-    fn sample(&self, x: &[f64], budget: u64) -> Samples {
-        let each = (budget / x.len().max(1) as u64).min(self.longest);
+    fn sample(&self, x: &[f64], allowance: Allowance) -> Option<Samples> {
         let expected = self.cost.load(Ordering::Relaxed) * x.len() as u64;
-        let lines: Vec<Result<LineSum, NotFinite>> = if expected.saturating_mul(self.function.work()) > PARALLEL_WORK {
-            x.par_iter().map(|&outer| self.inner_integral(outer, each)).collect()
+        let parallel = expected.saturating_mul(self.function.work()) > PARALLEL_WORK;
+        let segments: Vec<Vec<Segment>> = if parallel {
+            x.par_iter().map(|&outer| self.function.inner_segments(outer)).collect()
         } else {
-            x.iter().map(|&outer| self.inner_integral(outer, each)).collect()
+            x.iter().map(|&outer| self.function.inner_segments(outer)).collect()
+        };
+        // Every line has its smallest round; what is left is shared equally.
+        let least: u64 = segments.iter().map(|segments| self.least(segments)).sum();
+        if least > allowance.most {
+            return None;
+        }
+        let more = allowance.usual.saturating_sub(least) / x.len().max(1) as u64;
+        let integral = |(outer, segments): (&f64, &Vec<Segment>)| {
+            let least = self.least(segments);
+            self.inner_integral(*outer, segments, (least + more).min(self.longest.max(least)))
+        };
+        let lines: Vec<Result<LineSum, NotFinite>> = if parallel {
+            x.par_iter().zip(&segments).map(integral).collect()
+        } else {
+            x.iter().zip(&segments).map(integral).collect()
         };
         let components = self.components();
         let size = components * x.len();
@@ -275,16 +345,18 @@ impl Line for OuterLine<'_> {
                         samples.magnitudes[k * x.len() + i] = sum.magnitudes[k];
                     }
                     samples.evaluations += sum.evaluations;
-                    samples.divergent += usize::from(sum.growth.is_some());
+                    samples.divergent += usize::from(
+                        sum.growth.is_some_and(|growth| growth.diverges() || sum.outcome != Outcome::Reached),
+                    );
                     samples.exhausted |= sum.exhausted || sum.outcome == Outcome::Budget;
                 }
-                Err(failure) => samples.failures.push((i, failure.x)),
+                Err(failure) => samples.failures.push((i, failure.x, failure.component)),
             }
         }
         if !x.is_empty() {
             self.cost.store(samples.evaluations / x.len() as u64 + 1, Ordering::Relaxed);
         }
-        samples
+        Some(samples)
     }
 }
 
@@ -294,7 +366,7 @@ fn integrate_outer(
     tolerances: &[Tolerance],
     budget: u64,
     keep_going: &dyn Fn(u64) -> bool,
-) -> Result<LineSum, Failure> {
+) -> Result<Result<LineSum, Unaffordable>, Failure> {
     let not_finite = |failure: NotFinite| Failure::NotFinite {
         outer: failure.x,
         inner: failure.second,
@@ -302,42 +374,50 @@ fn integrate_outer(
     };
     let mut evaluations = 0;
     let sum = if sides.outer_independent {
-        constant_line(line, &sides.outer, budget)
+        constant_line(line, &sides.outer, Allowance::of(budget, false)).ok_or(Unaffordable { evaluations: 0 })
     } else if sides.outer_periodic
         && let [segment] = sides.outer[..]
         && let Some(sum) = integrate_period(line, segment, tolerances, budget, &mut evaluations).map_err(not_finite)?
     {
-        sum
+        Ok(sum)
     } else {
-        let effort = Effort { budget: budget.saturating_sub(evaluations), rough: sides.rough };
+        let effort = Effort { budget: budget.saturating_sub(evaluations), needed: false, rough: sides.rough };
         let mut sum = integrate_segments(line, &sides.outer, tolerances, effort, keep_going).map_err(not_finite)?;
-        sum.evaluations += evaluations;
+        match &mut sum {
+            Ok(LineSum { evaluations: own, .. }) | Err(Unaffordable { evaluations: own }) => *own += evaluations,
+        }
         sum
     };
+    let mut sum = match sum {
+        Ok(sum) => sum,
+        Err(unaffordable) => return Ok(Err(unaffordable)),
+    };
+    // Growth that is not integrable is said so; where samples cannot tell, there is a value but no error bound.
     let (divergent, samples) = sum.divergent;
-    if 2 * divergent > samples {
-        return Err(divergent_inside(line, sides));
-    }
-    if let (Some((end, exponent)), true) = (sum.growth, sum.outcome != Outcome::Reached) {
-        return Err(Failure::Divergent { outer: Some(end), inner: None, exponent });
+    let inside = if 2 * divergent > samples { growth_inside(line, sides) } else { None };
+    let along = sum.growth.filter(|_| sum.outcome != Outcome::Reached);
+    let found = inside.map(|growth| (growth, Axis::Inner)).or(along.map(|growth| (growth, Axis::Outer)));
+    if let Some((growth, axis)) = found {
+        if growth.diverges() {
+            return Err(Failure::Divergent(growth.along(axis)));
+        }
+        sum.errors[growth.component] = f64::INFINITY;
+        sum.doubt = Some(growth.along(axis));
     }
     match sum.values.iter().position(|value| !value.is_finite()) {
         Some(component) => {
             let outer = sides.outer.first().map_or(0.5, |segment| Map::new(*segment, (1, 1)).at(0.5).0);
             Err(Failure::NotFinite { outer, inner: None, component })
         }
-        None => Ok(sum),
+        None => Ok(Ok(sum)),
     }
 }
 
-/// Names the end of the inner line at which the middle line diverges.
-fn divergent_inside(line: &OuterLine<'_>, sides: &Sides) -> Failure {
+/// Growth at an end of the inner line in the middle.
+fn growth_inside(line: &OuterLine<'_>, sides: &Sides) -> Option<EndGrowth> {
     let middle = sides.outer.first().map_or(0.5, |segment| Map::new(*segment, (1, 1)).at(0.4321).0);
-    let growth = line.inner_integral(middle, line.longest).ok().and_then(|sum| sum.growth);
-    match growth {
-        Some((end, exponent)) => Failure::Divergent { outer: None, inner: Some(end), exponent },
-        None => Failure::Divergent { outer: Some(middle), inner: None, exponent: -1.0 },
-    }
+    let segments = line.function.inner_segments(middle);
+    line.inner_integral(middle, &segments, line.least(&segments)).ok()?.growth
 }
 
 /// First guess at the values and the integrals of |f|: a tensor rule with few nodes. Undefined samples are skipped.

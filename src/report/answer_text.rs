@@ -8,6 +8,12 @@ use std::fmt::Write;
 pub fn answers_text(answers: &[Answer]) -> String {
     let mut text = String::new();
     for answer in answers {
+        if let Some(failure) = &answer.failure {
+            // Writing to a string cannot fail.
+            let _ = writeln!(text, "{} has no value  [{}]", answer.name, answer.kind.word());
+            let _ = writeln!(text, "  {}: {}", failure.error.code, failure.error.message);
+            continue;
+        }
         let unit = unit_text(answer);
         let unit = if unit.is_empty() { unit } else { format!(" {unit}") };
         let how = if answer.evaluations == 0 {

@@ -24,8 +24,21 @@ fn one_or_many(values: Vec<f64>) -> Value {
 
 /// The document of `answer`.
 pub fn answers_json(answers: &[Answer], warnings: &[String], stamp: &Stamp) -> Value {
+    let errors: Vec<Value> = answers
+        .iter()
+        .filter_map(|answer| answer.failure.as_deref())
+        .map(|failure| error_json(&failure.error, Some((failure.line, failure.column))))
+        .collect();
     let answers: Vec<Value> = answers.iter().map(answer_json).collect();
-    json!({"schema": SCHEMA, "answers": answers, "warnings": warnings, "stamp": stamp.json()})
+    let mut document = Map::new();
+    document.insert("schema".into(), json!(SCHEMA));
+    document.insert("answers".into(), json!(answers));
+    document.insert("warnings".into(), json!(warnings));
+    if !errors.is_empty() {
+        document.insert("errors".into(), json!(errors));
+    }
+    document.insert("stamp".into(), stamp.json());
+    Value::Object(document)
 }
 
 fn answer_json(answer: &Answer) -> Value {
@@ -34,8 +47,15 @@ fn answer_json(answer: &Answer) -> Value {
     let unit_name = unit_text(answer);
     let mut object = Map::new();
     object.insert("name".into(), json!(answer.name));
-    object.insert("value".into(), one_or_many(shown.iter().map(|(value, _)| *value).collect()));
-    object.insert("error".into(), one_or_many(shown.iter().map(|(_, error)| *error).collect()));
+    let [value, error] = match answer.failure {
+        Some(_) => [Value::Null, Value::Null],
+        None => [
+            one_or_many(shown.iter().map(|(value, _)| *value).collect()),
+            one_or_many(shown.iter().map(|(_, error)| *error).collect()),
+        ],
+    };
+    object.insert("value".into(), value);
+    object.insert("error".into(), error);
     object.insert("kind".into(), json!(answer.kind.word()));
     object.insert("unit".into(), if unit_name.is_empty() { Value::Null } else { json!(unit_name) });
     object.insert("components".into(), json!(answer.components.iter().map(|c| c.label).collect::<Vec<_>>()));
@@ -72,6 +92,11 @@ pub fn sheet_errors_json(errors: &SheetErrors) -> Value {
 
 /// The document of a run that failed for another reason.
 pub fn failure_json(error: &IntegralError) -> Value {
+    json!({"schema": SCHEMA, "errors": [error_json(error, None)]})
+}
+
+/// One numerical failure, with line and column of what failed where they are known.
+fn error_json(error: &IntegralError, definition: Option<(usize, usize)>) -> Value {
     let place = error.place.as_ref().map(|place| {
         json!({
             "patch": place.patch,
@@ -81,15 +106,12 @@ pub fn failure_json(error: &IntegralError) -> Value {
         })
     });
     json!({
-        "schema": SCHEMA,
-        "errors": [{
-            "code": error.code,
-            "severity": "error",
-            "message": error.message,
-            "line": null,
-            "column": null,
-            "hint": error.hint,
-            "place": place,
-        }],
+        "code": error.code,
+        "severity": "error",
+        "message": error.message,
+        "line": definition.map(|(line, _)| line),
+        "column": definition.map(|(_, column)| column),
+        "hint": error.hint,
+        "place": place,
     })
 }

@@ -31,8 +31,11 @@ pub fn unit_text(answer: &Answer) -> String {
 
 /// `3.14159265 ± 0.00000012`: the error with two digits, rounded up, the value to the same place.
 pub fn value_with_error(value: f64, error: f64) -> String {
-    if !value.is_finite() || !error.is_finite() {
-        return format!("{value} ± {error}");
+    if !value.is_finite() {
+        return "undefined".to_owned();
+    }
+    if !error.is_finite() {
+        return format!("{value:.2e}, no error bound");
     }
     if error == 0.0 {
         return format!("{value} ± 0");
@@ -70,6 +73,8 @@ mod tests {
     fn digits_follow_the_error() {
         assert_eq!(value_with_error(std::f64::consts::PI, 1.23e-6), "3.1415927 ± 0.0000013");
         assert_eq!(value_with_error(0.0, 0.0), "0 ± 0");
+        assert_eq!(value_with_error(12566.37, f64::INFINITY), "1.26e4, no error bound");
+        assert_eq!(value_with_error(f64::NAN, f64::NAN), "undefined");
         assert_eq!(value_with_error(-1e-20, 1.05e-12), "(0.0 ± 1.1)e-12");
         assert_eq!(value_with_error(5.1e14, 7.8e2), "(5.1000000000000 ± 0.0000000000078)e14");
         assert_eq!(value_with_error(6.022e23, 1e15), "(6.022000000 ± 0.000000010)e23");
