@@ -2,11 +2,23 @@
 
 use super::arguments::{AnswerOptions, KindOption};
 use super::progress::Watch;
-use super::{Exit, Failure, load, output};
-use crate::integrals::{Answer, AnswerKind, Settings, answer};
-use crate::report::{Stamp, answers_json, answers_text};
+use super::{Exit, Failure, load, output, set_echo, set_text};
+use crate::integrals::{Answer, AnswerKind, Settings, answer, mark_exact};
+use crate::report::{Stamp, answers_json, answers_text, notes_text};
+use serde_json::json;
+use std::io::IsTerminal;
+
+/// What a sum of doubles can be had to, relative to the value.
+const FINEST: f64 = 16.0 * f64::EPSILON;
 
 pub(super) fn run(options: &AnswerOptions) -> Result<Exit, Failure> {
+    if options.rel == 0.0 && options.abs == 0.0 {
+        return Err(Failure::Usage(
+            "--rel 0 together with --abs 0 asks for no error at all, which no integral reaches\n\
+             hint: give one of them, such as --rel 1e-12 or --abs 1e-6"
+                .to_owned(),
+        ));
+    }
     let (model, bindings) = load(&options.sheet, &options.set)?;
     let settings = Settings { relative: options.rel, absolute: options.abs, evaluations: options.evaluations };
     let watch = Watch::new();
@@ -20,27 +32,51 @@ pub(super) fn run(options: &AnswerOptions) -> Result<Exit, Failure> {
         None => compute(),
     }?;
     drop(watch);
+    mark_exact(&model, &bindings, &mut answers);
+    answers.iter_mut().for_each(|answer| explain(answer, &settings));
     if options.kind == KindOption::Proved {
         answers.iter_mut().for_each(without_proof);
     }
+    if answers.is_empty() {
+        output::note("nothing to answer: the sheet has no patch and asks nothing; name a value to see it");
+    }
+    let stamp = Stamp::new(
+        &model.source.text,
+        vec![
+            ("rel", json!(options.rel)),
+            ("abs", json!(options.abs)),
+            ("evaluations", json!(options.evaluations)),
+            ("set", json!(set_text(&model, &bindings, &options.set))),
+        ],
+    );
     if options.json {
-        let warnings: Vec<String> = model.warnings.iter().map(|warning| warning.message.clone()).collect();
-        let settings = format!(
-            "rel={:e} abs={:e} evaluations={} set={}",
-            options.rel,
-            options.abs,
-            options.evaluations,
-            options.set.join(";")
-        );
-        output::print_json(&answers_json(&answers, &warnings, &Stamp::new(&model.source.text, settings)));
+        output::print_json(&answers_json(&answers, &model.source, &model.warnings, &stamp));
     } else {
+        output::print(&set_echo(&model, &bindings, &options.set));
         output::print(&answers_text(&answers));
+        // What is kept or passed on says what it was made from; on a terminal it would be in the way.
+        if !std::io::stdout().is_terminal() && !answers.is_empty() {
+            output::print(&stamp.line());
+        }
+        output::notes(&notes_text(&answers));
     }
     if Watch::interrupted() {
         return Ok(Exit::Interrupted);
     }
     let reached = answers.iter().all(|answer| answer.kind != AnswerKind::Unreached);
     Ok(if reached { Exit::Reached } else { Exit::No })
+}
+
+/// Says so where the tolerance is out of reach for any arithmetic in doubles.
+fn explain(answer: &mut Answer, settings: &Settings) {
+    let largest = answer.components.iter().map(|component| component.value.abs()).fold(0.0, f64::max);
+    let allowed = settings.absolute.max(settings.relative * largest);
+    if let Some(reason) = &mut answer.reason
+        && allowed < FINEST * largest
+    {
+        let numbers = reason.find("; error ").map_or("", |at| &reason[at..]);
+        *reason = format!("the tolerance is below what double precision can give, about 4e-15 of the value{numbers}");
+    }
 }
 
 /// A proof that was asked for and cannot be given; the value and its estimate stay.

@@ -64,14 +64,15 @@ pub struct AnswerOptions {
     pub sheet: PathBuf,
     /// Values and surfaces to answer; a surface stands for its area. Default: every answer of the sheet, or the area of each patch.
     pub names: Vec<String>,
-    /// Give a parameter another value: `D=3`, `D="300 [mm]"`. May be repeated.
+    /// Give a parameter another value: `D=3`, `D="300 [mm]"`. A bare number takes the unit that the sheet wrote. May be
+    /// repeated.
     #[arg(long = "set", value_name = "NAME=VALUE")]
     pub set: Vec<String>,
-    /// Error allowed, relative to the largest component.
-    #[arg(long, default_value = "1e-9", value_parser = tolerance)]
+    /// Error allowed, relative to the largest component. The larger of what --rel and --abs allow counts.
+    #[arg(long, default_value = "1e-9", value_parser = tolerance, allow_hyphen_values = true)]
     pub rel: f64,
     /// Error allowed in the coherent unit, whatever the value.
-    #[arg(long, default_value = "0", value_parser = tolerance)]
+    #[arg(long, default_value = "0", value_parser = tolerance, allow_hyphen_values = true)]
     pub abs: f64,
     /// What the error figure must be. Proofs come in a later version; estimates are conservative.
     #[arg(long, value_enum, default_value = "estimate")]
@@ -121,10 +122,10 @@ pub struct NodesOptions {
     /// The rule behind the weights.
     #[arg(long, value_enum, default_value = "midpoint")]
     pub rule: RuleOption,
-    /// Give a parameter another value. May be repeated.
+    /// Give a parameter another value; a bare number takes the unit that the sheet wrote. May be repeated.
     #[arg(long = "set", value_name = "NAME=VALUE")]
     pub set: Vec<String>,
-    /// File to write, `.npy` or `.csv`; `-` writes comma-separated text to standard output.
+    /// File to write, `.npy` or `.csv` in any case; `-` writes comma-separated text to standard output.
     #[arg(long, short, default_value = "-")]
     pub output: PathBuf,
 }
@@ -148,7 +149,7 @@ pub struct SpeedOptions {
     /// Repeats; the minimum counts.
     #[arg(long, default_value_t = 11)]
     pub repeats: usize,
-    /// Give a parameter another value. May be repeated.
+    /// Give a parameter another value; a bare number takes the unit that the sheet wrote. May be repeated.
     #[arg(long = "set", value_name = "NAME=VALUE")]
     pub set: Vec<String>,
     /// Print one JSON document.

@@ -12,7 +12,7 @@ pub use arguments::{Arguments, Command};
 
 use crate::integrals::IntegralError;
 use crate::language::{Bindings, Model, SheetErrors, Source, check};
-use crate::report::{failure_json, sheet_errors_json};
+use crate::report::{failure_json, set_values_text, sheet_errors_json};
 use clap::{CommandFactory, Parser};
 use std::io::Read;
 use std::path::Path;
@@ -179,6 +179,21 @@ fn load(path: &Path, settings: &[String]) -> Result<(Model, Bindings), Failure> 
     }
     let bindings = model.bind(&pairs)?;
     Ok((model, bindings))
+}
+
+/// The values that `--set` gives, in the units of the sheet.
+fn set_text(model: &Model, bindings: &Bindings, settings: &[String]) -> String {
+    let is_set =
+        |name: &str| settings.iter().any(|setting| setting.split_once('=').is_some_and(|(set, _)| set.trim() == name));
+    set_values_text(model, bindings, &is_set)
+}
+
+/// The line that tells them, so that a bare number is seen with the unit it was taken in; empty without `--set`.
+fn set_echo(model: &Model, bindings: &Bindings, settings: &[String]) -> String {
+    match set_text(model, bindings, settings) {
+        text if text.is_empty() => text,
+        text => format!("with {text}\n"),
+    }
 }
 
 /// The patch a command is about: the one named, or the only one of the sheet.

@@ -1,10 +1,11 @@
 //! `quadrel nodes`
 
 use super::arguments::{NodesOptions, RuleOption};
-use super::{Exit, Failure, choose_patch, load, output};
+use super::{Exit, Failure, choose_patch, load, output, set_text};
 use crate::integrals::{IntegralError, NodesError, SurfaceNodes};
 use crate::quadrature::gauss_legendre;
 use crate::report::{COLUMNS, CsvTable, NpyTable, Stamp, TableFormat, write_whole};
+use serde_json::json;
 use std::io::{self, Write};
 use std::path::Path;
 
@@ -46,16 +47,17 @@ pub(super) fn run(options: &NodesOptions) -> Result<Exit, Failure> {
     let word = if options.rule == RuleOption::Gauss { "gauss" } else { "midpoint" };
     let stamp = Stamp::new(
         &model.source.text,
-        format!(
-            "patch {} grid {first}x{second} rule {word} set {}",
-            model.patches[patch.0].name,
-            options.set.join(";")
-        ),
+        vec![
+            ("patch", json!(model.patches[patch.0].name)),
+            ("grid", json!(format!("{first}x{second}"))),
+            ("rule", json!(word)),
+            ("set", json!(set_text(&model, &bindings, &options.set))),
+        ],
     );
     let names = model.patches[patch.0].variables.map(|variable| model.graph.symbol_name(variable).to_owned());
-    let extension = options.output.extension().and_then(|extension| extension.to_str()).unwrap_or("");
+    let extension = options.output.extension().and_then(|extension| extension.to_str()).unwrap_or("").to_lowercase();
     let to_stdout = options.output == Path::new("-");
-    let format: Box<dyn TableFormat> = match extension {
+    let format: Box<dyn TableFormat> = match extension.as_str() {
         "npy" => Box::new(NpyTable),
         "csv" => Box::new(CsvTable { stamp, variables: names }),
         _ if to_stdout => Box::new(CsvTable { stamp, variables: names }),

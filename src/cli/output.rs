@@ -25,6 +25,11 @@ pub(super) fn note(text: &str) {
     message(text);
 }
 
+/// Several such lines, each with its end.
+pub(super) fn notes(lines: &str) {
+    let _ = write!(anstream::stderr().lock(), "{lines}");
+}
+
 /// Writes to standard error; colors are taken out where it is no terminal or NO_COLOR is set.
 fn message(text: &str) {
     let _ = writeln!(anstream::stderr().lock(), "{text}");

@@ -5,6 +5,8 @@ use crate::language::{Dimension, Unit};
 /// How an answer was got.
 #[derive(Clone, Copy, PartialEq, Eq, Debug)]
 pub enum AnswerKind {
+    /// It rests on no integral, and the decimal shown is the number itself.
+    Exact,
     /// A rigorous enclosure: the truth lies in [value - error, value + error].
     Proved,
     /// A conservative error estimate within the tolerance.
@@ -17,6 +19,7 @@ impl AnswerKind {
     /// The word in reports and JSON.
     pub fn word(self) -> &'static str {
         match self {
+            AnswerKind::Exact => "exact",
             AnswerKind::Proved => "proved",
             AnswerKind::Estimate => "estimate",
             AnswerKind::Unreached => "unreached",
@@ -61,6 +64,18 @@ pub struct Principal {
     pub error: f64,
     /// Axes, right-handed.
     pub axes: [[f64; 3]; 3],
+}
+
+impl Principal {
+    /// Bound on the sine of the angle by which an axis is off (C. Davis and W. M. Kahan, 1970, SIAM J. Numer. Anal. 7,
+    /// 1); `None` where another moment is equal within the errors, because then any axis across the others will do.
+    pub fn axis_error(&self, index: usize) -> Option<f64> {
+        let gap = (0..3)
+            .filter(|&other| other != index)
+            .map(|other| (self.moments[other] - self.moments[index]).abs())
+            .fold(f64::INFINITY, f64::min);
+        (gap > 2.0 * self.error).then(|| self.error / (gap - self.error))
+    }
 }
 
 /// One answered question.

@@ -3,8 +3,8 @@
 use super::stamp::Stamp;
 use std::io::{self, Write};
 
-/// Columns of a table of nodes.
-pub const COLUMNS: [&str; 10] = ["u", "v", "x", "y", "z", "nx", "ny", "nz", "dA", "weight"];
+/// Columns of a table of nodes; the first two are the variables of the patch in the order of its arguments.
+pub const COLUMNS: [&str; 10] = ["param_1", "param_2", "x", "y", "z", "nx", "ny", "nz", "dA", "weight_dA"];
 
 /// Writes rows of a table.
 pub trait TableFormat {
@@ -25,7 +25,7 @@ pub trait TableFormat {
 pub struct CsvTable {
     /// The stamp.
     pub stamp: Stamp,
-    /// Names of the two variables of the patch, in place of `u` and `v`.
+    /// Names of the two variables of the patch, which become the columns `param_NAME`: a variable may be called `z` like a coordinate.
     pub variables: [String; 2],
 }
 
@@ -33,9 +33,9 @@ impl TableFormat for CsvTable {
     fn header(&self, out: &mut dyn Write, _rows: usize) -> io::Result<()> {
         writeln!(out, "# quadrel {}", self.stamp.version)?;
         writeln!(out, "# sheet sha256 {}", self.stamp.sheet_hash)?;
-        writeln!(out, "# {}", self.stamp.settings)?;
-        let names = [self.variables[0].as_str(), self.variables[1].as_str()];
-        writeln!(out, "{},{}", names.join(","), COLUMNS[2..].join(","))
+        writeln!(out, "# {}", self.stamp.settings_text())?;
+        let [first, second] = &self.variables;
+        writeln!(out, "param_{first},param_{second},{}", COLUMNS[2..].join(","))
     }
 
     fn row(&self, out: &mut dyn Write, row: &[f64; COLUMNS.len()]) -> io::Result<()> {
