@@ -352,7 +352,14 @@ fn the_same_bits_for_any_number_of_threads() {
 #[test]
 fn completions_and_manual_are_generated() {
     assert!(text(&run(&["completions", "bash"], None).stdout).contains("quadrel"));
-    assert!(text(&run(&["manual"], None).stdout).contains(".TH quadrel"));
+    let page = text(&run(&["manual"], None).stdout);
+    assert!(page.contains(".TH quadrel"));
+    // Hyphens are escaped in a manual page.
+    for part in
+        ["quadrel answer", "\\-\\-evaluations", "quadrel nodes", "\\-\\-grid", "EXIT CODES", "THE SHEET", "ERROR MEANS"]
+    {
+        assert!(page.contains(part), "{part}");
+    }
 }
 
 #[test]

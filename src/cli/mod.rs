@@ -99,9 +99,25 @@ pub fn main() -> Exit {
     }
 }
 
+/// The manual page: the program, each command with its options as the parser has them, and the text of `manual.roff`.
 fn manual() -> Result<Exit, Failure> {
+    let mut program = Arguments::command();
+    program.build();
+    let man = clap_mangen::Man::new(program.clone());
     let mut page = Vec::new();
-    clap_mangen::Man::new(Arguments::command()).render(&mut page)?;
+    man.render_title(&mut page)?;
+    man.render_name_section(&mut page)?;
+    man.render_synopsis_section(&mut page)?;
+    man.render_description_section(&mut page)?;
+    page.extend_from_slice(b".SH COMMANDS\n");
+    for command in program.get_subcommands().filter(|command| command.get_name() != "help") {
+        let about = command.get_about().map(ToString::to_string).unwrap_or_default();
+        page.extend_from_slice(format!(".SS \"quadrel {}\"\n{about}.\n", command.get_name()).as_bytes());
+        let mut options = Vec::new();
+        clap_mangen::Man::new(command.clone()).render_options_section(&mut options)?;
+        page.extend_from_slice(String::from_utf8_lossy(&options).replace(".SH OPTIONS\n", "").as_bytes());
+    }
+    page.extend_from_slice(include_bytes!("manual.roff"));
     output::print(&String::from_utf8_lossy(&page));
     Ok(Exit::Reached)
 }
