@@ -193,6 +193,35 @@ fn csv_carries_its_stamp() {
 }
 
 #[test]
+fn a_chain_is_one_table() {
+    // Two walls of a box and its floor, the floor turned round: areas 2*3, 2*3 and 2*2, by hand.
+    let sheet = "w(u, v) = (u, 0, v) on u in [0, 2], v in [0, 3]\nf(p, q) = (p, q, 0) on p in [0, 2], q in [0, 2]\n\
+                 c = w + translate(w, (0, 2, 0)) - f\n";
+    let table = text(&run(&["nodes", "-", "c", "--grid", "2x2"], Some(sheet)).stdout);
+    let mut rows = table.lines().filter(|line| !line.starts_with('#'));
+    assert_eq!(rows.next().unwrap(), "patch,param_1,param_2,x,y,z,nx,ny,nz,dA,weight_dA");
+    let mut sums: Vec<(String, f64)> = Vec::new();
+    for row in rows {
+        let (patch, numbers) = row[1..].split_once("\",").unwrap();
+        let weight: f64 = numbers.rsplit(',').next().unwrap().parse().unwrap();
+        match sums.iter_mut().find(|(name, _)| name == patch) {
+            Some((_, sum)) => *sum += weight,
+            None => sums.push((patch.to_owned(), weight)),
+        }
+    }
+    let weights: Vec<f64> = sums.iter().map(|(_, sum)| *sum).collect();
+    assert_eq!(weights, [6.0, 6.0, -4.0], "{table}");
+    assert_eq!((sums[0].0.as_str(), sums[2].0.as_str()), ("w", "f"));
+    let folder = tempfile::tempdir().unwrap();
+    let path = folder.path().join("c.npy");
+    assert_eq!(code(&run(&["nodes", "-", "c", "--grid", "2x2", "-o", path.to_str().unwrap()], Some(sheet))), 0);
+    let (header, data) = read_npy(&path);
+    assert!(header.contains("'shape': (12, 11)"), "{header}");
+    let patches: Vec<f64> = data.chunks_exact(11).map(|row| row[0]).collect();
+    assert_eq!(patches, [0.0, 0.0, 0.0, 0.0, 1.0, 1.0, 1.0, 1.0, 2.0, 2.0, 2.0, 2.0]);
+}
+
+#[test]
 fn capitals_name_a_table_too() {
     let folder = tempfile::tempdir().unwrap();
     for (name, magic) in [("T.NPY", &b"\x93NUMPY"[..]), ("T.Csv", b"# quadr")] {

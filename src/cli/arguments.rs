@@ -114,7 +114,7 @@ pub enum RuleOption {
 pub struct NodesOptions {
     /// The sheet; `-` reads standard input.
     pub sheet: PathBuf,
-    /// The patch; may be left out where there is one.
+    /// The patch, or a named chain, whose coefficients multiply the weights; may be left out where there is one patch.
     pub patch: Option<String>,
     /// Nodes along the first and the second variable.
     #[arg(long, default_value = "50x50", value_parser = grid)]
