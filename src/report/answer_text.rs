@@ -1,6 +1,6 @@
 //! Answers as lines of text.
 
-use super::number::{in_shown_unit, shown_components, unit_text, value_with_error, without_sign_of_zero};
+use super::number::{exact_number, in_shown_unit, shown_components, unit_text, value_with_error, without_sign_of_zero};
 use crate::integrals::{Answer, AnswerKind, Component, Principal, fifteen_digits};
 use crate::language::{Bindings, Model};
 use std::fmt::Write;
@@ -17,7 +17,7 @@ pub fn answers_text(answers: &[Answer]) -> String {
         };
         let shown = shown_components(answer);
         let number = |(value, error)| match answer.kind {
-            AnswerKind::Exact => format!("{value}"),
+            AnswerKind::Exact => exact_number(value),
             _ => value_with_error(value, error),
         };
         // Writing to a string cannot fail.
@@ -50,7 +50,7 @@ pub fn set_values_text(model: &Model, bindings: &Bindings, is_set: &dyn Fn(&str)
     let set = model.parameters.iter().filter(|parameter| is_set(&parameter.name));
     let shown = set.map(|parameter| {
         let value = bindings.value(parameter.symbol);
-        let in_unit = fifteen_digits(parameter.unit.as_ref().map_or(value, |unit| unit.from_si(value)));
+        let in_unit = exact_number(fifteen_digits(parameter.unit.as_ref().map_or(value, |unit| unit.from_si(value))));
         match (&parameter.unit, parameter.dimension.is_none()) {
             (Some(unit), _) => format!("{} = {in_unit} {}", parameter.name, unit.text),
             (None, true) => format!("{} = {in_unit}", parameter.name),

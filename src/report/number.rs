@@ -67,6 +67,12 @@ pub fn value_with_error(value: f64, error: f64) -> String {
     }
 }
 
+/// A number that is known as it prints: `60`, `0.24`, `1e-20`.
+pub(super) fn exact_number(value: f64) -> String {
+    let plain = value == 0.0 || (1e-6..1e15).contains(&value.abs());
+    if plain { without_sign_of_zero(format!("{value}")) } else { format!("{value:e}") }
+}
+
 /// A number that rounds to zero has no sign.
 pub(super) fn without_sign_of_zero(number: String) -> String {
     match number.strip_prefix('-') {
@@ -78,6 +84,12 @@ pub(super) fn without_sign_of_zero(number: String) -> String {
 #[cfg(test)]
 mod tests {
     use super::*;
+
+    #[test]
+    fn exact_numbers_are_short() {
+        let shown: Vec<String> = [60.0, -0.24, -0.0, 1e-20, 3e300].into_iter().map(exact_number).collect();
+        assert_eq!(shown, ["60", "-0.24", "0", "1e-20", "3e300"]);
+    }
 
     #[test]
     fn digits_follow_the_error() {
