@@ -41,7 +41,7 @@ fn answers_go_to_standard_output() {
     let output = run(&["answer", HEAD], None);
     assert_eq!(code(&output), 0, "{}", text(&output.stderr));
     assert!(text(&output.stdout).starts_with("lining = 5.7023257"), "{}", text(&output.stdout));
-    assert_eq!(text(&output.stderr), "");
+    assert!(text(&output.stderr).lines().all(|line| line.starts_with("note: ")), "{}", text(&output.stderr));
 }
 
 #[test]
@@ -50,7 +50,7 @@ fn a_sheet_may_come_from_standard_input() {
     assert_eq!(code(&output), 0);
     assert!(text(&output.stdout).starts_with("area(s) = 50.26548245"), "{}", text(&output.stdout));
     let output = run(&["answer", "-", "--set", "r=1", "s"], Some(SPHERE));
-    assert!(text(&output.stdout).starts_with("area(s) = 12.5663706"), "{}", text(&output.stdout));
+    assert!(text(&output.stdout).starts_with("with r = 1\narea(s) = 12.5663706"), "{}", text(&output.stdout));
 }
 
 #[test]
@@ -188,8 +188,172 @@ fn csv_carries_its_stamp() {
     let table = text(&output.stdout);
     let lines: Vec<&str> = table.lines().collect();
     assert!(lines[0].starts_with("# quadrel ") && lines[1].starts_with("# sheet sha256 "), "{table}");
-    assert_eq!(lines[3], "v,u,x,y,z,nx,ny,nz,dA,weight");
+    assert_eq!(lines[3], "param_v,param_u,x,y,z,nx,ny,nz,dA,weight_dA");
     assert_eq!(lines.len(), 8);
+}
+
+#[test]
+fn a_chain_is_one_table() {
+    // Two walls of a box and its floor, the floor turned round: areas 2*3, 2*3 and 2*2, by hand.
+    let sheet = "w(u, v) = (u, 0, v) on u in [0, 2], v in [0, 3]\nf(p, q) = (p, q, 0) on p in [0, 2], q in [0, 2]\n\
+                 c = w + translate(w, (0, 2, 0)) - f\n";
+    let table = text(&run(&["nodes", "-", "c", "--grid", "2x2"], Some(sheet)).stdout);
+    let mut rows = table.lines().filter(|line| !line.starts_with('#'));
+    assert_eq!(rows.next().unwrap(), "patch,param_1,param_2,x,y,z,nx,ny,nz,dA,weight_dA");
+    let mut sums: Vec<(String, f64)> = Vec::new();
+    for row in rows {
+        let (patch, numbers) = row[1..].split_once("\",").unwrap();
+        let weight: f64 = numbers.rsplit(',').next().unwrap().parse().unwrap();
+        match sums.iter_mut().find(|(name, _)| name == patch) {
+            Some((_, sum)) => *sum += weight,
+            None => sums.push((patch.to_owned(), weight)),
+        }
+    }
+    let weights: Vec<f64> = sums.iter().map(|(_, sum)| *sum).collect();
+    assert_eq!(weights, [6.0, 6.0, -4.0], "{table}");
+    assert_eq!((sums[0].0.as_str(), sums[2].0.as_str()), ("w", "f"));
+    let folder = tempfile::tempdir().unwrap();
+    let path = folder.path().join("c.npy");
+    assert_eq!(code(&run(&["nodes", "-", "c", "--grid", "2x2", "-o", path.to_str().unwrap()], Some(sheet))), 0);
+    let (header, data) = read_npy(&path);
+    assert!(header.contains("'shape': (12, 11)"), "{header}");
+    let patches: Vec<f64> = data.chunks_exact(11).map(|row| row[0]).collect();
+    assert_eq!(patches, [0.0, 0.0, 0.0, 0.0, 1.0, 1.0, 1.0, 1.0, 2.0, 2.0, 2.0, 2.0]);
+}
+
+#[test]
+fn capitals_name_a_table_too() {
+    let folder = tempfile::tempdir().unwrap();
+    for (name, magic) in [("T.NPY", &b"\x93NUMPY"[..]), ("T.Csv", b"# quadr")] {
+        let path = folder.path().join(name);
+        let output = run(&["nodes", "-", "--grid", "2x2", "-o", path.to_str().unwrap()], Some(SPHERE));
+        assert_eq!(code(&output), 0, "{}", text(&output.stderr));
+        assert!(std::fs::read(&path).unwrap().starts_with(magic), "{name}");
+    }
+}
+
+#[test]
+fn set_values_are_told_with_the_unit_they_were_taken_in() {
+    let sheet = "d = 200 [mm]\ns(u, v) = (d*u, d*v, 0) on u in [0, 1], v in [0, 1]";
+    let shown = |value: &str| text(&run(&["answer", "-", "--set", value], Some(sheet)).stdout);
+    assert!(shown("d=0.2").starts_with("with d = 0.2 mm\n"), "{}", shown("d=0.2"));
+    assert!(shown("d=0.2 [m]").starts_with("with d = 200 mm\n"), "{}", shown("d=0.2 [m]"));
+    assert!(!text(&run(&["answer", "-"], Some(sheet)).stdout).contains("with "));
+    let output = run(&["answer", "-", "--json", "--set", "d=0.2"], Some(sheet));
+    assert_eq!(document(&output)["stamp"]["settings"]["set"], "d = 0.2 mm");
+}
+
+#[test]
+fn unreached_tolerances_are_told_in_the_unit_of_the_answer() {
+    let sheet = format!("{}F = flux((0, 0, z*1 [kPa/m]), s) as [kN]\n", SPHERE.replace("r = 2", "r = 2 [m]"));
+    let output = run(&["answer", "-", "F", "--rel", "1e-15"], Some(&sheet));
+    assert_eq!(code(&output), 1);
+    let shown = text(&output.stdout);
+    // The flux is 1 kPa/m times the volume 4/3 pi r^3, 33.51 kN: a relative 1e-15 of it is 3.35e-14 kN.
+    assert!(shown.contains(" kN, allowed 3.35e-14 kN"), "{shown}");
+    assert!(shown.contains("below what double precision can give"), "{shown}");
+    let reason =
+        document(&run(&["answer", "-", "F", "--rel", "1e-15", "--json"], Some(&sheet)))["answers"][0]["reason"]
+            .to_string();
+    assert!(reason.contains("allowed 3.35e-14 kN"), "{reason}");
+}
+
+#[test]
+fn impossible_tolerances_are_refused() {
+    let output = run(&["answer", "-", "--rel", "0"], Some(SPHERE));
+    assert_eq!(code(&output), 2);
+    assert!(text(&output.stderr).contains("--rel 0 together with --abs 0"));
+    assert_eq!(code(&run(&["answer", "-", "--rel", "0", "--abs", "1e-6"], Some(SPHERE))), 0);
+    for option in ["--rel", "--abs"] {
+        let output = run(&["answer", "-", option, "-1"], Some(SPHERE));
+        assert_eq!(code(&output), 2);
+        let message = text(&output.stderr);
+        assert!(message.contains("a tolerance is a number of at least 0") && !message.contains("-- -1"), "{message}");
+    }
+}
+
+#[test]
+fn text_that_is_passed_on_can_be_cited() {
+    let output =
+        run(&["answer", "-", "--set", "r=1"], Some("r = 2\ns(u, v) = (r*u, v, 0) on u in [0, 1], v in [0, 1]"));
+    let shown = text(&output.stdout);
+    let last = shown.lines().last().unwrap();
+    // sha256sum of that text.
+    assert!(last.starts_with("# quadrel ") && last.contains("sheet SHA-256 396978f6ae04"), "{last}");
+    assert!(last.ends_with("rel 1e-9, abs 0, set r = 1"), "{last}");
+}
+
+#[test]
+fn what_the_sheet_gives_is_exact_and_says_so() {
+    let sheet =
+        "alpha = 60 [deg]\nD = 2.4 [m]\nk = 0.1*D\nw = -3e-3 [kN]\nt = 1/3\nq = pi\nc = 2*k as [mm]\nv = (D, k, 0)\n";
+    let names = ["alpha", "D", "k", "w", "t", "q", "c", "v"];
+    let arguments = |more: &[&'static str]| [&["answer", "-"], &names[..], more].concat();
+    let shown = text(&run(&arguments(&[]), Some(sheet)).stdout);
+    for line in ["alpha = 60 deg  [exact]", "D = 2.4 m  [exact]", "k = 0.24 m  [exact]", "w = -0.003 kN  [exact]"] {
+        assert!(shown.lines().any(|shown| shown == line), "{line}: {shown}");
+    }
+    assert!(shown.contains("c = 480 mm  [exact]") && shown.contains("  .y  = 0.24 m\n"), "{shown}");
+    // Neither 1/3 nor pi is a short decimal: they keep the error of their rounding.
+    for name in ["t = 0.33333", "q = 3.14159"] {
+        let line = shown.lines().find(|line| line.starts_with(name)).unwrap();
+        assert!(line.contains(" ± ") && line.contains("[estimate, "), "{line}");
+    }
+    let document = document(&run(&arguments(&["--json"]), Some(sheet)));
+    let kinds: Vec<&str> =
+        document["answers"].as_array().unwrap().iter().map(|answer| answer["kind"].as_str().unwrap()).collect();
+    assert_eq!(kinds, ["exact", "exact", "exact", "exact", "estimate", "estimate", "exact", "exact"]);
+    assert_eq!(document["answers"][0]["value"], 60.0);
+    assert_eq!(document["answers"][0]["error"], 0.0);
+    assert!(document["answers"][0]["seconds"].as_f64().unwrap().is_sign_positive(), "no minus before zero");
+    let shown = text(&run(&["answer", "-", "alpha", "k", "--set", "alpha=50", "--set", "D=3"], Some(sheet)).stdout);
+    assert!(shown.contains("alpha = 50 deg  [exact]") && shown.contains("k = 0.3 m  [exact]"), "{shown}");
+}
+
+#[test]
+fn axes_of_equal_moments_are_not_invented() {
+    // A sphere has three equal moments, a spheroid two; the axis of the spheroid is that of its rotation.
+    let sheet = "b = 3\ns(v, u) = (b*sin(v)*cos(u), b*sin(v)*sin(u), 2*b*cos(v)) on v in [0, pi], u in [0, 2*pi]\n\
+                 i = inertia(s)\n";
+    let shown = text(&run(&["answer", "-"], Some(sheet)).stdout);
+    assert!(!shown.contains("-0.000000"), "{shown}");
+    // An axis has no sense of direction.
+    let shown = shown.replace("-1.000000)", "1.000000)");
+    assert_eq!(shown.matches("axis (0.000000, 0.000000, 1.000000)").count(), 1, "{shown}");
+    assert_eq!(shown.matches("axis: any across the other (two equal moments)").count(), 2, "{shown}");
+    let axes = document(&run(&["answer", "-", "--json"], Some(sheet)))["answers"][0]["principal_axes"].clone();
+    assert!(axes[0].is_array() && axes[1].is_null() && axes[2].is_null(), "{axes}");
+    let shown = text(&run(&["answer", "-"], Some(&sheet.replace("2*b*cos", "b*cos"))).stdout);
+    assert!(shown.contains("  axes: any (equal moments)\n") && !shown.contains("axis ("), "{shown}");
+}
+
+#[test]
+fn json_tells_warnings_with_their_place() {
+    let sheet = "s(u, v) = (u, v, 0) on u in [0, 1], v in [0, 1]\na = area(-s)\n";
+    let document = document(&run(&["answer", "-", "--json"], Some(sheet)));
+    assert_eq!(document["warnings"][0]["line"], 2, "{document}");
+    assert!(document["warnings"][0]["message"].is_string() && document["warnings"][0]["column"].is_number());
+    assert!(document["warnings"][0].get("hint").is_some());
+    assert!(document["answers"][0].get("components").is_none(), "a number has no components");
+    assert_eq!(document["stamp"]["settings"]["rel"], 1e-9);
+}
+
+#[test]
+fn notes_go_to_standard_error() {
+    let sheet = format!("{SPHERE}f = flux((0, 0, 1), s)\n");
+    let output = run(&["answer", "-", "f"], Some(&sheet));
+    assert!(text(&output.stderr).starts_with("note: f: "), "{}", text(&output.stderr));
+    assert!(!text(&output.stdout).contains("note"), "{}", text(&output.stdout));
+}
+
+#[test]
+fn nothing_to_answer_is_said() {
+    for sheet in ["", "a = 3\n"] {
+        let output = run(&["answer", "-"], Some(sheet));
+        assert_eq!(code(&output), 0);
+        assert!(text(&output.stderr).starts_with("nothing to answer: "), "{}", text(&output.stderr));
+        assert_eq!(text(&output.stdout), "");
+    }
 }
 
 #[test]
@@ -217,7 +381,14 @@ fn the_same_bits_for_any_number_of_threads() {
 #[test]
 fn completions_and_manual_are_generated() {
     assert!(text(&run(&["completions", "bash"], None).stdout).contains("quadrel"));
-    assert!(text(&run(&["manual"], None).stdout).contains(".TH quadrel"));
+    let page = text(&run(&["manual"], None).stdout);
+    assert!(page.contains(".TH quadrel"));
+    // Hyphens are escaped in a manual page.
+    for part in
+        ["quadrel answer", "\\-\\-evaluations", "quadrel nodes", "\\-\\-grid", "EXIT CODES", "THE SHEET", "ERROR MEANS"]
+    {
+        assert!(page.contains(part), "{part}");
+    }
 }
 
 #[test]

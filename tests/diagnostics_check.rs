@@ -131,7 +131,12 @@ fn questions() {
 
 #[test]
 fn values() {
-    insta::assert_snapshot!(all(&["a = 12 [mm] in (0, 10]", "a = 2\nb = 3*a in [0, 5]", "a = 2\nassume a > 3",]));
+    insta::assert_snapshot!(all(&[
+        "a = 12 [mm] in (0, 10]",
+        "a = 2\nb = 3*a in [0, 5]",
+        "D = 2.4 [m]\nk = 0.75*D in (0, 1 [m]]",
+        "a = 2\nassume a > 3",
+    ]));
     let model = check(Source::new("test.sheet", "D = 2.4 [m] in (0, 10]\nk = D/10")).unwrap();
     let set = |name: &str, text: &str| drawn(&model.bind(&[(name.to_owned(), text.to_owned())]).unwrap_err());
     insta::assert_snapshot!(

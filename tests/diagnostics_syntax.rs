@@ -126,6 +126,10 @@ fn clauses() {
             "b = f(x = 3)",
             "b = a assume c > 0",
             "where x > 0",
+            "b = area(s where z > 0.3 [m])",
+            "b = integral(z, s on u in [0, 1], v in [0, 1])",
+            "p(u, v) = (u, v, 0) for u in [0, 1], v in [0, 1]",
+            "p(u, v) = (u, v, 0)\n  for u in [0, 1], v in [0, 1]",
         ],
     );
 }

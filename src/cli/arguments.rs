@@ -64,14 +64,15 @@ pub struct AnswerOptions {
     pub sheet: PathBuf,
     /// Values and surfaces to answer; a surface stands for its area. Default: every answer of the sheet, or the area of each patch.
     pub names: Vec<String>,
-    /// Give a parameter another value: `D=3`, `D="300 [mm]"`. May be repeated.
+    /// Give a parameter another value: `D=3`, `D="300 [mm]"`. A bare number takes the unit that the sheet wrote. May be
+    /// repeated.
     #[arg(long = "set", value_name = "NAME=VALUE")]
     pub set: Vec<String>,
-    /// Error allowed, relative to the largest component.
-    #[arg(long, default_value = "1e-9", value_parser = tolerance)]
+    /// Error allowed, relative to the largest component. The larger of what --rel and --abs allow counts.
+    #[arg(long, default_value = "1e-9", value_parser = tolerance, allow_hyphen_values = true)]
     pub rel: f64,
     /// Error allowed in the coherent unit, whatever the value.
-    #[arg(long, default_value = "0", value_parser = tolerance)]
+    #[arg(long, default_value = "0", value_parser = tolerance, allow_hyphen_values = true)]
     pub abs: f64,
     /// What the error figure must be. Proofs come in a later version; estimates are conservative.
     #[arg(long, value_enum, default_value = "estimate")]
@@ -142,7 +143,7 @@ pub enum RuleOption {
 pub struct NodesOptions {
     /// The sheet; `-` reads standard input.
     pub sheet: PathBuf,
-    /// The patch; may be left out where there is one.
+    /// The patch, or a named chain, whose coefficients multiply the weights; may be left out where there is one patch.
     pub patch: Option<String>,
     /// Nodes along the first and the second variable.
     #[arg(long, default_value = "50x50", value_parser = grid)]
@@ -150,10 +151,10 @@ pub struct NodesOptions {
     /// The rule behind the weights.
     #[arg(long, value_enum, default_value = "midpoint")]
     pub rule: RuleOption,
-    /// Give a parameter another value. May be repeated.
+    /// Give a parameter another value; a bare number takes the unit that the sheet wrote. May be repeated.
     #[arg(long = "set", value_name = "NAME=VALUE")]
     pub set: Vec<String>,
-    /// File to write, `.npy` or `.csv`; `-` writes comma-separated text to standard output.
+    /// File to write, `.npy` or `.csv` in any case; `-` writes comma-separated text to standard output.
     #[arg(long, short, default_value = "-")]
     pub output: PathBuf,
 }
@@ -180,7 +181,7 @@ pub struct SpeedOptions {
     /// Evaluate the closed form of dA where it is accurate (on), or the norm of the cross product (off).
     #[arg(long, value_enum, default_value_t = SimplifyOption::On)]
     pub simplify: SimplifyOption,
-    /// Give a parameter another value. May be repeated.
+    /// Give a parameter another value; a bare number takes the unit that the sheet wrote. May be repeated.
     #[arg(long = "set", value_name = "NAME=VALUE")]
     pub set: Vec<String>,
     /// Print one JSON document.

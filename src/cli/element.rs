@@ -10,7 +10,7 @@ pub(super) fn run(options: &ElementOptions) -> Result<Exit, Failure> {
     let patch = choose_patch(&model, options.patch.as_deref())?;
     let report = ElementReport::new(&model, &bindings, patch);
     let format = if options.json { ElementFormat::Json } else { options.format };
-    let stamp = Stamp::new(&model.source.text, String::new());
+    let stamp = Stamp::new(&model.source.text, Vec::new());
     let source = |language: Language| {
         report.source(language, &stamp).map_err(|error| Failure::Usage(format!("--as {}: {error}", language.name())))
     };

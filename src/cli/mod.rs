@@ -12,7 +12,7 @@ pub use arguments::{Arguments, Command};
 
 use crate::integrals::IntegralError;
 use crate::language::{Bindings, Model, SheetErrors, Source, check};
-use crate::report::{failure_json, sheet_errors_json};
+use crate::report::{failure_json, set_values_text, sheet_errors_json};
 use clap::{CommandFactory, Parser};
 use std::io::Read;
 use std::path::Path;
@@ -106,9 +106,25 @@ pub fn main() -> Exit {
     }
 }
 
+/// The manual page: the program, each command with its options as the parser has them, and the text of `manual.roff`.
 fn manual() -> Result<Exit, Failure> {
+    let mut program = Arguments::command();
+    program.build();
+    let man = clap_mangen::Man::new(program.clone());
     let mut page = Vec::new();
-    clap_mangen::Man::new(Arguments::command()).render(&mut page)?;
+    man.render_title(&mut page)?;
+    man.render_name_section(&mut page)?;
+    man.render_synopsis_section(&mut page)?;
+    man.render_description_section(&mut page)?;
+    page.extend_from_slice(b".SH COMMANDS\n");
+    for command in program.get_subcommands().filter(|command| command.get_name() != "help") {
+        let about = command.get_about().map(ToString::to_string).unwrap_or_default();
+        page.extend_from_slice(format!(".SS \"quadrel {}\"\n{about}.\n", command.get_name()).as_bytes());
+        let mut options = Vec::new();
+        clap_mangen::Man::new(command.clone()).render_options_section(&mut options)?;
+        page.extend_from_slice(String::from_utf8_lossy(&options).replace(".SH OPTIONS\n", "").as_bytes());
+    }
+    page.extend_from_slice(include_bytes!("manual.roff"));
     output::print(&String::from_utf8_lossy(&page));
     Ok(Exit::Reached)
 }
@@ -127,10 +143,7 @@ fn report(failure: &Failure, json: bool) -> Exit {
         }
         Failure::Numerical(error) => {
             output::problem(&error.message);
-            if let Some(place) = &error.place {
-                let [x, y, z] = place.position;
-                output::note(&format!("at the position ({x}, {y}, {z})"));
-            }
+            output::place(error);
             if let Some(hint) = &error.hint {
                 output::note(&format!("hint: {hint}"));
             }
@@ -185,6 +198,21 @@ fn load(path: &Path, settings: &[String]) -> Result<(Model, Bindings), Failure> 
     }
     let bindings = model.bind(&pairs)?;
     Ok((model, bindings))
+}
+
+/// The values that `--set` gives, in the units of the sheet.
+fn set_text(model: &Model, bindings: &Bindings, settings: &[String]) -> String {
+    let is_set =
+        |name: &str| settings.iter().any(|setting| setting.split_once('=').is_some_and(|(set, _)| set.trim() == name));
+    set_values_text(model, bindings, &is_set)
+}
+
+/// The line that tells them, so that a bare number is seen with the unit it was taken in; empty without `--set`.
+fn set_echo(model: &Model, bindings: &Bindings, settings: &[String]) -> String {
+    match set_text(model, bindings, settings) {
+        text if text.is_empty() => text,
+        text => format!("with {text}\n"),
+    }
 }
 
 /// The patch a command is about: the one named, or the only one of the sheet.

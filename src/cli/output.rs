@@ -1,5 +1,6 @@
 //! Where text goes: results to standard output, messages to standard error, color only where a terminal shows it.
 
+use crate::integrals::IntegralError;
 use crate::language::{Diagnostic, Part, Severity, Source};
 use std::io::Write;
 
@@ -20,9 +21,22 @@ pub(super) fn problem(text: &str) {
     message(&format!("\x1b[1;31merror\x1b[0m: {text}"));
 }
 
+/// Where in space a number could not be had.
+pub(super) fn place(error: &IntegralError) {
+    if let Some(place) = &error.place {
+        let [x, y, z] = place.position;
+        note(&format!("at the position ({x}, {y}, {z})"));
+    }
+}
+
 /// A line of explanation.
 pub(super) fn note(text: &str) {
     message(text);
+}
+
+/// Several such lines, each with its end.
+pub(super) fn notes(lines: &str) {
+    let _ = write!(anstream::stderr().lock(), "{lines}");
 }
 
 /// Writes to standard error; colors are taken out where it is no terminal or NO_COLOR is set.

@@ -1,7 +1,7 @@
 //! `quadrel speed`
 
 use super::arguments::{SimplifyOption, SpeedOptions};
-use super::{Exit, Failure, choose_patch, load, output};
+use super::{Exit, Failure, choose_patch, load, output, set_echo};
 use crate::integrals::SpeedRun;
 use serde_json::json;
 
@@ -54,6 +54,7 @@ pub(super) fn run(options: &SpeedOptions) -> Result<Exit, Failure> {
             "repeats": options.repeats,
         }));
     } else {
+        output::print(&set_echo(&model, &bindings, &options.set));
         output::print(&format!(
             "patch {}, {}: {} instructions of which {} depend on both variables, {}, compiled in {:.0} us\n\
              sum of dA on a {first}x{second} grid: {:.3} ns per point (median {:.3}), sum {}\n\

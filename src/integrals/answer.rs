@@ -2,6 +2,7 @@
 
 use super::bounded::Bounded;
 use super::error::{IntegralError, Progress};
+use super::exact::mark_exact;
 use super::outcome::{Answer, AnswerFailure, AnswerKind, Component, Principal, Settings};
 use super::rounding::{evaluate_bounded, evaluate_with_errors};
 use super::run::{FunctionalOutcome, NEGLIGIBLE, Outcome, RUN_WORK, Run};
@@ -15,6 +16,9 @@ use crate::simplify::exact_area;
 use nalgebra::Matrix3;
 use rustc_hash::FxHashMap;
 use std::cell::Cell;
+
+/// What a sum of doubles can be had to, relative to the value.
+const FINEST: f64 = 16.0 * f64::EPSILON;
 
 /// What is to be answered.
 struct Target {
@@ -95,8 +99,9 @@ pub fn answer_each(
         let stuck = outcomes.values().any(|outcome| outcome.limit.is_some());
         if !short || stuck || attempt == 2 {
             for (answer, target) in answers.iter_mut().zip(&targets) {
-                answer.exact = exact(answer, target, &run);
+                answer.closed_form = closed_form(answer, target, &run);
             }
+            mark_exact(model, bindings, &mut answers);
             return Ok(answers);
         }
         relative *= 0.03;
@@ -106,7 +111,7 @@ pub fn answer_each(
 
 /// The exact formula of an answer that is the area of one patch. A formula whose value the number does not enclose is not
 /// shown.
-fn exact(answer: &Answer, target: &Target, run: &Run<'_>) -> Option<String> {
+fn closed_form(answer: &Answer, target: &Target, run: &Run<'_>) -> Option<String> {
     let ([component], [functional]) = (&target.components[..], &target.depends_on[..]) else { return None };
     let functional = &run.functionals[functional.0];
     let ([(1 | -1, patch)], FunctionalKind::Area) = (&functional.chain.terms[..], &functional.kind) else {
@@ -250,11 +255,12 @@ fn assemble(target: &Target, run: &mut Run<'_>, outcomes: &FxHashMap<FunctionalI
     let failure = failure(target, &components, &behind, run, outcomes);
     let reason = match &failure {
         Some(failure) => Some(failure.error.message.clone()),
-        None => (!reached).then(|| doubt.unwrap_or_else(|| reason(finite, limit, worst, allowed))),
+        None => (!reached).then(|| doubt.unwrap_or_else(|| reason(finite, limit, allowed < FINEST * largest))),
     };
     Answer {
         name: target.name.clone(),
-        exact: None,
+        closed_form: None,
+        allowed: (!reached && finite && failure.is_none()).then_some(allowed),
         principal: (combined.len() == 6).then(|| principal(&components)).flatten(),
         kind: if reached { AnswerKind::Estimate } else { AnswerKind::Unreached },
         reason,
@@ -294,7 +300,7 @@ fn failure(
     Some(Box::new(AnswerFailure { error, span: target.span, line, column }))
 }
 
-fn reason(finite: bool, limit: Option<Limit>, worst: f64, allowed: f64) -> String {
+fn reason(finite: bool, limit: Option<Limit>, too_fine: bool) -> String {
     if !finite && limit.is_none() {
         return "there is no error bound: a divisor is zero within its error".to_owned();
     }
@@ -305,10 +311,13 @@ fn reason(finite: bool, limit: Option<Limit>, worst: f64, allowed: f64) -> Strin
         Some(Limit::Growth(_)) => "whether the integral exists cannot be told from samples",
         None => "the errors of the integrals add up to more than the tolerance",
     };
-    if !worst.is_finite() {
+    if !finite {
         return format!("{why}; there is no error bound");
     }
-    format!("{why}; error {worst:.2e}, allowed {allowed:.2e}")
+    if too_fine {
+        return "the tolerance is below what double precision can give, about 4e-15 of the value".to_owned();
+    }
+    why.to_owned()
 }
 
 fn closure(functionals: &[Functional], wanted: &[FunctionalId]) -> Vec<FunctionalId> {

@@ -3,6 +3,7 @@
 mod answer;
 mod bounded;
 mod error;
+mod exact;
 mod functionals;
 mod nodes;
 mod outcome;
@@ -17,6 +18,7 @@ mod structure;
 
 pub use answer::{answer, answer_each};
 pub use error::{IntegralError, NoProgress, Place, Progress};
+pub use exact::fifteen_digits;
 pub use nodes::{NodeRow, NodesError, SurfaceNodes};
 pub use outcome::{Answer, AnswerFailure, AnswerKind, Component, Principal, Settings};
 pub use speed::{SpeedRun, Timing};

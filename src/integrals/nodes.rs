@@ -141,7 +141,7 @@ impl<'a> SurfaceNodes<'a> {
         let position = evaluate(&self.graph, &self.patch.position, value_of);
         let mut error = IntegralError::new(
             "undefined",
-            format!("{} is undefined at {} = {u}, {} = {v}: `{expression}`", self.patch.name, name(0), name(1)),
+            format!("{} is undefined at {} = {u:?}, {} = {v:?}: `{expression}`", self.patch.name, name(0), name(1)),
         )
         .with_hint("cut the region so that it stays inside the domain, or trim it with `where`");
         error.place = Some(Box::new(Place {

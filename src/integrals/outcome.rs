@@ -6,6 +6,8 @@ use crate::language::{Diagnostic, Dimension, Span, Unit};
 /// How an answer was got.
 #[derive(Clone, Copy, PartialEq, Eq, Debug)]
 pub enum AnswerKind {
+    /// It rests on no integral, and the decimal shown is the number itself.
+    Exact,
     /// A rigorous enclosure: the truth lies in [value - error, value + error].
     Proved,
     /// A conservative error estimate within the tolerance.
@@ -18,6 +20,7 @@ impl AnswerKind {
     /// The word in reports and JSON.
     pub fn word(self) -> &'static str {
         match self {
+            AnswerKind::Exact => "exact",
             AnswerKind::Proved => "proved",
             AnswerKind::Estimate => "estimate",
             AnswerKind::Unreached => "unreached",
@@ -65,6 +68,18 @@ pub struct Principal {
     pub axes: [[f64; 3]; 3],
 }
 
+impl Principal {
+    /// Bound on the sine of the angle by which an axis is off (C. Davis and W. M. Kahan, 1970, SIAM J. Numer. Anal. 7,
+    /// 1); `None` where another moment is equal within the errors, because then any axis across the others will do.
+    pub fn axis_error(&self, index: usize) -> Option<f64> {
+        let gap = (0..3)
+            .filter(|&other| other != index)
+            .map(|other| (self.moments[other] - self.moments[index]).abs())
+            .fold(f64::INFINITY, f64::min);
+        (gap > 2.0 * self.error).then(|| self.error / (gap - self.error))
+    }
+}
+
 /// One answered question.
 #[derive(Clone, PartialEq, Debug)]
 pub struct Answer {
@@ -76,6 +91,8 @@ pub struct Answer {
     pub kind: AnswerKind,
     /// Why the tolerance was not reached or no proof was possible.
     pub reason: Option<String>,
+    /// The error that the tolerance allows, where it was not reached although the error is known.
+    pub allowed: Option<f64>,
     /// Dimension of the components.
     pub dimension: Dimension,
     /// The unit to show them in; `None` shows the coherent unit.
@@ -85,7 +102,7 @@ pub struct Answer {
     /// Seconds spent on the integrals it rests on.
     pub seconds: f64,
     /// The exact formula of the area of one patch, where it is proved and found at once.
-    pub exact: Option<String>,
+    pub closed_form: Option<String>,
     /// For a tensor of inertia.
     pub principal: Option<Principal>,
     /// What the reader should know: open chain, one-sided patch, condition number.

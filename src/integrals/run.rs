@@ -551,7 +551,7 @@ fn joint_failure(question: &Question<'_>, graph: &Graph, failure: Failure) -> Jo
         Failure::NotFinite { outer, inner, component } => {
             let (place, remedy) = question.place(graph, outer, inner, component);
             let [(u, at_u), (v, at_v)] = &place.variables;
-            let where_to = format!("at {u} = {at_u}, {v} = {at_v}");
+            let where_to = format!("at {u} = {at_u:?}, {v} = {at_v:?}");
             let message = if place.expression.is_empty() {
                 format!("{name}: the integral overflows {where_to}")
             } else {

@@ -76,7 +76,14 @@ impl Model {
         }
         for claim in &self.claims {
             let value = known[&claim.value];
-            let shown = format!("{value}");
+            let named = self.value_named(&claim.name);
+            let shown = match named.and_then(|named| named.shown_as.as_ref()) {
+                Some(unit) => in_unit(value, Some(unit)),
+                None => match named.map_or(Dimension::NONE, |named| named.dimension) {
+                    Dimension::NONE => format!("{value}"),
+                    dimension => format!("{value} {dimension}"),
+                },
+            };
             diagnostics.extend(self.outside(&claim.name, value, &shown, &claim.range, claim.range.span, &known));
         }
         for assumption in &self.assumptions {

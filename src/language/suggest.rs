@@ -142,12 +142,13 @@ const LONGEST_NAME: usize = 40;
 
 /// The candidate that is most likely meant by `name`: the same letters in another case, else the one with the fewest
 /// edits (insert, delete, replace, swap neighbors), if these are at most a third of the letters. The first of equals.
+/// A single letter has only itself in the other case: any other letter is as near as the next.
 pub fn nearest<'a>(name: &str, candidates: impl IntoIterator<Item = &'a str>) -> Option<&'a str> {
     let letters: Vec<char> = name.chars().take(LONGEST_NAME + 1).collect();
     if letters.len() > LONGEST_NAME {
         return None;
     }
-    let allowed = (letters.len().max(2) + 1) / 3;
+    let allowed = (letters.len() + 1) / 3;
     let mut best: Option<((usize, usize), &str)> = None;
     for candidate in candidates {
         if candidate == name || candidate.len() > 4 * LONGEST_NAME {
@@ -217,6 +218,8 @@ mod tests {
         assert_eq!(nearest("Height", names), Some("height"));
         assert_eq!(nearest("Mpa", ["mPa", "MPa"]), Some("MPa"));
         assert_eq!(nearest("knuckle", names), None);
+        assert_eq!(nearest("d", ["r", "D", "dx"]), Some("D"));
+        assert_eq!(nearest("k", ["r", "D", "kk"]), None);
         assert_eq!(nearest(&"a".repeat(100_000), names), None);
     }
 

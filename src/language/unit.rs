@@ -72,10 +72,10 @@ impl Dimension {
 }
 
 impl fmt::Display for Dimension {
-    /// The coherent unit as a sheet writes it: `m^2*kg/s^2`, `m^(1/2)`, `1/s`, and `1` for a plain number.
+    /// The coherent unit as a sheet writes it: `kg*m^2/s^2`, `m^(1/2)`, `1/s`, and `1` for a plain number. Mass comes
+    /// first, as in the SI Brochure (BIPM 2019, table 4).
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
-        let factors = Self::BASE_UNITS.iter().zip(self.0);
-        let factors: Vec<_> = factors.map(|(&name, exponent)| (name, (exponent.into(), 12))).collect();
+        let factors = [1, 0, 2, 3, 4, 5, 6].map(|at: usize| (Self::BASE_UNITS[at], (self.0[at].into(), 12)));
         f.write_str(&product_text(&factors))
     }
 }
@@ -289,18 +289,18 @@ mod tests {
         ("cd", 1.0, "cd"),
         ("rad", 1.0, "1"),
         ("Hz", 1.0, "1/s"),
-        ("N", 1.0, "m*kg/s^2"),
+        ("N", 1.0, "kg*m/s^2"),
         ("Pa", 1.0, "kg/m/s^2"),
-        ("J", 1.0, "m^2*kg/s^2"),
-        ("W", 1.0, "m^2*kg/s^3"),
+        ("J", 1.0, "kg*m^2/s^2"),
+        ("W", 1.0, "kg*m^2/s^3"),
         ("C", 1.0, "s*A"),
-        ("V", 1.0, "m^2*kg/s^3/A"),
-        ("F", 1.0, "s^4*A^2/m^2/kg"),
-        ("ohm", 1.0, "m^2*kg/s^3/A^2"),
-        ("S", 1.0, "s^3*A^2/m^2/kg"),
-        ("Wb", 1.0, "m^2*kg/s^2/A"),
+        ("V", 1.0, "kg*m^2/s^3/A"),
+        ("F", 1.0, "s^4*A^2/kg/m^2"),
+        ("ohm", 1.0, "kg*m^2/s^3/A^2"),
+        ("S", 1.0, "s^3*A^2/kg/m^2"),
+        ("Wb", 1.0, "kg*m^2/s^2/A"),
         ("T", 1.0, "kg/s^2/A"),
-        ("H", 1.0, "m^2*kg/s^2/A^2"),
+        ("H", 1.0, "kg*m^2/s^2/A^2"),
         ("lm", 1.0, "cd"),
         ("lx", 1.0, "cd/m^2"),
         ("Bq", 1.0, "1/s"),
@@ -317,7 +317,7 @@ mod tests {
         ("t", 1000.0, "kg"),
         ("ha", 10000.0, "m^2"),
         ("au", 149597870700.0, "m"),
-        ("eV", 1.602176634e-19, "m^2*kg/s^2"),
+        ("eV", 1.602176634e-19, "kg*m^2/s^2"),
         ("gon", 0.015707963267948967, "1"),
         ("rpm", 0.10471975511965977, "1/s"),
         ("%", 0.01, "1"),
@@ -337,10 +337,10 @@ mod tests {
         ("slug", 14.59390293720637, "kg"),
         ("mph", 0.44704, "m/s"),
         ("kn", 0.5144444444444445, "m/s"),
-        ("dyn", 1e-05, "m*kg/s^2"),
-        ("kgf", 9.80665, "m*kg/s^2"),
-        ("lbf", 4.4482216152605005, "m*kg/s^2"),
-        ("kip", 4448.221615260501, "m*kg/s^2"),
+        ("dyn", 1e-05, "kg*m/s^2"),
+        ("kgf", 9.80665, "kg*m/s^2"),
+        ("lbf", 4.4482216152605005, "kg*m/s^2"),
+        ("kip", 4448.221615260501, "kg*m/s^2"),
         ("bar", 100000.0, "kg/m/s^2"),
         ("atm", 101325.0, "kg/m/s^2"),
         ("Torr", 133.32236842105263, "kg/m/s^2"),
@@ -348,10 +348,10 @@ mod tests {
         ("psi", 6894.7572931683635, "kg/m/s^2"),
         ("ksi", 6894757.293168363, "kg/m/s^2"),
         ("psf", 47.88025898033586, "kg/m/s^2"),
-        ("erg", 1.0000000000000001e-07, "m^2*kg/s^2"),
-        ("Wh", 3600.0, "m^2*kg/s^2"),
-        ("cal", 4.184, "m^2*kg/s^2"),
-        ("hp", 745.6998715822701, "m^2*kg/s^3"),
+        ("erg", 1.0000000000000001e-07, "kg*m^2/s^2"),
+        ("Wh", 3600.0, "kg*m^2/s^2"),
+        ("cal", 4.184, "kg*m^2/s^2"),
+        ("hp", 745.6998715822701, "kg*m^2/s^3"),
         ("P", 0.1, "kg/m/s"),
         ("St", 0.0001, "m^2/s"),
     ];
@@ -395,7 +395,7 @@ mod tests {
         let unit = resolve("kN*mm^2/(s*kg^(1/2))").unwrap();
         assert_eq!(unit.text, "kN*mm^2/s/kg^(1/2)");
         assert!(is_close(unit.scale(), 1e-3));
-        assert_eq!(unit.dimension.to_string(), "m^3*kg^(1/2)/s^3");
+        assert_eq!(unit.dimension.to_string(), "kg^(1/2)*m^3/s^3");
         assert_eq!(resolve("1/m^2").unwrap().text, "1/m^2");
         assert_eq!(resolve("1").unwrap().dimension, Dimension::NONE);
         assert_eq!(resolve("deg^2").unwrap().pi_power, 2);

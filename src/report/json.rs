@@ -1,17 +1,18 @@
 //! One JSON document for each run, failures included; keys are stable and in a fixed order.
 
-use super::number::{in_shown_unit, unit_text};
+use super::answer_text::reason_in_unit;
+use super::number::{shown_components, unit_text};
 use super::stamp::Stamp;
 use crate::integrals::{Answer, IntegralError};
-use crate::language::{Severity, SheetErrors};
+use crate::language::{Diagnostic, Severity, SheetErrors, Source};
 use serde_json::{Map, Value, json};
 
 /// Version of the documents.
 const SCHEMA: &str = "quadrel/1";
 
-/// A finite number, or null.
+/// A finite number, or null; zero without a sign.
 fn number(value: f64) -> Value {
-    serde_json::Number::from_f64(value).map_or(Value::Null, Value::Number)
+    serde_json::Number::from_f64(value + 0.0).map_or(Value::Null, Value::Number)
 }
 
 /// One number as itself, several as an array.
@@ -23,7 +24,8 @@ fn one_or_many(values: Vec<f64>) -> Value {
 }
 
 /// The document of `answer`.
-pub fn answers_json(answers: &[Answer], warnings: &[String], stamp: &Stamp) -> Value {
+pub fn answers_json(answers: &[Answer], source: &Source, warnings: &[Diagnostic], stamp: &Stamp) -> Value {
+    let warnings: Vec<Value> = warnings.iter().map(|warning| diagnostic_json(source, warning)).collect();
     let errors: Vec<Value> = answers
         .iter()
         .filter_map(|answer| answer.failure.as_deref())
@@ -42,8 +44,7 @@ pub fn answers_json(answers: &[Answer], warnings: &[String], stamp: &Stamp) -> V
 }
 
 fn answer_json(answer: &Answer) -> Value {
-    let unit = answer.shown_as.as_ref();
-    let shown: Vec<(f64, f64)> = answer.components.iter().map(|component| in_shown_unit(component, unit)).collect();
+    let shown = shown_components(answer);
     let unit_name = unit_text(answer);
     let mut object = Map::new();
     object.insert("name".into(), json!(answer.name));
@@ -58,36 +59,50 @@ fn answer_json(answer: &Answer) -> Value {
     object.insert("error".into(), error);
     object.insert("kind".into(), json!(answer.kind.word()));
     object.insert("unit".into(), if unit_name.is_empty() { Value::Null } else { json!(unit_name) });
-    object.insert("components".into(), json!(answer.components.iter().map(|c| c.label).collect::<Vec<_>>()));
+    if answer.components.len() > 1 {
+        object.insert("components".into(), json!(answer.components.iter().map(|c| c.label).collect::<Vec<_>>()));
+    }
     object.insert("evaluations".into(), json!(answer.evaluations));
     object.insert("seconds".into(), number(answer.seconds));
-    object.insert("exact".into(), json!(answer.exact));
-    object.insert("reason".into(), json!(answer.reason));
+    object.insert("closed_form".into(), json!(answer.closed_form));
+    object.insert("reason".into(), json!(reason_in_unit(answer)));
     object.insert("warnings".into(), json!(answer.warnings));
     if let Some(principal) = &answer.principal {
-        let scale = unit.map_or(1.0, |unit| unit.from_si(1.0));
+        let scale = answer.shown_as.as_ref().map_or(1.0, |unit| unit.from_si(1.0));
         object.insert("principal_moments".into(), one_or_many(principal.moments.map(|m| m * scale).to_vec()));
         object.insert("principal_error".into(), number(principal.error * scale));
-        object.insert("principal_axes".into(), json!(principal.axes));
+        object.insert(
+            "principal_axes".into(),
+            Value::Array(
+                (0..3)
+                    .map(|index| match principal.axis_error(index) {
+                        Some(_) => one_or_many(principal.axes[index].to_vec()),
+                        None => Value::Null,
+                    })
+                    .collect(),
+            ),
+        );
     }
     Value::Object(object)
 }
 
 /// The document of a run on a sheet that is wrong.
 pub fn sheet_errors_json(errors: &SheetErrors) -> Value {
-    let entry = |diagnostic: &crate::language::Diagnostic| {
-        let (line, column) = errors.source.line_column(diagnostic.span.start);
-        json!({
-            "code": diagnostic.code,
-            "severity": match diagnostic.severity { Severity::Error => "error", Severity::Warning => "warning" },
-            "message": diagnostic.message,
-            "line": line,
-            "column": column,
-            "hint": diagnostic.hint,
-        })
-    };
-    let list: Vec<Value> = errors.diagnostics.iter().map(entry).collect();
+    let list: Vec<Value> =
+        errors.diagnostics.iter().map(|diagnostic| diagnostic_json(&errors.source, diagnostic)).collect();
     json!({"schema": SCHEMA, "errors": list})
+}
+
+fn diagnostic_json(source: &Source, diagnostic: &Diagnostic) -> Value {
+    let (line, column) = source.line_column(diagnostic.span.start);
+    json!({
+        "code": diagnostic.code,
+        "severity": match diagnostic.severity { Severity::Error => "error", Severity::Warning => "warning" },
+        "message": diagnostic.message,
+        "line": line,
+        "column": column,
+        "hint": diagnostic.hint,
+    })
 }
 
 /// The document of a run that failed for another reason.

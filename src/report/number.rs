@@ -1,6 +1,6 @@
 //! Numbers with their errors, in the unit they are shown in, with the digits the error supports.
 
-use crate::integrals::{Answer, Component};
+use crate::integrals::{Answer, AnswerKind, Component, fifteen_digits};
 use crate::language::{Dimension, Unit};
 
 /// m kg s^-2, shown as N.
@@ -16,6 +16,15 @@ pub fn in_shown_unit(component: &Component, unit: Option<&Unit>) -> (f64, f64) {
     let error =
         unit.from_si(component.error).abs() * (1.0 + Unit::CONVERSION_ERROR) + Unit::CONVERSION_ERROR * value.abs();
     (value, error)
+}
+
+/// Values and errors of an answer in its unit; what is exact is shown without the noise of the conversion.
+pub fn shown_components(answer: &Answer) -> Vec<(f64, f64)> {
+    let shown = |component| match in_shown_unit(component, answer.shown_as.as_ref()) {
+        (value, _) if answer.kind == AnswerKind::Exact => (fifteen_digits(value), 0.0),
+        inexact => inexact,
+    };
+    answer.components.iter().map(shown).collect()
 }
 
 /// The unit of an answer as text: the one asked for, else the coherent SI unit, else nothing.
@@ -53,11 +62,7 @@ pub fn value_with_error(value: f64, error: f64) -> String {
         shown_error = format!("{:.decimals$}", error / unit + last);
     }
     let shown_value = format!("{:.decimals$}", value / unit);
-    // A value that rounds to zero has no sign.
-    let shown_value = match shown_value.strip_prefix('-') {
-        Some(digits) if digits.bytes().all(|b| matches!(b, b'0' | b'.')) => digits.to_owned(),
-        _ => shown_value,
-    };
+    let shown_value = without_sign_of_zero(shown_value);
     if exponent == 0 {
         format!("{shown_value} ± {shown_error}")
     } else {
@@ -65,9 +70,29 @@ pub fn value_with_error(value: f64, error: f64) -> String {
     }
 }
 
+/// A number that is known as it prints: `60`, `0.24`, `1e-20`.
+pub(super) fn exact_number(value: f64) -> String {
+    let plain = value == 0.0 || (1e-6..1e15).contains(&value.abs());
+    if plain { without_sign_of_zero(format!("{value}")) } else { format!("{value:e}") }
+}
+
+/// A number that rounds to zero has no sign.
+pub(super) fn without_sign_of_zero(number: String) -> String {
+    match number.strip_prefix('-') {
+        Some(digits) if digits.bytes().all(|b| matches!(b, b'0' | b'.')) => digits.to_owned(),
+        _ => number,
+    }
+}
+
 #[cfg(test)]
 mod tests {
     use super::*;
+
+    #[test]
+    fn exact_numbers_are_short() {
+        let shown: Vec<String> = [60.0, -0.24, -0.0, 1e-20, 3e300].into_iter().map(exact_number).collect();
+        assert_eq!(shown, ["60", "-0.24", "0", "1e-20", "3e300"]);
+    }
 
     #[test]
     fn digits_follow_the_error() {

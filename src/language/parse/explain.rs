@@ -20,6 +20,7 @@ type Rule = fn(&Context<'_>) -> Option<Diagnostic>;
 
 const RULES: &[Rule] = &[
     inside_unit,
+    other_word_for_on,
     before_equals,
     after_as,
     after_in,
@@ -28,6 +29,7 @@ const RULES: &[Rule] = &[
     form_of_sum,
     missing_operand,
     closing_bracket,
+    region_in_call,
     unclosed_bracket,
     misplaced_word,
     misplaced_comma,
@@ -64,6 +66,16 @@ fn inside_unit(c: &Context<'_>) -> Option<Diagnostic> {
         )
     };
     Some(c.error("unit-syntax", message).with_hint(hint))
+}
+
+/// `for u in [0, 1]`, after the map or on a line of its own
+fn other_word_for_on(c: &Context<'_>) -> Option<Diagnostic> {
+    let is_region =
+        |at: usize| matches!(c.word(at), "for" | "over") && c.kind(at + 1) == Some(Name) && c.word(at + 2) == "in";
+    let at = [0, c.at].into_iter().find(|&at| is_region(at))?;
+    let (word, variable) = (c.word(at), c.word(at + 1));
+    let error = Diagnostic::error("misplaced-word", c.span(at, at), format!("`{word}` does not begin a region"));
+    Some(error.with_hint(format!("write `on {variable} in ...`")))
 }
 
 /// What stands before `=`, or a statement without one.
@@ -239,6 +251,19 @@ fn two_ends(c: &Context<'_>, open: usize) -> Diagnostic {
     let end = c.closing(open).unwrap_or(c.at);
     Diagnostic::error("interval-syntax", c.span(open, end), "an interval has two ends")
         .with_hint("an interval is written `[0, 1]`, or `(0, 1)` without its ends")
+}
+
+/// `area(s where z > 0)`, `area(s on u in [0, 1], v in [0, 1])`
+fn region_in_call(c: &Context<'_>) -> Option<Diagnostic> {
+    let (Some(Keyword), word @ ("on" | "where")) = c.here() else { return None };
+    let open = *c.open.last()?;
+    if c.role() != Some(Role::Arguments) || c.closing(open).is_none() {
+        return None;
+    }
+    let callee = c.word(open - 1);
+    let error = c.error("misplaced-word", format!("`{word}` cannot stand between the brackets of `{callee}`"));
+    let whole = if c.before().0 == Some(Name) { c.before().1 } else { "name" };
+    Some(error.with_hint(format!("name the part first: `part = {whole} {word} ...`, then use `part`")))
 }
 
 /// The end of the statement, or one of its clauses, while a bracket is open.
