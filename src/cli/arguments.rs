@@ -148,12 +148,26 @@ pub struct SpeedOptions {
     /// Repeats; the minimum counts.
     #[arg(long, default_value_t = 11)]
     pub repeats: usize,
+    /// Points in one vector of the machine code. Default: as many as this machine has.
+    #[arg(long, value_enum)]
+    pub lanes: Option<LanesOption>,
     /// Give a parameter another value. May be repeated.
     #[arg(long = "set", value_name = "NAME=VALUE")]
     pub set: Vec<String>,
     /// Print one JSON document.
     #[arg(long)]
     pub json: bool,
+}
+
+/// Widths of machine code.
+#[derive(ValueEnum, Clone, Copy, PartialEq, Eq, Debug)]
+pub enum LanesOption {
+    /// 128-bit vectors; every machine.
+    #[value(name = "2")]
+    Two,
+    /// 256-bit vectors; x86-64 with AVX2 and FMA.
+    #[value(name = "4")]
+    Four,
 }
 
 fn tolerance(text: &str) -> Result<f64, String> {

@@ -1,8 +1,9 @@
 //! `quadrel speed`
 
-use super::arguments::SpeedOptions;
+use super::arguments::{LanesOption, SpeedOptions};
 use super::{Exit, Failure, choose_patch, load, output};
 use crate::integrals::SpeedRun;
+use crate::kernel::Lanes;
 use serde_json::json;
 
 /// Largest grid and largest number of scattered points.
@@ -21,11 +22,20 @@ pub(super) fn run(options: &SpeedOptions) -> Result<Exit, Failure> {
     if options.repeats == 0 || options.threads == 0 {
         return Err(Failure::Usage("--repeats and --threads are at least 1".to_owned()));
     }
+    let lanes = match options.lanes {
+        Some(LanesOption::Two) => Lanes::Two,
+        Some(LanesOption::Four) => Lanes::Four,
+        None => Lanes::widest(),
+    };
+    if !lanes.is_supported() {
+        return Err(Failure::Usage(unsupported(lanes)));
+    }
+    let (points, repeats) = (options.scattered, options.repeats);
     let measured = rayon::ThreadPoolBuilder::new()
         .num_threads(options.threads)
         .build()
         .map_err(|error| Failure::Usage(format!("--threads {}: {error}", options.threads)))?
-        .install(|| SpeedRun::measure(&model, &bindings, patch, options.grid, options.scattered, options.repeats))?;
+        .install(|| SpeedRun::measure(&model, &bindings, patch, options.grid, points, repeats, lanes))?;
     if options.json {
         output::print_json(&json!({
             "schema": "quadrel/1",
@@ -43,6 +53,7 @@ pub(super) fn run(options: &SpeedOptions) -> Result<Exit, Failure> {
                 "points": options.scattered,
                 "route": measured.route,
             },
+            "lanes": measured.lanes,
             "instructions": measured.instructions,
             "mixed_instructions": measured.mixed_instructions,
             "compile_us": measured.compile_seconds * 1e6,
@@ -50,6 +61,10 @@ pub(super) fn run(options: &SpeedOptions) -> Result<Exit, Failure> {
             "repeats": options.repeats,
         }));
     } else {
+        let route = match measured.lanes {
+            Some(lanes) => format!("{} for {lanes} lanes", measured.route),
+            None => measured.route.to_owned(),
+        };
         output::print(&format!(
             "patch {}, {} instructions of which {} depend on both variables, {}, compiled in {:.0} us\n\
              sum of dA on a {first}x{second} grid: {:.3} ns per point (median {:.3}), sum {}\n\
@@ -58,7 +73,7 @@ pub(super) fn run(options: &SpeedOptions) -> Result<Exit, Failure> {
             model.patches[patch.0].name,
             measured.instructions,
             measured.mixed_instructions,
-            measured.route,
+            route,
             measured.compile_seconds * 1e6,
             measured.grid.fastest,
             measured.grid.median,
@@ -72,4 +87,13 @@ pub(super) fn run(options: &SpeedOptions) -> Result<Exit, Failure> {
         ));
     }
     Ok(Exit::Reached)
+}
+
+/// What a user reads who asks for vectors that the machine has not.
+fn unsupported(lanes: Lanes) -> String {
+    format!(
+        "--lanes {}: this machine has no such vectors (they need x86-64 with AVX2 and FMA)\nhint: leave --lanes out, or \
+         take --lanes 2",
+        lanes.count()
+    )
 }

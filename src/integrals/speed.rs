@@ -3,7 +3,7 @@
 use super::error::IntegralError;
 use crate::expression::{SymbolId, evaluate};
 use crate::geometry::Surface;
-use crate::kernel::{Engine, Kernel, Program};
+use crate::kernel::{Kernel, KernelError, Lanes, Program};
 use crate::language::{Bindings, Bound, Model, PatchId};
 use std::hint::black_box;
 use std::time::Instant;
@@ -30,6 +30,8 @@ pub struct SpeedRun {
     pub compile_seconds: f64,
     /// Which engine ran.
     pub route: &'static str,
+    /// Points in one vector of the machine code.
+    pub lanes: Option<usize>,
     /// Instructions of the kernel.
     pub instructions: usize,
     /// Instructions that depend on both variables.
@@ -37,10 +39,12 @@ pub struct SpeedRun {
 }
 
 impl SpeedRun {
-    /// Measures |N| of a patch on a grid and at scattered points.
+    /// Measures |N| of a patch on a grid and at scattered points, with machine code for so many lanes; where the formula is
+    /// too large for that, with the interpreter.
     ///
     /// # Errors
-    /// For limits that are infinite or depend on a variable, and formulas that are too large.
+    /// For limits that are infinite or depend on a variable, formulas that are too large, and lanes that the machine has
+    /// not.
     pub fn measure(
         model: &Model,
         bindings: &Bindings,
@@ -48,6 +52,7 @@ impl SpeedRun {
         grid: (usize, usize),
         scattered: usize,
         repeats: usize,
+        lanes: Lanes,
     ) -> Result<Self, IntegralError> {
         let patch = &model.patches[patch.0];
         let mut graph = model.graph.clone();
@@ -56,10 +61,12 @@ impl SpeedRun {
         let parameters: Vec<SymbolId> =
             graph.symbols_of(&outputs).into_iter().filter(|symbol| !patch.variables.contains(symbol)).collect();
         let values: Vec<f64> = parameters.iter().map(|&symbol| bindings.value(symbol)).collect();
-        let fail =
-            |error: crate::kernel::KernelError| IntegralError::new("formula", format!("{}: {error}", patch.name));
+        let fail = |error: KernelError| IntegralError::new("formula", format!("{}: {error}", patch.name));
         let program = Program::new(&graph, &outputs, patch.variables, &parameters).map_err(fail)?;
-        let kernel = Kernel::new(program, u64::MAX);
+        let kernel = match Kernel::compiled_for(program.clone(), lanes) {
+            Err(KernelError::TooLargeToCompile(_)) => Kernel::interpreted(program),
+            kernel => kernel.map_err(fail)?,
+        };
         let mut limits = [(0.0, 0.0); 2];
         for (limit, interval) in limits.iter_mut().zip(&patch.intervals) {
             let (Bound::Finite(lower), Bound::Finite(upper)) = (interval.lower, interval.upper) else {
@@ -100,10 +107,8 @@ impl SpeedRun {
             sum,
             scattered: timing(scattered_times, scattered.max(1)),
             compile_seconds: kernel.compile_seconds(),
-            route: match kernel.engine() {
-                Engine::MachineCode => "machine code",
-                Engine::Interpreter => "interpreter",
-            },
+            route: if kernel.lanes().is_some() { "machine code" } else { "interpreter" },
+            lanes: kernel.lanes().map(Lanes::count),
             instructions: kernel.program().len(),
             mixed_instructions: kernel.program().mixed_count(),
         })

@@ -2,7 +2,8 @@
 
 use super::interpreter::{Interpreter, run};
 use super::kernel::Kernel;
-use super::machine_code::{Buffers, Code, Sink, TURN};
+use super::machine_code::{Buffers, Code, Lanes};
+use super::plan::{Sink, TURN};
 use super::program::{KernelError, MixedPart, Program, Stage, ValueId};
 use rayon::prelude::*;
 
@@ -23,14 +24,14 @@ pub(super) struct RowCode {
 }
 
 impl RowCode {
-    pub(super) fn compile(program: &Program) -> Result<Self, KernelError> {
+    pub(super) fn compile(program: &Program, lanes: Lanes) -> Result<Self, KernelError> {
         let stage = |value: ValueId| program.stages()[value.index()];
         let body: Vec<ValueId> = (0..program.len())
             .map(|index| ValueId(index as u32))
             .filter(|&value| stage(value) == Stage::Mixed)
             .collect();
         let is_table = |value: ValueId| stage(value) == Stage::Second;
-        let code = Code::compile(program, &body, program.outputs(), is_table, Sink::WeightedSum)?;
+        let code = Code::compile(program, &body, program.outputs(), is_table, Sink::WeightedSum, lanes)?;
         Ok(Self {
             row_values: program.restricted(code.uniforms().to_vec()),
             table_values: program.restricted(code.arrays().to_vec()),
@@ -52,7 +53,7 @@ impl Kernel {
     /// Sums over a product grid: sum over i, j of `wu[i] * wv[j] * f_k(u[i], v[j])` for each output k.
     ///
     /// The order of summation is fixed: four partial sums along a row, rows one after the other in blocks of 16, blocks in
-    /// order with compensation. So the bits depend neither on the number of threads nor on the engine. A sum is NaN where
+    /// order with compensation. So the bits depend neither on the number of threads nor on the engine or its lanes. A sum is NaN where
     /// a value is not finite.
     ///
     /// # Panics
