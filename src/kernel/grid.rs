@@ -161,24 +161,27 @@ impl<'a> CompiledGrid<'a> {
         let code = &self.code.code;
         let mut buffers: Buffers = code.buffers();
         let mut totals = vec![0.0; outputs];
+        let mut partial = vec![0.0; TURN * outputs];
+        // Nothing is allocated for a row: that would cost as much as a tenth of its points.
         let size = self.weights.len();
-        let rows = block * ROWS..((block + 1) * ROWS).min(wu.len());
-        for (row, &row_weight) in wu.iter().enumerate().take(rows.end).skip(rows.start) {
+        let columns: Vec<(Vec<&[f64]>, &[f64])> = (0..size)
+            .step_by(code.block())
+            .map(|start| start..(start + code.block()).min(size))
+            .map(|range| {
+                (self.tables.iter().map(|table| &table[range.clone()]).collect(), &self.weights[range.clone()])
+            })
+            .collect();
+        for (row, &row_weight) in wu.iter().enumerate().skip(block * ROWS).take(ROWS) {
             let mut next = 0;
             code.set_uniforms(&mut buffers, |_| {
                 next += 1;
                 self.row_values[next - 1][row]
             });
-            let mut partial = vec![[0.0; TURN]; outputs];
-            let mut start = 0;
-            while start < size {
-                let end = (start + code.block()).min(size);
-                let arrays: Vec<&[f64]> = self.tables.iter().map(|table| &table[start..end]).collect();
-                let mut sums: Vec<&mut [f64]> = partial.iter_mut().map(|sums| &mut sums[..]).collect();
-                code.run(&mut buffers, &arrays, &self.weights[start..end], &mut sums);
-                start = end;
+            partial.fill(0.0);
+            for (arrays, weights) in &columns {
+                code.run(&mut buffers, arrays, weights, &mut partial, TURN);
             }
-            for (total, partial) in totals.iter_mut().zip(&partial) {
+            for (total, partial) in totals.iter_mut().zip(partial.as_chunks::<TURN>().0) {
                 *total += row_weight * row_sum(partial);
             }
         }

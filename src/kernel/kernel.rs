@@ -201,12 +201,9 @@ impl Kernel {
                 return;
             }
             if whole {
-                let mut outputs: Vec<&mut [f64]> =
-                    out.chunks_exact_mut(count).map(|output| &mut output[start..start + length]).collect();
-                code.run(&mut buffers, &arrays, &[], &mut outputs);
+                code.run(&mut buffers, &arrays, &[], &mut out[start..], count);
             } else {
-                let mut outputs: Vec<&mut [f64]> = tail.chunks_exact_mut(block).collect();
-                code.run(&mut buffers, &arrays, &[], &mut outputs);
+                code.run(&mut buffers, &arrays, &[], &mut tail, block);
                 for (output, values) in out.chunks_exact_mut(count).zip(tail.chunks_exact(block)) {
                     output[start..start + length].copy_from_slice(&values[..length]);
                 }

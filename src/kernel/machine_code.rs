@@ -140,6 +140,9 @@ pub(super) struct Buffers {
     scratch: Vec<f64>,
     /// Each value once for every lane.
     uniforms: Vec<f64>,
+    /// Tables of pointers for the current call.
+    arrays: Vec<*const f64>,
+    outputs: Vec<*mut f64>,
 }
 
 impl Code {
@@ -206,7 +209,12 @@ impl Code {
 
     /// Buffers for calls of this code.
     pub(super) fn buffers(&self) -> Buffers {
-        Buffers { scratch: vec![0.0; self.scratch_length()], uniforms: vec![0.0; self.lanes() * self.uniforms.len()] }
+        Buffers {
+            scratch: vec![0.0; self.scratch_length()],
+            uniforms: vec![0.0; self.lanes() * self.uniforms.len()],
+            arrays: Vec::new(),
+            outputs: Vec::new(),
+        }
     }
 
     /// Sets the uniform values for the following blocks; `value(id)` gives each.
@@ -216,33 +224,42 @@ impl Code {
         }
     }
 
-    /// Runs one block: `arrays` in the order of [`Code::arrays`], each as long as the block. For [`Sink::Store`]
-    /// `outputs` are arrays of the block's length; for [`Sink::WeightedSum`] each holds [`TURN`] partial sums, which are
-    /// added to.
+    /// Runs one block: `arrays` in the order of [`Code::arrays`], each as long as the block. Output k begins at
+    /// `outputs[k * distance]`. For [`Sink::Store`] it is as long as the block; for [`Sink::WeightedSum`] it holds [`TURN`]
+    /// partial sums, which are added to.
     ///
     /// # Panics
     /// If the lengths do not fit or are no multiple of [`TURN`].
-    pub(super) fn run(&self, buffers: &mut Buffers, arrays: &[&[f64]], weights: &[f64], outputs: &mut [&mut [f64]]) {
+    pub(super) fn run(
+        &self,
+        buffers: &mut Buffers,
+        arrays: &[&[f64]],
+        weights: &[f64],
+        outputs: &mut [f64],
+        distance: usize,
+    ) {
         let points = arrays.first().map_or(weights.len(), |array| array.len());
         assert!(points > 0 && points <= self.block() && points.is_multiple_of(TURN), "a block is whole turns");
         assert_eq!(arrays.len(), self.arrays.len(), "every array is given");
         assert!(arrays.iter().all(|array| array.len() == points), "arrays are as long as the block");
-        assert_eq!(outputs.len(), self.outputs, "every output is given");
         assert!(buffers.scratch.len() >= self.scratch_length());
         assert!(buffers.uniforms.len() >= self.lanes() * self.uniforms.len());
         let room = if self.sink == Sink::Store { points } else { TURN };
-        assert!(outputs.iter().all(|output| output.len() >= room), "outputs have room");
+        let needed = self.outputs.checked_sub(1).map_or(0, |last| last * distance + room);
+        assert!(distance >= room && outputs.len() >= needed, "outputs have room");
         assert!(self.sink == Sink::Store || weights.len() == points, "a weight for each point");
-        let array_pointers: Vec<*const f64> = arrays.iter().map(|array| array.as_ptr()).collect();
-        let output_pointers: Vec<*mut f64> = outputs.iter_mut().map(|output| output.as_mut_ptr()).collect();
+        buffers.arrays.clear();
+        buffers.arrays.extend(arrays.iter().map(|array| array.as_ptr()));
+        buffers.outputs.clear();
+        buffers.outputs.extend(outputs.chunks_mut(distance).take(self.outputs).map(|output| output.as_mut_ptr()));
         let uniforms = buffers.uniforms.as_ptr();
         let scratch = buffers.scratch.as_mut_ptr();
-        let (arrays, weights, outputs) = (array_pointers.as_ptr(), weights.as_ptr(), output_pointers.as_ptr());
+        let (arrays, weights, outputs) = (buffers.arrays.as_ptr(), weights.as_ptr(), buffers.outputs.as_ptr());
         match &self.body {
             // SAFETY: `entry` was finalized for exactly this signature and lives as long as `self`. It reads `points`
             // numbers from each array and the weights, one for each lane from each uniform, and writes `points` (or TURN)
             // numbers to each output and as many to each scratch array, which has room for a block; the lengths were
-            // checked above. The outputs are exclusive borrows, so nothing that is read is written.
+            // checked above. The outputs are an exclusive borrow, so nothing that is read is written.
             Body::Narrow { entry, .. } => unsafe {
                 entry(uniforms, arrays, scratch, weights, outputs, points as i64);
             },

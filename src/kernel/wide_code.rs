@@ -48,6 +48,9 @@ const VECTORS: usize = 16;
 /// At most so many sums stay in registers, from the last one down; more are added to memory.
 const SUMS_IN_REGISTERS: usize = 4;
 
+/// Registers that one step takes at most, beside values that were computed before: three operands, two temporaries.
+const STEP_REGISTERS: usize = 5;
+
 /// Code for a plan.
 pub(super) fn assemble(program: &Program, plan: &Plan, sink: Sink) -> WideCode {
     let mut assembler = Assembler::default();
@@ -143,8 +146,10 @@ struct LoopWriter<'a> {
     place: FxHashMap<ValueId, Vector>,
     /// Registers that hold what the current instructions read or write.
     locked: u16,
-    /// Number of sums in registers.
+    /// Number of sums in registers, from the last register down.
     sums: usize,
+    /// Uniform values that keep a register in all turns, below the sums.
+    pinned: Vec<ValueId>,
     /// Spilled vectors, the most there are at a time.
     spills: usize,
     free_spills: Vec<usize>,
@@ -175,6 +180,10 @@ impl<'a> LoopWriter<'a> {
                 arrays.push(array);
             }
         }
+        let sums = summed.min(SUMS_IN_REGISTERS);
+        let room = (VECTORS - sums).saturating_sub(most_alive(&steps, &uses) + STEP_REGISTERS);
+        let pinned: Vec<ValueId> = most_used_uniforms(&uses, homes).into_iter().take(room).collect();
+        let place = pinned.iter().enumerate().map(|(index, &value)| (value, from_the_top(sums + index))).collect();
         Self {
             assembler,
             program,
@@ -185,9 +194,10 @@ impl<'a> LoopWriter<'a> {
             uses,
             arrays,
             holds: [None; VECTORS],
-            place: FxHashMap::default(),
+            place,
             locked: 0,
-            sums: summed.min(SUMS_IN_REGISTERS),
+            sums,
+            pinned,
             spills: 0,
             free_spills: Vec::new(),
             dying_spills: Vec::new(),
@@ -204,7 +214,11 @@ impl<'a> LoopWriter<'a> {
         for k in 0..self.sums {
             // Partial sums go on from where the block before left them.
             self.assembler.load_pointer(POINTER, entry_of(OUTPUTS, k));
-            self.assembler.load(sum_register(k), Operand::Memory(at(POINTER, 0)));
+            self.assembler.load(from_the_top(k), Operand::Memory(at(POINTER, 0)));
+        }
+        for index in 0..self.pinned.len() {
+            let home = self.memory(self.pinned[index]);
+            self.assembler.load(from_the_top(self.sums + index), Operand::Memory(home));
         }
         self.assembler.clear(OFFSET);
         self.assembler.align();
@@ -217,7 +231,7 @@ impl<'a> LoopWriter<'a> {
         self.assembler.repeat_while_below(OFFSET, BYTES, turn);
         for k in 0..self.sums {
             self.assembler.load_pointer(POINTER, entry_of(OUTPUTS, k));
-            self.assembler.store(at(POINTER, 0), sum_register(k));
+            self.assembler.store(at(POINTER, 0), from_the_top(k));
         }
         self.assembler.clear_upper_halves();
         kept.iter().rev().for_each(|&register| self.assembler.pop(register));
@@ -265,7 +279,7 @@ impl<'a> LoopWriter<'a> {
         let product = self.temporary();
         self.assembler.packed(Packed::Multiply, product, register, Operand::Memory(in_turn(WEIGHTS, 0)));
         if output < self.sums {
-            let sum = sum_register(output);
+            let sum = from_the_top(output);
             self.assembler.packed(Packed::Add, sum, sum, Operand::Register(product));
         } else {
             self.assembler.load_pointer(POINTER, entry_of(OUTPUTS, output));
@@ -493,9 +507,9 @@ impl<'a> LoopWriter<'a> {
         self.locked |= 1 << register.0;
     }
 
-    /// Registers that steps may use: all but those of the sums.
+    /// Registers that steps may use: all but those of the sums and the pinned values.
     fn registers(&self) -> impl Iterator<Item = Vector> + use<> {
-        (0..(VECTORS - self.sums) as u8).map(Vector)
+        (0..(VECTORS - self.sums - self.pinned.len()) as u8).map(Vector)
     }
 
     fn unused_register(&self) -> Option<Vector> {
@@ -513,7 +527,7 @@ impl<'a> LoopWriter<'a> {
                 let value = self.holds[usize::from(register.0)].expect("no register is unused");
                 self.next_use(value).unwrap_or(usize::MAX)
             })
-            .expect("a step locks at most six of at least twelve registers");
+            .expect("a step locks fewer registers than there are");
         let value = self.holds[usize::from(farthest.0)].take().expect("no register is unused");
         self.place.remove(&value);
         if !self.homes.contains_key(&value) && self.next_use(value).is_some() {
@@ -536,8 +550,9 @@ impl<'a> LoopWriter<'a> {
         passed.checked_sub(1).map(|next| uses[next])
     }
 
+    /// Pinned values are used in the next turn, too.
     fn is_used_later(&self, value: ValueId) -> bool {
-        self.uses.get(&value).is_some_and(|uses| uses[0] > self.now)
+        self.pinned.contains(&value) || self.uses.get(&value).is_some_and(|uses| uses[0] > self.now)
     }
 
     /// Gives back the registers and spilled vectors of operands that no later step uses.
@@ -585,6 +600,31 @@ const SIGN: u64 = 1 << 63;
 
 const ONE: u64 = 1.0f64.to_bits();
 
+/// The largest number of values of a loop that are computed and not yet used up.
+fn most_alive(steps: &[Step], uses: &FxHashMap<ValueId, Vec<usize>>) -> usize {
+    let mut ends = vec![0usize; steps.len()];
+    let (mut alive, mut most) = (0, 0);
+    for (position, step) in steps.iter().enumerate() {
+        alive -= ends[position];
+        if let Step::Compute(value) = step
+            && let Some(uses) = uses.get(value)
+        {
+            ends[uses[0]] += 1;
+            alive += 1;
+            most = most.max(alive);
+        }
+    }
+    most
+}
+
+/// Uniform values of a loop, those with the most uses first.
+fn most_used_uniforms(uses: &FxHashMap<ValueId, Vec<usize>>, homes: &FxHashMap<ValueId, Home>) -> Vec<ValueId> {
+    let mut uniforms: Vec<ValueId> =
+        uses.keys().copied().filter(|value| matches!(homes.get(value), Some(Home::Uniform(_)))).collect();
+    uniforms.sort_unstable_by_key(|value| (std::cmp::Reverse(uses[value].len()), *value));
+    uniforms
+}
+
 /// What a step reads.
 fn operands(program: &Program, step: Step) -> impl Iterator<Item = ValueId> {
     let (computed, read) = match step {
@@ -594,7 +634,8 @@ fn operands(program: &Program, step: Step) -> impl Iterator<Item = ValueId> {
     computed.into_iter().flat_map(|instruction| instruction.operands()).chain(read)
 }
 
-fn sum_register(k: usize) -> Vector {
+/// Register k, counted down from the last.
+fn from_the_top(k: usize) -> Vector {
     Vector((VECTORS - 1 - k) as u8)
 }
 
