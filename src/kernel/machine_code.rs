@@ -85,7 +85,7 @@ pub(super) struct Code {
 enum Body {
     Narrow {
         /// Freed on drop; `ManuallyDrop` because freeing consumes it.
-        module: ManuallyDrop<JITModule>,
+        module: ManuallyDrop<Box<JITModule>>,
         entry: NarrowEntry,
         /// Functions that the code calls; it holds pointers to these.
         _functions: Box<[HostCall]>,
@@ -295,7 +295,7 @@ impl Body {
         let functions: Box<[HostCall]> = plan.calls.iter().map(|call| call.function).collect();
         match narrow_code::emit(&mut module, program, plan, &functions, sink) {
             Ok(address) => Ok(Body::Narrow {
-                module: ManuallyDrop::new(module),
+                module: ManuallyDrop::new(Box::new(module)),
                 // SAFETY: the function was defined with exactly the parameters of `NarrowEntry`, in the platform's C
                 // convention, which is the default of the code generator.
                 entry: unsafe { std::mem::transmute::<*const u8, NarrowEntry>(address) },

@@ -657,3 +657,41 @@ fn scratch_array(slot: usize) -> Memory {
 fn entry_of(table: General, index: usize) -> Memory {
     at(table, 8 * index)
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::expression::Graph;
+    use crate::kernel::Stage;
+
+    /// Code for the sum over k of t_k t_(n+1-k), t_k = (u + k) v: half of the terms are alive at once.
+    fn code(terms: i64) -> WideCode {
+        let mut graph = Graph::new();
+        let variables = [graph.new_symbol("u"), graph.new_symbol("v")];
+        let (u, v) = (graph.symbol(variables[0]), graph.symbol(variables[1]));
+        let terms: Vec<_> = (1..=terms)
+            .map(|k| {
+                let k = graph.integer(k);
+                let factor = graph.add(u, k);
+                graph.multiply(factor, v)
+            })
+            .collect();
+        let products: Vec<_> = terms.iter().zip(terms.iter().rev()).map(|(&a, &b)| graph.multiply(a, b)).collect();
+        let sum = products[1..].iter().fold(products[0], |sum, &product| graph.add(sum, product));
+        let program = Program::new(&graph, &[sum], variables, &[]).unwrap();
+        let mixed = |value: &ValueId| program.stages()[value.index()] == Stage::Mixed;
+        let body: Vec<ValueId> = (0..program.len() as u32).map(ValueId).filter(mixed).collect();
+        let is_table = |value: ValueId| program.stages()[value.index()] == Stage::Second;
+        let plan = Plan::new(&program, &body, program.outputs(), is_table);
+        assemble(&program, &plan, Sink::WeightedSum)
+    }
+
+    /// The values themselves are checked in tests/kernel_limits.rs; here, that such formulas do spill.
+    #[test]
+    fn long_formulas_spill_and_short_ones_do_not() {
+        assert_eq!(code(4).spills, 0);
+        let long = code(100);
+        // 50 terms and a running sum do not fit into 15 registers; none needs more than one place.
+        assert!((36..=100).contains(&long.spills), "{} vectors are spilled", long.spills);
+    }
+}
