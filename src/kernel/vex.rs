@@ -351,7 +351,6 @@ mod tests {
     #[test]
     #[rustfmt::skip]
     fn bytes_are_those_of_the_gnu_assembler() {
-        type A = Assembler;
         type G = General;
         use {Comparison as C, FusedForm::*, Packed as P};
         type Case = (&'static str, &'static str, fn(&mut Assembler));
