@@ -4,7 +4,7 @@
 //! keeps working.
 
 use quadrel::geometry::Surface;
-use quadrel::kernel::{Kernel, Program};
+use quadrel::kernel::{Kernel, Lanes, Program};
 use quadrel::language::{Source, check};
 use std::collections::HashMap;
 use std::f64::consts::{PI, TAU};
@@ -49,39 +49,45 @@ fn main() {
     let full = std::env::args().any(|argument| argument == "--bench");
     let (n, repeats) = if full { (2000, 11) } else { (100, 1) };
     let baseline = if full { baseline() } else { HashMap::new() };
-    println!("surface      ns/point   median        C    ratio   difference   compile us");
+    println!("surface    lanes    ns/point   median        C    ratio   difference   compile us");
     for (name, map, limits) in SURFACES {
         let sheet = format!("{map} on u in [0, 1], v in [0, 1]");
         let model = check(Source::new(*name, sheet)).expect("the sheet is right");
         let mut graph = model.graph.clone();
         let surface = Surface::new(&mut graph, &model.patches[0]);
         let program = Program::new(&graph, &[surface.element], model.patches[0].variables, &[]).expect("no parameters");
-        let compiled = || Kernel::compiled(program.clone()).expect("small enough");
-        let compile_us = (0..10 * repeats).map(|_| compiled().compile_seconds() * 1e6).fold(f64::INFINITY, f64::min);
-        let kernel = compiled();
         let axis = |(low, high): (f64, f64)| -> (Vec<f64>, Vec<f64>) {
             let step = (high - low) / n as f64;
             ((0..n).map(|i| low + step * (i as f64 + 0.5)).collect(), vec![step; n])
         };
         let ((u, wu), (v, wv)) = (axis(limits[0]), axis(limits[1]));
         let pool = rayon::ThreadPoolBuilder::new().num_threads(1).build().expect("one thread");
-        let mut sum = 0.0;
-        let mut times: Vec<f64> = (0..repeats)
-            .map(|_| {
-                let start = Instant::now();
-                sum = black_box(pool.install(|| kernel.sum_grid(&[], &u, &wu, &v, &wv)[0]));
-                start.elapsed().as_secs_f64() * 1e9 / (n * n) as f64
-            })
-            .collect();
-        times.sort_by(f64::total_cmp);
-        let [time, ratio, difference] = match baseline.get(*name) {
-            Some(&(time, other)) => {
-                let difference = ((sum - other) / other).abs();
-                [format!("{time:.3}"), format!("{:.2}", times[0] / time), format!("{difference:.1e}")]
-            }
-            None => [(); 3].map(|()| "-".to_owned()),
-        };
-        let (fastest, median) = (times[0], times[times.len() / 2]);
-        println!("{name:<10} {fastest:>10.3} {median:>8.3} {time:>8} {ratio:>8} {difference:>12} {compile_us:>12.0}");
+        for lanes in [Lanes::Two, Lanes::Four].into_iter().filter(|lanes| lanes.is_supported()) {
+            let compiled = || Kernel::compiled_for(program.clone(), lanes).expect("small enough");
+            let compile_us =
+                (0..10 * repeats).map(|_| compiled().compile_seconds() * 1e6).fold(f64::INFINITY, f64::min);
+            let kernel = compiled();
+            let mut sum = 0.0;
+            let mut times: Vec<f64> = (0..repeats)
+                .map(|_| {
+                    let start = Instant::now();
+                    sum = black_box(pool.install(|| kernel.sum_grid(&[], &u, &wu, &v, &wv)[0]));
+                    start.elapsed().as_secs_f64() * 1e9 / (n * n) as f64
+                })
+                .collect();
+            times.sort_by(f64::total_cmp);
+            let [time, ratio, difference] = match baseline.get(*name) {
+                Some(&(time, other)) => {
+                    let difference = ((sum - other) / other).abs();
+                    [format!("{time:.3}"), format!("{:.2}", times[0] / time), format!("{difference:.1e}")]
+                }
+                None => [(); 3].map(|()| "-".to_owned()),
+            };
+            let (fastest, median) = (times[0], times[times.len() / 2]);
+            let lanes = lanes.count();
+            println!(
+                "{name:<10} {lanes:>5} {fastest:>11.3} {median:>8.3} {time:>8} {ratio:>8} {difference:>12} {compile_us:>12.0}"
+            );
+        }
     }
 }

@@ -367,6 +367,29 @@ fn speed_measures() {
     assert!(document["compile_us"].is_number());
 }
 
+/// Two lanes are everywhere; four are measured where the machine has them, else refused.
+#[test]
+fn lanes_are_measured_or_refused() {
+    let speed = |lanes: &str| {
+        let arguments =
+            ["speed", "-", "--grid", "20x20", "--scattered", "10", "--repeats", "1", "--json", "--lanes", lanes];
+        run(&arguments, Some(SPHERE))
+    };
+    let two = speed("2");
+    assert_eq!((code(&two), &document(&two)["lanes"]), (0, &serde_json::json!(2)));
+    let four = speed("4");
+    if quadrel::kernel::Lanes::Four.is_supported() {
+        assert_eq!((code(&four), &document(&four)["lanes"]), (0, &serde_json::json!(4)));
+        assert_eq!(document(&two)["grid"]["sum"], document(&four)["grid"]["sum"]);
+    } else {
+        assert_eq!(code(&four), 2);
+        assert!(text(&four.stderr).contains("--lanes 4"));
+    }
+    for wrong in ["0", "3", "8", "many"] {
+        assert_eq!(code(&speed(wrong)), 2, "{wrong}");
+    }
+}
+
 #[test]
 fn the_same_bits_for_any_number_of_threads() {
     let sheet = "s(u, v) = (u, v, sin(9*u)*cos(7*v) + abs(u - v^2)) on u in [0, 1], v in [0, 1]";

@@ -1,10 +1,10 @@
 //! Three evaluators agree: tree evaluation, block interpreter, machine code.
 //!
-//! Interpreter and machine code are equal bit for bit (NaN payloads aside). Against the tree they differ by the single
+//! Interpreter and machine code at every level of lanes are equal bit for bit (NaN payloads aside). Against the tree they differ by the single
 //! rounding of fused multiply-add; where a program has none they are equal bit for bit, else within a running error bound.
 
 use quadrel::expression::{BinaryFunction, ExpressionId, Function, Graph, Node, SymbolId, evaluate};
-use quadrel::kernel::{Engine, Instruction, Kernel, KernelError, Program};
+use quadrel::kernel::{Engine, Instruction, Kernel, KernelError, Lanes, Program};
 use std::collections::HashMap;
 
 /// xorshift64*: reproducible, with a seed for each case.
@@ -36,6 +36,12 @@ impl Random {
             _ => (self.next() >> 11) as f64 / (1u64 << 53) as f64 * 6.0 - 3.0,
         }
     }
+}
+
+/// Machine code at each level that this machine has.
+fn compiled(program: &Program) -> Vec<Kernel> {
+    let supported = [Lanes::Two, Lanes::Four].into_iter().filter(|lanes| lanes.is_supported());
+    supported.map(|lanes| Kernel::compiled_for(program.clone(), lanes).unwrap()).collect()
 }
 
 struct Formula {
@@ -123,16 +129,26 @@ fn interpreter_and_machine_code_give_the_same_bits() {
         let f = formula(&mut random, size, true);
         let program = Program::new(&f.graph, &[f.root], f.variables, &[f.parameter]).unwrap();
         let interpreted = Kernel::interpreted(program.clone());
-        let compiled = Kernel::compiled(program).unwrap();
-        assert_eq!(compiled.engine(), Engine::MachineCode);
+        let compiled = compiled(&program);
         let count = [1, 3, 64, 257, 2_051, 4_100][random.below(6)];
         let (u, v) = points(&mut random, count);
         let p = [random.number()];
         let (mut a, mut b) = (vec![0.0; count], vec![0.0; count]);
         interpreted.evaluate(&p, &u, &v, &mut a);
-        compiled.evaluate(&p, &u, &v, &mut b);
-        for i in 0..count {
-            assert!(same_bits(a[i], b[i]), "seed {seed}, point {i} ({}, {}): {} and {}", u[i], v[i], a[i], b[i]);
+        for kernel in compiled {
+            assert_eq!(kernel.engine(), Engine::MachineCode);
+            kernel.evaluate(&p, &u, &v, &mut b);
+            for i in 0..count {
+                let lanes = kernel.lanes();
+                assert!(
+                    same_bits(a[i], b[i]),
+                    "{lanes:?}, seed {seed}, point {i} ({}, {}): {} and {}",
+                    u[i],
+                    v[i],
+                    a[i],
+                    b[i]
+                );
+            }
         }
     }
 }
@@ -342,14 +358,14 @@ fn grid_sums_agree_between_engines_and_for_any_thread_count() {
     };
     let ((u, wu), (v, wv)) = (axis(531), axis(777));
     let interpreted = Kernel::interpreted(program.clone()).sum_grid(&[0.5], &u, &wu, &v, &wv);
-    let compiled = Kernel::compiled(program).unwrap();
     let mut results = Vec::new();
-    for threads in [1, 2, 4] {
-        let pool = rayon::ThreadPoolBuilder::new().num_threads(threads).build().unwrap();
-        results.push(pool.install(|| compiled.sum_grid(&[0.5], &u, &wu, &v, &wv)));
+    for kernel in compiled(&program) {
+        for threads in [1, 2, 4] {
+            let pool = rayon::ThreadPoolBuilder::new().num_threads(threads).build().unwrap();
+            results.push(pool.install(|| kernel.sum_grid(&[0.5], &u, &wu, &v, &wv)));
+            assert_eq!(results.last(), results.first(), "{:?}, {threads} threads", kernel.lanes());
+        }
     }
-    assert_eq!(results[0], results[1]);
-    assert_eq!(results[0], results[2]);
     for (a, b) in interpreted.iter().zip(&results[0]) {
         assert!((a - b).abs() <= 1e-13 * a.abs(), "{a} and {b}");
     }
@@ -425,7 +441,7 @@ fn every_kind_of_node_occurs_in_generated_formulas() {
     assert!(fused >= 5, "only {fused} fused instructions occur");
 }
 
-/// Both engines sum in one order. Against a plain sum of tree values the difference is the rounding of the sum alone,
+/// All engines sum in one order. Against a plain sum of tree values the difference is the rounding of the sum alone,
 /// because these formulas have no sums that could be fused.
 #[test]
 fn grid_sums_of_both_engines_have_the_same_bits() {
@@ -443,8 +459,12 @@ fn grid_sums_of_both_engines_have_the_same_bits() {
         let p = 0.7;
         let program = Program::new(&f.graph, &[f.root], f.variables, &[f.parameter]).unwrap();
         let interpreted = Kernel::interpreted(program.clone()).sum_grid(&[p], &u, &wu, &v, &wv)[0];
-        let compiled = Kernel::compiled(program).unwrap().sum_grid(&[p], &u, &wu, &v, &wv)[0];
-        assert!(same_bits(interpreted, compiled), "seed {seed}: {interpreted} and {compiled}");
+        let mut compiled_sum = f64::NAN;
+        for kernel in compiled(&program) {
+            compiled_sum = kernel.sum_grid(&[p], &u, &wu, &v, &wv)[0];
+            let lanes = kernel.lanes();
+            assert!(same_bits(interpreted, compiled_sum), "{lanes:?}, seed {seed}: {interpreted} and {compiled_sum}");
+        }
         if fused {
             continue;
         }
@@ -467,11 +487,151 @@ fn grid_sums_of_both_engines_have_the_same_bits() {
         }
         if size.is_finite() {
             let terms = (rows * columns) as f64;
-            assert!((sum - compiled).abs() <= terms * f64::EPSILON * size, "seed {seed}: {sum} and {compiled}");
+            assert!((sum - compiled_sum).abs() <= terms * f64::EPSILON * size, "seed {seed}: {sum} and {compiled_sum}");
             finite += 1;
         } else {
-            assert!(compiled.is_nan(), "seed {seed}: {compiled}");
+            assert!(compiled_sum.is_nan(), "seed {seed}: {compiled_sum}");
         }
     }
     assert!(finite > 20, "only {finite} sums were finite");
+}
+
+/// Arithmetic of both variables only, long enough to spill, over rows that end anywhere in a turn. Sums of all engines have
+/// the same bits. A row of one point with weight 1 shows its value: it is that of tree evaluation where nothing could be
+/// fused, up to the sign of a zero (0 + -0 is 0); a sum is NaN where a value is not finite.
+#[test]
+fn short_rows_at_the_edges_of_the_format() {
+    let (mut finite, mut undefined) = (0, 0);
+    for seed in 1..300u64 {
+        let mut random = Random(seed.wrapping_mul(0x9FB2_1C65_1E98_DF25));
+        let fused = random.below(2) == 0;
+        let size = 3 + random.below(120);
+        let (f, outputs) = arithmetic(&mut random, size, fused);
+        let program = Program::new(&f.graph, &outputs, f.variables, &[f.parameter]).unwrap();
+        let interpreted = Kernel::interpreted(program.clone());
+        let kernels = compiled(&program);
+        let p = random.number();
+        for columns in 0..=9 {
+            let (v, u) = points(&mut random, columns);
+            let (u, weights) = ([u.first().copied().unwrap_or(0.3)], vec![1.0; columns]);
+            let expected = interpreted.sum_grid(&[p], &u, &[1.0], &v, &weights);
+            for kernel in &kernels {
+                let sums = kernel.sum_grid(&[p], &u, &[1.0], &v, &weights);
+                let lanes = kernel.lanes();
+                for (k, (&sum, &other)) in sums.iter().zip(&expected).enumerate() {
+                    let place = format!("{lanes:?}, seed {seed}, {columns} columns, value {k}");
+                    assert!(same_bits(sum, other), "{place}: {sum} and {other}");
+                }
+                if columns != 1 || fused {
+                    continue;
+                }
+                let at = |s: SymbolId| {
+                    if s == f.variables[0] {
+                        u[0]
+                    } else if s == f.variables[1] {
+                        v[0]
+                    } else {
+                        p
+                    }
+                };
+                for (&sum, tree) in sums.iter().zip(evaluate(&f.graph, &outputs, at)) {
+                    let same = if tree.is_finite() { sum == tree } else { sum.is_nan() };
+                    assert!(same, "{lanes:?}, seed {seed}: {sum} and tree {tree}");
+                    finite += usize::from(tree.is_finite());
+                    undefined += usize::from(tree.is_nan());
+                }
+            }
+        }
+    }
+    assert!(finite > 1_000 && undefined > 100, "{finite} finite and {undefined} undefined values were checked");
+}
+
+/// Values without functions of the table, so that all of them are one loop; each may use any before it, so that many are
+/// alive at a time.
+fn arithmetic(random: &mut Random, size: usize, fused: bool) -> (Formula, Vec<ExpressionId>) {
+    let mut graph = Graph::new();
+    let variables = [graph.new_symbol("u"), graph.new_symbol("v")];
+    let parameter = graph.new_symbol("p");
+    let mut values: Vec<ExpressionId> =
+        [variables[0], variables[1], parameter].into_iter().map(|symbol| graph.symbol(symbol)).collect();
+    values.push(graph.fraction(3, 7));
+    values.push(graph.multiply(values[0], values[1]));
+    for _ in 0..size {
+        let mut pick = || values[random.below(values.len())];
+        let (a, b, c) = (pick(), pick(), pick());
+        let value = match random.below(11) {
+            0 | 1 if fused => {
+                let product = graph.multiply(a, b);
+                graph.add(product, c)
+            }
+            2 if fused => {
+                let product = graph.multiply(a, b);
+                graph.subtract(c, product)
+            }
+            0..=3 => graph.multiply(a, b),
+            4 => graph.divide(a, b),
+            5 => graph.negate(a),
+            6 => graph.call(Function::Sqrt, a),
+            7 => graph.call(Function::Abs, a),
+            8 => graph.call2(BinaryFunction::NAMED[2 + random.below(2)], a, b),
+            _ => {
+                let (less, not_more) = (graph.less(a, b), graph.less_equal(b, c));
+                let opposite = graph.not(not_more);
+                let condition = if random.below(2) == 0 { graph.and(less, opposite) } else { graph.or(less, opposite) };
+                graph.select(condition, b, c)
+            }
+        };
+        values.push(value);
+    }
+    let root = values[values.len() - 1];
+    (Formula { graph, root, variables, parameter }, values)
+}
+
+/// More outputs than sums in registers, and more tables than pointers in registers: sum over j of wv[j] v[j]^k u, which is
+/// u times sums of powers of small integers, exact in every order (Nicomachus and elementary algebra: 1 + ... + n = n (n + 1)/2,
+/// 1 + ... + n^2 = n (n + 1) (2 n + 1)/6, 1 + ... + n^3 = (n (n + 1)/2)^2).
+#[test]
+fn many_outputs_and_many_tables() {
+    let mut graph = Graph::new();
+    let variables = [graph.new_symbol("u"), graph.new_symbol("v")];
+    let (u, v) = (graph.symbol(variables[0]), graph.symbol(variables[1]));
+    let mut outputs = Vec::new();
+    let mut all = graph.multiply(u, v);
+    for power in 1..=12 {
+        let exponent = graph.integer(power);
+        let table = graph.power(v, exponent);
+        let product = graph.multiply(u, table);
+        all = graph.add(all, product);
+        outputs.push(product);
+    }
+    outputs.push(all);
+    outputs.push(v);
+    outputs.push(u);
+    let program = Program::new(&graph, &outputs, variables, &[]).unwrap();
+    let nodes: Vec<f64> = (1..=7).map(f64::from).collect();
+    for kernel in compiled(&program) {
+        let sums = kernel.sum_grid(&[], &[2.0, 3.0], &[1.0; 2], &nodes, &[1.0; 7]);
+        assert_eq!(sums[..3], [5.0 * 28.0, 5.0 * 140.0, 5.0 * 784.0], "{:?}", kernel.lanes());
+        assert_eq!(sums[12], 5.0 * 28.0 + sums[..12].iter().sum::<f64>(), "{:?}", kernel.lanes());
+        assert_eq!(sums[13..], [2.0 * 28.0, 7.0 * 5.0]);
+    }
+}
+
+#[test]
+fn lanes_that_the_machine_has_not_are_refused() {
+    let mut graph = Graph::new();
+    let variables = [graph.new_symbol("u"), graph.new_symbol("v")];
+    let root = graph.symbol(variables[0]);
+    let program = Program::new(&graph, &[root], variables, &[]).unwrap();
+    for lanes in [Lanes::Two, Lanes::Four] {
+        match Kernel::compiled_for(program.clone(), lanes) {
+            Ok(kernel) => assert!(lanes.is_supported() && kernel.lanes() == Some(lanes)),
+            Err(error) => {
+                assert!(!lanes.is_supported(), "{error}");
+                assert_eq!(error, KernelError::UnsupportedLanes(lanes.count()));
+            }
+        }
+    }
+    assert!(Lanes::widest().is_supported());
+    assert_eq!(Kernel::interpreted(program).lanes(), None);
 }

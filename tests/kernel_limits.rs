@@ -1,7 +1,7 @@
 //! Kernels at their limits: long formulas, wrong lengths, undefined values, several threads.
 
 use quadrel::expression::{BinaryFunction, ExpressionId, Function, Graph, SymbolId};
-use quadrel::kernel::{Engine, Kernel, KernelError, Program};
+use quadrel::kernel::{Engine, Kernel, KernelError, Lanes, Program};
 use std::panic::{AssertUnwindSafe, catch_unwind};
 
 struct Plane {
@@ -47,14 +47,27 @@ impl Plane {
     }
 }
 
-/// Values at 5 points and the sum over a 3 x 5 grid of unit weights, by the engine that is chosen for many points.
+/// Machine code at each level that this machine has.
+fn compiled(program: &Program) -> impl Iterator<Item = Kernel> {
+    let supported = [Lanes::Two, Lanes::Four].into_iter().filter(|lanes| lanes.is_supported());
+    supported.filter_map(|lanes| Kernel::compiled_for(program.clone(), lanes).ok())
+}
+
+/// Values at 5 points and the sum over a 3 x 5 grid of unit weights, by the engine that is chosen for many points;
+/// where that is machine code, every level of lanes gives the same.
 fn by_best_engine(program: Program, u: f64, v: f64) -> (Engine, f64, f64) {
-    let kernel = Kernel::new(program, u64::MAX);
-    let mut out = [0.0; 5];
-    kernel.evaluate(&[], &[u; 5], &[v; 5], &mut out);
-    assert!(out.iter().all(|value| value.to_bits() == out[0].to_bits()));
-    let sum = kernel.sum_grid(&[], &[u; 3], &[1.0; 3], &[v; 5], &[1.0; 5])[0];
-    (kernel.engine(), out[0], sum)
+    let kernel = Kernel::new(program.clone(), u64::MAX);
+    let results = |kernel: &Kernel| {
+        let mut out = [0.0; 5];
+        kernel.evaluate(&[], &[u; 5], &[v; 5], &mut out);
+        assert!(out.iter().all(|value| value.to_bits() == out[0].to_bits()));
+        (out[0], kernel.sum_grid(&[], &[u; 3], &[1.0; 3], &[v; 5], &[1.0; 5])[0])
+    };
+    let (value, sum) = results(&kernel);
+    for other in compiled(&program) {
+        assert_eq!(results(&other), (value, sum), "{:?}", other.lanes());
+    }
+    (kernel.engine(), value, sum)
 }
 
 /// Sum over k <= n of (u + k) v = v (n u + n (n + 1)/2), elementary algebra. At u = 1/2, v = 1/4 every partial sum is a
@@ -152,7 +165,7 @@ fn wrong_lengths_are_named_before_any_code_runs() {
     let uv = plane.graph.multiply(plane.u, plane.v);
     let root = plane.graph.add(uv, p);
     let program = Program::new(&plane.graph, &[root], plane.variables, &[parameter]).unwrap();
-    for kernel in [Kernel::interpreted(program.clone()), Kernel::compiled(program).unwrap()] {
+    for kernel in std::iter::once(Kernel::interpreted(program.clone())).chain(compiled(&program)) {
         let evaluate = |parameters: &[f64], u: usize, v: usize, out: usize| {
             kernel.evaluate(parameters, &vec![1.0; u], &vec![1.0; v], &mut vec![0.0; out]);
         };
@@ -211,7 +224,7 @@ fn undefined_values_and_signed_zeros() {
         (5e-324, 0.5, [2.2227587494850775e-162, 1e-323, 5e-324, 0.5, 5e-324, -5e-324, 5e-324, 1.0]),
     ];
     let program = Program::new(&plane.graph, &roots, plane.variables, &[]).unwrap();
-    for kernel in [Kernel::interpreted(program.clone()), Kernel::compiled(program).unwrap()] {
+    for kernel in std::iter::once(Kernel::interpreted(program.clone())).chain(compiled(&program)) {
         let us: Vec<f64> = cases.iter().map(|case| case.0).collect();
         let vs: Vec<f64> = cases.iter().map(|case| case.1).collect();
         let mut out = vec![0.0; us.len() * roots.len()];

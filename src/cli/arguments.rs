@@ -1,5 +1,6 @@
 //! The arguments; help, man page and completions come from here.
 
+use crate::kernel::Lanes;
 use clap::{Args, Parser, Subcommand, ValueEnum};
 use std::path::PathBuf;
 
@@ -181,6 +182,9 @@ pub struct SpeedOptions {
     /// Evaluate the closed form of dA where it is accurate (on), or the norm of the cross product (off).
     #[arg(long, value_enum, default_value_t = SimplifyOption::On)]
     pub simplify: SimplifyOption,
+    /// Points in one vector of the machine code, 2 or 4. Default: as many as this machine has
+    #[arg(long, value_parser = lanes)]
+    pub lanes: Option<Lanes>,
     /// Give a parameter another value; a bare number takes the unit that the sheet wrote. May be repeated.
     #[arg(long = "set", value_name = "NAME=VALUE")]
     pub set: Vec<String>,
@@ -202,6 +206,14 @@ fn tolerance(text: &str) -> Result<f64, String> {
     match text.parse::<f64>() {
         Ok(value) if value.is_finite() && value >= 0.0 => Ok(value),
         _ => Err("a tolerance is a number of at least 0, such as 1e-9".to_owned()),
+    }
+}
+
+fn lanes(text: &str) -> Result<Lanes, String> {
+    match text {
+        "2" => Ok(Lanes::Two),
+        "4" => Ok(Lanes::Four),
+        _ => Err("lanes are 2 or 4".to_owned()),
     }
 }
 

@@ -2,7 +2,8 @@
 
 use super::arguments::{SimplifyOption, SpeedOptions};
 use super::{Exit, Failure, choose_patch, load, output, set_echo};
-use crate::integrals::SpeedRun;
+use crate::integrals::{SpeedRun, SpeedSettings};
+use crate::kernel::Lanes;
 use serde_json::json;
 
 /// Largest grid and largest number of scattered points.
@@ -21,14 +22,22 @@ pub(super) fn run(options: &SpeedOptions) -> Result<Exit, Failure> {
     if options.repeats == 0 || options.threads == 0 {
         return Err(Failure::Usage("--repeats and --threads are at least 1".to_owned()));
     }
+    let lanes = options.lanes.unwrap_or_else(Lanes::widest);
+    if !lanes.is_supported() {
+        return Err(Failure::Usage(unsupported(lanes)));
+    }
+    let settings = SpeedSettings {
+        grid: options.grid,
+        scattered: options.scattered,
+        repeats: options.repeats,
+        simplify: options.simplify == SimplifyOption::On,
+        lanes,
+    };
     let measured = rayon::ThreadPoolBuilder::new()
         .num_threads(options.threads)
         .build()
         .map_err(|error| Failure::Usage(format!("--threads {}: {error}", options.threads)))?
-        .install(|| {
-            let simplify = options.simplify == SimplifyOption::On;
-            SpeedRun::measure(&model, &bindings, patch, options.grid, options.scattered, options.repeats, simplify)
-        })?;
+        .install(|| SpeedRun::measure(&model, &bindings, patch, &settings))?;
     if options.json {
         output::print_json(&json!({
             "schema": "quadrel/1",
@@ -47,6 +56,7 @@ pub(super) fn run(options: &SpeedOptions) -> Result<Exit, Failure> {
                 "route": measured.route,
             },
             "formula": measured.formula,
+            "lanes": measured.lanes,
             "instructions": measured.instructions,
             "mixed_instructions": measured.mixed_instructions,
             "compile_us": measured.compile_seconds * 1e6,
@@ -55,6 +65,10 @@ pub(super) fn run(options: &SpeedOptions) -> Result<Exit, Failure> {
         }));
     } else {
         output::print(&set_echo(&model, &bindings, &options.set));
+        let route = match measured.lanes {
+            Some(lanes) => format!("{} for {lanes} lanes", measured.route),
+            None => measured.route.to_owned(),
+        };
         output::print(&format!(
             "patch {}, {}: {} instructions of which {} depend on both variables, {}, compiled in {:.0} us\n\
              sum of dA on a {first}x{second} grid: {:.3} ns per point (median {:.3}), sum {}\n\
@@ -64,7 +78,7 @@ pub(super) fn run(options: &SpeedOptions) -> Result<Exit, Failure> {
             measured.formula,
             measured.instructions,
             measured.mixed_instructions,
-            measured.route,
+            route,
             measured.compile_seconds * 1e6,
             measured.grid.fastest,
             measured.grid.median,
@@ -78,4 +92,13 @@ pub(super) fn run(options: &SpeedOptions) -> Result<Exit, Failure> {
         ));
     }
     Ok(Exit::Reached)
+}
+
+/// What a user reads who asks for vectors that the machine has not.
+fn unsupported(lanes: Lanes) -> String {
+    format!(
+        "--lanes {}: this machine has no such vectors (they need x86-64 with AVX2 and FMA)\nhint: leave --lanes out, or \
+         take --lanes 2",
+        lanes.count()
+    )
 }

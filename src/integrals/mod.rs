@@ -21,4 +21,4 @@ pub use error::{IntegralError, NoProgress, Place, Progress};
 pub use exact::fifteen_digits;
 pub use nodes::{NodeRow, NodesError, SurfaceNodes};
 pub use outcome::{Answer, AnswerFailure, AnswerKind, Component, Principal, Settings};
-pub use speed::{SpeedRun, Timing};
+pub use speed::{SpeedRun, SpeedSettings, Timing};

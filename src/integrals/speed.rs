@@ -3,7 +3,7 @@
 use super::error::IntegralError;
 use crate::expression::{SymbolId, evaluate};
 use crate::geometry::Surface;
-use crate::kernel::{Engine, Kernel, Program};
+use crate::kernel::{Kernel, KernelError, Lanes, Program};
 use crate::language::{Bindings, Bound, Model, PatchId};
 use crate::simplify::evaluation_form;
 use std::hint::black_box;
@@ -33,28 +33,45 @@ pub struct SpeedRun {
     pub formula: &'static str,
     /// Which engine ran.
     pub route: &'static str,
+    /// Points in one vector of the machine code.
+    pub lanes: Option<usize>,
     /// Instructions of the kernel.
     pub instructions: usize,
     /// Instructions that depend on both variables.
     pub mixed_instructions: usize,
 }
 
+/// What is measured, and how.
+#[derive(Clone, Copy, PartialEq, Eq, Debug)]
+pub struct SpeedSettings {
+    /// Points of the midpoint grid in each variable.
+    pub grid: (usize, usize),
+    /// Number of scattered points.
+    pub scattered: usize,
+    /// Repeats; the fastest counts.
+    pub repeats: usize,
+    /// Whether the closed form of dA is evaluated where it is accurate.
+    pub simplify: bool,
+    /// Points in one vector of the machine code.
+    pub lanes: Lanes,
+}
+
 impl SpeedRun {
-    /// Measures the area element of a patch on a grid and at scattered points, `simplify` allows its closed form.
+    /// Measures the area element of a patch on a grid and at scattered points; with the interpreter where the formula is too
+    /// large for machine code.
     ///
     /// # Errors
-    /// For limits that are infinite or depend on a variable, and formulas that are too large.
+    /// For limits that are infinite or depend on a variable, formulas that are too large, and lanes that the machine has
+    /// not.
     pub fn measure(
         model: &Model,
         bindings: &Bindings,
         patch: PatchId,
-        grid: (usize, usize),
-        scattered: usize,
-        repeats: usize,
-        simplify: bool,
+        settings: &SpeedSettings,
     ) -> Result<Self, IntegralError> {
         let id = patch;
         let patch = &model.patches[id.0];
+        let &SpeedSettings { grid, scattered, repeats, simplify, lanes } = settings;
         let mut graph = model.graph.clone();
         let norm = Surface::new(&mut graph, patch).element;
         let value_of = |symbol| bindings.value(symbol);
@@ -63,10 +80,12 @@ impl SpeedRun {
         let parameters: Vec<SymbolId> =
             graph.symbols_of(&outputs).into_iter().filter(|symbol| !patch.variables.contains(symbol)).collect();
         let values: Vec<f64> = parameters.iter().map(|&symbol| bindings.value(symbol)).collect();
-        let fail =
-            |error: crate::kernel::KernelError| IntegralError::new("formula", format!("{}: {error}", patch.name));
+        let fail = |error: KernelError| IntegralError::new("formula", format!("{}: {error}", patch.name));
         let program = Program::new(&graph, &outputs, patch.variables, &parameters).map_err(fail)?;
-        let kernel = Kernel::new(program, u64::MAX);
+        let kernel = match Kernel::compiled_for(program.clone(), lanes) {
+            Err(KernelError::TooLargeToCompile(_)) => Kernel::interpreted(program),
+            kernel => kernel.map_err(fail)?,
+        };
         let mut limits = [(0.0, 0.0); 2];
         for (limit, interval) in limits.iter_mut().zip(&patch.intervals) {
             let (Bound::Finite(lower), Bound::Finite(upper)) = (interval.lower, interval.upper) else {
@@ -108,10 +127,8 @@ impl SpeedRun {
             scattered: timing(scattered_times, scattered.max(1)),
             compile_seconds: kernel.compile_seconds(),
             formula: if closed.is_some() { "closed form" } else { "norm of the cross product" },
-            route: match kernel.engine() {
-                Engine::MachineCode => "machine code",
-                Engine::Interpreter => "interpreter",
-            },
+            route: if kernel.lanes().is_some() { "machine code" } else { "interpreter" },
+            lanes: kernel.lanes().map(Lanes::count),
             instructions: kernel.program().len(),
             mixed_instructions: kernel.program().mixed_count(),
         })

@@ -2,7 +2,8 @@
 
 use super::interpreter::{Interpreter, run};
 use super::kernel::Kernel;
-use super::machine_code::{Buffers, Code, Sink, TURN};
+use super::machine_code::{Buffers, Code, Lanes};
+use super::plan::{Sink, TURN};
 use super::program::{KernelError, MixedPart, Program, Stage, ValueId};
 use rayon::prelude::*;
 
@@ -23,14 +24,14 @@ pub(super) struct RowCode {
 }
 
 impl RowCode {
-    pub(super) fn compile(program: &Program) -> Result<Self, KernelError> {
+    pub(super) fn compile(program: &Program, lanes: Lanes) -> Result<Self, KernelError> {
         let stage = |value: ValueId| program.stages()[value.index()];
         let body: Vec<ValueId> = (0..program.len())
             .map(|index| ValueId(index as u32))
             .filter(|&value| stage(value) == Stage::Mixed)
             .collect();
         let is_table = |value: ValueId| stage(value) == Stage::Second;
-        let code = Code::compile(program, &body, program.outputs(), is_table, Sink::WeightedSum)?;
+        let code = Code::compile(program, &body, program.outputs(), is_table, Sink::WeightedSum, lanes)?;
         Ok(Self {
             row_values: program.restricted(code.uniforms().to_vec()),
             table_values: program.restricted(code.arrays().to_vec()),
@@ -52,7 +53,7 @@ impl Kernel {
     /// Sums over a product grid: sum over i, j of `wu[i] * wv[j] * f_k(u[i], v[j])` for each output k.
     ///
     /// The order of summation is fixed: four partial sums along a row, rows one after the other in blocks of 16, blocks in
-    /// order with compensation. So the bits depend neither on the number of threads nor on the engine. A sum is NaN where
+    /// order with compensation. So the bits depend neither on the number of threads nor on the engine or its lanes. A sum is NaN where
     /// a value is not finite.
     ///
     /// # Panics
@@ -160,24 +161,27 @@ impl<'a> CompiledGrid<'a> {
         let code = &self.code.code;
         let mut buffers: Buffers = code.buffers();
         let mut totals = vec![0.0; outputs];
+        let mut partial = vec![0.0; TURN * outputs];
+        // Nothing is allocated for a row: that would cost as much as a tenth of its points.
         let size = self.weights.len();
-        let rows = block * ROWS..((block + 1) * ROWS).min(wu.len());
-        for (row, &row_weight) in wu.iter().enumerate().take(rows.end).skip(rows.start) {
+        let columns: Vec<(Vec<&[f64]>, &[f64])> = (0..size)
+            .step_by(code.block())
+            .map(|start| start..(start + code.block()).min(size))
+            .map(|range| {
+                (self.tables.iter().map(|table| &table[range.clone()]).collect(), &self.weights[range.clone()])
+            })
+            .collect();
+        for (row, &row_weight) in wu.iter().enumerate().skip(block * ROWS).take(ROWS) {
             let mut next = 0;
             code.set_uniforms(&mut buffers, |_| {
                 next += 1;
                 self.row_values[next - 1][row]
             });
-            let mut partial = vec![[0.0; TURN]; outputs];
-            let mut start = 0;
-            while start < size {
-                let end = (start + code.block()).min(size);
-                let arrays: Vec<&[f64]> = self.tables.iter().map(|table| &table[start..end]).collect();
-                let mut sums: Vec<&mut [f64]> = partial.iter_mut().map(|sums| &mut sums[..]).collect();
-                code.run(&mut buffers, &arrays, &self.weights[start..end], &mut sums);
-                start = end;
+            partial.fill(0.0);
+            for (arrays, weights) in &columns {
+                code.run(&mut buffers, arrays, weights, &mut partial, TURN);
             }
-            for (total, partial) in totals.iter_mut().zip(&partial) {
+            for (total, partial) in totals.iter_mut().zip(partial.as_chunks::<TURN>().0) {
                 *total += row_weight * row_sum(partial);
             }
         }

@@ -2,7 +2,8 @@
 
 use super::grid::RowCode;
 use super::interpreter::run;
-use super::machine_code::{Code, MAXIMUM_BODY, Sink, TURN};
+use super::machine_code::{Code, Lanes, MAXIMUM_BODY};
+use super::plan::{Sink, TURN};
 use super::program::{Instruction, KernelError, Program, Stage, ValueId};
 use std::sync::OnceLock;
 use std::sync::atomic::{AtomicU64, Ordering};
@@ -22,7 +23,8 @@ const COMPILE_ABOVE: u64 = 100_000;
 
 /// A formula, or several that share their parts, ready to be evaluated at many points.
 ///
-/// Parameters are inputs: a change of their values needs nothing but another call. Both engines give the same bits.
+/// Parameters are inputs: a change of their values needs nothing but another call. Both engines give the same bits, machine
+/// code at any level of [`Lanes`].
 ///
 /// # Examples
 /// ```
@@ -43,7 +45,8 @@ const COMPILE_ABOVE: u64 = 100_000;
 #[derive(Debug)]
 pub struct Kernel {
     program: Program,
-    compile: bool,
+    /// Lanes of the machine code; none if the program is interpreted.
+    compiled: Option<Lanes>,
     points: OnceLock<Result<Code, KernelError>>,
     rows: OnceLock<Result<RowCode, KernelError>>,
     compile_nanoseconds: AtomicU64,
@@ -54,23 +57,31 @@ impl Kernel {
     pub fn interpreted(program: Program) -> Self {
         Self {
             program,
-            compile: false,
+            compiled: None,
             points: OnceLock::new(),
             rows: OnceLock::new(),
             compile_nanoseconds: AtomicU64::new(0),
         }
     }
 
-    /// A kernel of machine code.
+    /// A kernel of machine code, as wide as the machine allows.
     ///
     /// # Errors
     /// If the program is too large to compile or the code generator refuses.
     pub fn compiled(program: Program) -> Result<Self, KernelError> {
+        Self::compiled_for(program, Lanes::widest())
+    }
+
+    /// A kernel of machine code for a level of lanes.
+    ///
+    /// # Errors
+    /// If the machine has no such level, the program is too large to compile, or the code generator refuses.
+    pub fn compiled_for(program: Program, lanes: Lanes) -> Result<Self, KernelError> {
         let body = point_body(&program).count();
         if body > MAXIMUM_BODY {
             return Err(KernelError::TooLargeToCompile(body));
         }
-        let kernel = Self { compile: true, ..Self::interpreted(program) };
+        let kernel = Self { compiled: Some(lanes), ..Self::interpreted(program) };
         match kernel.rows() {
             Some(_) => Ok(kernel),
             None => match kernel.rows.into_inner() {
@@ -84,7 +95,8 @@ impl Kernel {
     pub fn new(program: Program, expected_points: u64) -> Self {
         // Scattered points have the larger body: where it fits, rows fit too, and one engine runs all of the kernel.
         let fits = point_body(&program).count() <= MAXIMUM_BODY;
-        Self { compile: fits && expected_points >= COMPILE_ABOVE, ..Self::interpreted(program) }
+        let compiled = (fits && expected_points >= COMPILE_ABOVE).then(Lanes::widest);
+        Self { compiled, ..Self::interpreted(program) }
     }
 
     /// The program that is evaluated.
@@ -97,6 +109,11 @@ impl Kernel {
         if self.rows().is_some() { Engine::MachineCode } else { Engine::Interpreter }
     }
 
+    /// Lanes of the machine code, if that runs the program.
+    pub fn lanes(&self) -> Option<Lanes> {
+        self.compiled.filter(|_| self.rows().is_some())
+    }
+
     /// Seconds that the last compilation took, from program to callable code; 0 if nothing was compiled.
     pub fn compile_seconds(&self) -> f64 {
         self.compile_nanoseconds.load(Ordering::Relaxed) as f64 * 1e-9
@@ -104,22 +121,18 @@ impl Kernel {
 
     /// Code for rows of a product grid.
     pub(super) fn rows(&self) -> Option<&RowCode> {
-        if !self.compile {
-            return None;
-        }
-        self.rows.get_or_init(|| self.timed(|| RowCode::compile(&self.program))).as_ref().ok()
+        let lanes = self.compiled?;
+        self.rows.get_or_init(|| self.timed(|| RowCode::compile(&self.program, lanes))).as_ref().ok()
     }
 
     /// Code for scattered points.
     fn points(&self) -> Option<&Code> {
-        if !self.compile {
-            return None;
-        }
+        let lanes = self.compiled?;
         let compile = || {
             let program = &self.program;
             let is_variable = |value: ValueId| is_variable(program, value);
             let body: Vec<ValueId> = point_body(program).collect();
-            Code::compile(program, &body, program.outputs(), is_variable, Sink::Store)
+            Code::compile(program, &body, program.outputs(), is_variable, Sink::Store, lanes)
         };
         self.points.get_or_init(|| self.timed(compile)).as_ref().ok()
     }
@@ -188,12 +201,9 @@ impl Kernel {
                 return;
             }
             if whole {
-                let mut outputs: Vec<&mut [f64]> =
-                    out.chunks_exact_mut(count).map(|output| &mut output[start..start + length]).collect();
-                code.run(&mut buffers, &arrays, &[], &mut outputs);
+                code.run(&mut buffers, &arrays, &[], &mut out[start..], count);
             } else {
-                let mut outputs: Vec<&mut [f64]> = tail.chunks_exact_mut(block).collect();
-                code.run(&mut buffers, &arrays, &[], &mut outputs);
+                code.run(&mut buffers, &arrays, &[], &mut tail, block);
                 for (output, values) in out.chunks_exact_mut(count).zip(tail.chunks_exact(block)) {
                     output[start..start + length].copy_from_slice(&values[..length]);
                 }

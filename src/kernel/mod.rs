@@ -8,7 +8,12 @@ mod interpreter;
 #[expect(clippy::module_inception, reason = "the folder is named after the type that it is about")]
 mod kernel;
 mod machine_code;
+mod narrow_code;
+mod plan;
 mod program;
+mod vex;
+mod wide_code;
 
 pub use kernel::{Engine, Kernel};
+pub use machine_code::Lanes;
 pub use program::{Instruction, KernelError, Program, Stage, ValueId};

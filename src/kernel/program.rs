@@ -156,6 +156,9 @@ pub enum KernelError {
     /// The formula is larger than what is worth compiling; the interpreter takes it.
     #[error("the formula has {0} instructions, too many to compile")]
     TooLargeToCompile(usize),
+    /// The machine has no vectors of so many lanes.
+    #[error("this machine has no vectors of {0} lanes")]
+    UnsupportedLanes(usize),
     /// The code generator refused.
     #[error("code generation failed: {0}")]
     CodeGeneration(String),
