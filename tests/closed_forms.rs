@@ -5,7 +5,7 @@ mod support;
 
 use quadrel::expression::evaluate;
 use quadrel::language::{Model, PatchId, Source, check};
-use quadrel::simplify::{ClosedForms, Fact, Form, Quantity, closed_forms, element_form};
+use quadrel::simplify::{ClosedForms, ElementForm, Fact, Form, Quantity, closed_forms, element_form};
 use serde_json::Value;
 use support::{Formulas, Random};
 
@@ -169,7 +169,7 @@ fn exact_areas_are_those_of_the_literature() {
     assert!(found >= 20, "{found} of {known}");
 }
 
-fn element(sheet: &str) -> (Form, Vec<String>) {
+fn element(sheet: &str) -> ElementForm {
     element_form(&checked(sheet), PatchId(0)).expect("a form")
 }
 
@@ -192,7 +192,7 @@ fn absolute_values_stay_where_the_sign_can_change() {
         // 2 + u^2 - u > 0
         ("s(u, v) = ((2 + u^3 - u)*cos(v), (2 + u^3 - u)*sin(v), u) on u in [-1, 1], v in [0, 2*pi]".to_owned(), false),
     ] {
-        let (form, _) = element(&sheet);
+        let ElementForm { form, .. } = element(&sheet);
         if stays {
             assert!(form.text().contains("abs("), "{sheet}\n{}", form.text());
         } else {
@@ -206,7 +206,7 @@ fn absolute_values_stay_where_the_sign_can_change() {
 #[test]
 fn conditions_are_named() {
     let sheet = "R = 3\nr = 1\ns(u, v) = ((R + r*cos(u))*cos(v), (R + r*cos(u))*sin(v), r*sin(u)) on u in [0, 2*pi], v in [0, 2*pi]";
-    let (form, conditions) = element(sheet);
+    let ElementForm { form, conditions } = element(sheet);
     assert_eq!(form.text(), "r*(R + r*cos(u))");
     assert!(conditions.iter().any(|condition| condition.contains("R > r")), "{conditions:?}");
 }
@@ -215,9 +215,9 @@ fn conditions_are_named() {
 #[test]
 fn decimals_are_printed_as_typed() {
     let sheet = "s(u, v) = (6378137*cos(u)*cos(v), 6378137*cos(u)*sin(v), 6378137*sin(u)) on u in [-pi/2, pi/2], v in [0, 2*pi]";
-    assert_eq!(element(sheet).0.text(), "6378137^2*cos(u)");
+    assert_eq!(element(sheet).form.text(), "6378137^2*cos(u)");
     let sheet = "s(u, v) = (u*cos(v), u*sin(v), 0.00669437999014*u^2) on u in [0, 1], v in [0, 2*pi]";
-    assert_eq!(element(sheet).0.text(), "u*sqrt(1 + (2*0.00669437999014*u)^2)");
+    assert_eq!(element(sheet).form.text(), "u*sqrt(1 + (2*0.00669437999014*u)^2)");
 }
 
 /// The tube about a curve, written with `diff`: the root over the Frenet frame goes.
@@ -227,7 +227,7 @@ fn a_tube_by_diff_has_no_root_of_both_variables() {
         c(t) = (R*cos(t), R*sin(t), h*t)\nd1(t) = diff(c(t), t)\nb(t) = unit(cross(d1(t), diff(d1(t), t)))\n\
         n(t) = cross(b(t), unit(d1(t)))\n\
         s(v, u) = c(u) + r*(cos(v)*n(u) + sin(v)*b(u)) on v in [0, 2*pi], u in [0, 2*pi]";
-    let (form, _) = element(sheet);
+    let ElementForm { form, .. } = element(sheet);
     assert!(form.operations() <= 13, "{}", form.text());
     assert!(!form.text().contains("sqrt(") || !form.text().contains("sqrt((R"), "{}", form.text());
 }
@@ -243,7 +243,7 @@ fn generated_patches() {
         let sheet = generated(&mut random);
         let model = checked(&sheet);
         let raw = raw_operations(&model);
-        let Some((form, _)) = element_form(&model, PatchId(0)) else { continue };
+        let Some(ElementForm { form, .. }) = element_form(&model, PatchId(0)) else { continue };
         assert!(form.operations() <= raw, "{sheet}\n{}", form.text());
         compare(&model, &form, &sheet);
         shortening.push(form.operations() as f64 / raw as f64);

@@ -5,7 +5,7 @@ use crate::expression::{SymbolId, evaluate};
 use crate::geometry::Surface;
 use crate::kernel::{Kernel, KernelError, Lanes, Program};
 use crate::language::{Bindings, Bound, Model, PatchId};
-use crate::simplify::evaluation_form;
+use crate::simplify::{element_form, evaluation_form};
 use std::hint::black_box;
 use std::time::Instant;
 
@@ -75,7 +75,8 @@ impl SpeedRun {
         let mut graph = model.graph.clone();
         let norm = Surface::new(&mut graph, patch).element;
         let value_of = |symbol| bindings.value(symbol);
-        let closed = if simplify { evaluation_form(model, id, &mut graph, norm, &value_of) } else { None };
+        let form = if simplify { element_form(model, id) } else { None };
+        let closed = form.and_then(|form| evaluation_form(model, id, &mut graph, norm, &value_of, &form));
         let outputs = [closed.unwrap_or(norm)];
         let parameters: Vec<SymbolId> =
             graph.symbols_of(&outputs).into_iter().filter(|symbol| !patch.variables.contains(symbol)).collect();

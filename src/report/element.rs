@@ -76,7 +76,9 @@ impl ElementReport {
         let gauss = surface.gauss_curvature(&mut graph);
         let mean = surface.mean_curvature(&mut graph);
         let closed = closed_forms(model, id);
-        let evaluated = evaluation_form(model, id, &mut graph, surface.element, &|symbol| bindings.value(symbol));
+        let evaluated = closed.element().and_then(|element| {
+            evaluation_form(model, id, &mut graph, surface.element, &|symbol| bindings.value(symbol), &element)
+        });
 
         let variables = patch.variables.map(|variable| graph.symbol_name(variable).to_owned());
         let axes = [0, 1, 2];

@@ -12,8 +12,9 @@ use super::form::Form;
 use super::forms::Quantity;
 use super::fraction::{Fraction, common_denominator, raised};
 use super::gcd::gcd;
+use super::laurent::{Laurent, single_generator};
 use super::meter::{Exhausted, Step};
-use super::plan::{Laurent, Printer, single_generator};
+use super::plan::Printer;
 use super::polynomial::{GENERATORS, Polynomial};
 use super::product::{Exponent, flipped, is_negative, product, ratio};
 use super::read::{Arguments, Purpose, Reader};
@@ -245,7 +246,7 @@ impl<'a> Elements<'a> {
     /// polynomial in the pair becomes a form in S and C, where factors are unique.
     fn half_angles(&mut self, product: &Product) -> Step<Vec<Product>> {
         let mut found = Vec::new();
-        for pair in self.ring().pairs() {
+        for pair in self.ring().pairs().collect::<Vec<_>>() {
             if !product.root.uses(pair.sine) && !product.root.uses(pair.cosine) {
                 continue;
             }

@@ -93,16 +93,29 @@ impl Form {
         }
     }
 
-    /// The number of sums in the form.
-    pub(super) fn sums(&self) -> usize {
+    /// Whether it is shorter, or as long and reads better.
+    pub(super) fn is_better_than(&self, other: &Self) -> bool {
+        let order = self.operations().cmp(&other.operations());
+        order.then_with(|| self.clutter().cmp(&other.clutter())).is_lt()
+    }
+
+    /// How many sums, and how many numbers besides exponents: of equally long forms the one with fewer reads better.
+    pub(super) fn clutter(&self) -> (usize, usize) {
+        let total = |forms: &mut dyn Iterator<Item = &Form>| {
+            forms.map(Form::clutter).fold((0, 0), |total, own| (total.0 + own.0, total.1 + own.1))
+        };
         match self {
-            Form::Number(_) | Form::Pi | Form::Name(..) => 0,
-            Form::Call(_, arguments) => arguments.iter().map(Form::sums).sum(),
-            Form::Sum(terms) => 1 + terms.iter().map(|(_, term)| term.sums()).sum::<usize>(),
-            Form::Product(above, below) => above.iter().chain(below).map(Form::sums).sum(),
-            Form::Power(base, exponent) => base.sums() + exponent.sums(),
-            Form::Negate(inner) | Form::Not(inner) => inner.sums(),
-            Form::Relation(_, left, right) => left.sums() + right.sums(),
+            Form::Number(_) => (0, 1),
+            Form::Pi | Form::Name(..) => (0, 0),
+            Form::Call(_, arguments) => total(&mut arguments.iter()),
+            Form::Sum(terms) => {
+                let (sums, numbers) = total(&mut terms.iter().map(|(_, term)| term));
+                (1 + sums, numbers)
+            }
+            Form::Product(above, below) => total(&mut above.iter().chain(below)),
+            Form::Power(base, _) => base.clutter(),
+            Form::Negate(inner) | Form::Not(inner) => inner.clutter(),
+            Form::Relation(_, left, right) => total(&mut [&**left, &**right].into_iter()),
         }
     }
 

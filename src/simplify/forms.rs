@@ -37,7 +37,7 @@ const AT_ONCE: u64 = 100_000;
 const INTEGRATING: u64 = 10_000_000;
 
 /// The most sums that the search for the shortest form of one formula explores.
-const NODES: usize = 600;
+const NODES: usize = 400;
 
 /// A quantity that has a closed form; components of vectors are counted from 0.
 #[derive(Clone, Copy, PartialEq, Eq, PartialOrd, Ord, Hash, Debug)]
@@ -140,8 +140,7 @@ pub fn closed_forms(model: &Model, patch: PatchId) -> ClosedForms {
 /// The shorter form of each quantity; conditions go with the element.
 fn merge(best: &mut ClosedForms, found: ClosedForms) {
     for (quantity, form) in found.forms {
-        let shorter = best.forms.get(&quantity).is_none_or(|known| form.operations() < known.operations());
-        if shorter {
+        if best.forms.get(&quantity).is_none_or(|known| form.is_better_than(known)) {
             best.forms.insert(quantity, form);
             best.failed.retain(|failed| *failed != quantity);
             if quantity == Quantity::Element {
@@ -160,36 +159,55 @@ fn merge(best: &mut ClosedForms, found: ClosedForms) {
     best.facts.sort();
 }
 
-/// The closed form of the area element alone: its form and the conditions of [`ClosedForms::conditions`]; `None` where
-/// none was found and proved.
-pub fn element_form(model: &Model, patch: PatchId) -> Option<(Form, Vec<String>)> {
+/// The closed form of an area element.
+#[derive(Clone, Debug)]
+pub struct ElementForm {
+    /// The form; it is proved equal to |phi_u x phi_v|.
+    pub form: Form,
+    /// See [`ClosedForms::conditions`].
+    pub conditions: Vec<String>,
+}
+
+impl ClosedForms {
+    /// The form of the area element.
+    pub fn element(&self) -> Option<ElementForm> {
+        let form = self.forms.get(&Quantity::Element)?.clone();
+        Some(ElementForm { form, conditions: self.conditions.clone() })
+    }
+}
+
+/// The closed form of the area element alone, in fewer steps than [`closed_forms`] takes; `None` where none was found and
+/// proved.
+pub fn element_form(model: &Model, patch: PatchId) -> Option<ElementForm> {
     let mut graph = model.graph.clone();
     let patch = &model.patches[patch.0];
     let formulas = Formulas::new(&mut graph, patch);
     let raw = raw_element(&mut graph, patch, &formulas);
-    let mut best: Option<(Form, Vec<String>)> = None;
+    let mut best: Option<ElementForm> = None;
     for manner in formulas.manners(&graph) {
-        let found = with_allowance(EVALUATING, || -> Step<(Form, Vec<String>)> {
+        let found = with_allowance(EVALUATING, || -> Step<ElementForm> {
             let mut elements = Elements::new(&graph, model, patch, &formulas, manner)?;
             let (form, _) = shortest_element(&mut elements)?;
-            Ok((form, elements.conditions))
+            Ok(ElementForm { form, conditions: elements.conditions })
         });
-        if let Ok((form, conditions)) = found
-            && best.as_ref().is_none_or(|(known, _)| form.operations() < known.operations())
+        if let Ok(found) = found
+            && best.as_ref().is_none_or(|known| found.form.operations() < known.form.operations())
         {
-            best = Some((form, conditions));
+            best = Some(found);
         }
     }
-    let (form, conditions) = best?;
+    let best = best?;
     let certificate = Certificate::new(model, patch, &formulas, &graph);
-    let forms = BTreeMap::from([(Quantity::Element, form.clone())]);
-    let proofs = with_allowance(EVALUATING, || certificate.check(&forms, &conditions));
+    let forms = BTreeMap::from([(Quantity::Element, best.form.clone())]);
+    let proofs = with_allowance(EVALUATING, || certificate.check(&forms, &best.conditions));
     if proofs[&Quantity::Element] != Proof::Equal {
         return None;
     }
     match raw {
-        Some(raw) if raw.operations() < form.operations() => Some((raw, Vec::new())),
-        _ => Some((form, conditions)),
+        Some(raw) if raw.operations() < best.form.operations() => {
+            Some(ElementForm { form: raw, conditions: Vec::new() })
+        }
+        _ => Some(best),
     }
 }
 
@@ -203,25 +221,25 @@ fn raw_element(graph: &mut Graph, patch: &Patch, formulas: &Formulas) -> Option<
 /// The area element as it is best evaluated: the proved closed form where it is about as accurate as the norm of the cross
 /// product and holds without further conditions; `None` where it is not.
 ///
-/// `norm` is the norm in `graph`, `values` the parameters.
+/// `norm` is the norm in `graph`, `values` the parameters, `element` the closed form of the patch.
 pub fn evaluation_form(
     model: &Model,
     patch: PatchId,
     graph: &mut Graph,
     norm: ExpressionId,
     values: &dyn Fn(SymbolId) -> f64,
+    element: &ElementForm,
 ) -> Option<ExpressionId> {
-    let (form, conditions) = element_form(model, patch)?;
     // Conditions were derived from the values of the sheet; other values might not fulfil them.
     let as_in_the_sheet = model
         .parameters
         .iter()
         .all(|parameter| evaluate_one(&model.graph, parameter.default, |_| f64::NAN) == values(parameter.symbol));
-    if !conditions.is_empty() && !as_in_the_sheet {
+    if !element.conditions.is_empty() && !as_in_the_sheet {
         return None;
     }
     let patch = &model.patches[patch.0];
-    let formula = parse_back(graph, &form.text(), &names(model, patch))?;
+    let formula = parse_back(graph, &element.form.text(), &names(model, patch))?;
     let limits = limits(graph, patch, values);
     is_stable(graph, formula, norm, patch.variables, limits, values).then_some(formula)
 }

@@ -179,13 +179,13 @@ impl Ring {
         if let Some(quotient) = dividend.divided_by(divisor)? {
             return Ok(Some(quotient));
         }
-        if let Some(place) = super::plan::single_generator(divisor)
+        if let Some(place) = super::laurent::single_generator(divisor)
             && let Kind::Root(2, radicand) = &self.generators[place]
             && let Some(quotient) = dividend.divided_by(radicand)?
         {
             return Ok(Some(quotient.times(divisor)?));
         }
-        let relevant = self.pairs().into_iter().any(|pair| divisor.uses(pair.sine) || divisor.uses(pair.cosine));
+        let relevant = self.pairs().any(|pair| divisor.uses(pair.sine) || divisor.uses(pair.cosine));
         if !relevant {
             return Ok(None);
         }

@@ -96,7 +96,7 @@ impl Integrator<'_> {
     }
 
     fn is_exponential(&self, factor: &Polynomial) -> bool {
-        super::plan::single_generator(factor).is_some_and(|g| matches!(self.ring.generators[g], Kind::Exp(_)))
+        super::laurent::single_generator(factor).is_some_and(|g| matches!(self.ring.generators[g], Kind::Exp(_)))
     }
 
     /// One term: integration by parts lowers the power of u, recursion the power of a cosine.
@@ -170,9 +170,8 @@ impl Integrator<'_> {
             }
             return self.ring.divide(term, &rate);
         }
-        let pairs = self.ring.pairs();
         let used: Vec<_> =
-            pairs.iter().filter(|p| generators.contains(&p.sine) || generators.contains(&p.cosine)).collect();
+            self.ring.pairs().filter(|p| generators.contains(&p.sine) || generators.contains(&p.cosine)).collect();
         let [pair] = used[..] else { return Ok(None) };
         if generators.iter().any(|g| *g != pair.sine && *g != pair.cosine) {
             return Ok(None);
@@ -263,7 +262,7 @@ impl Integrator<'_> {
                 continue;
             }
             let whole = Fraction::whole(factor.clone());
-            if let Some(pair) = self.ring.pairs().iter().find(|pair| *factor == Polynomial::generator(pair.cosine))
+            if let Some(pair) = self.ring.pairs().find(|pair| *factor == Polynomial::generator(pair.cosine))
                 && *exponent == 2
             {
                 // (s/c)' = rate/c^2

@@ -2,7 +2,7 @@
 //!
 //! Formulas become elements of a ring of polynomials with known relations (`ring`, `read`); factors, squares and signs are
 //! found there by exact arithmetic (`gcd`, `factor`, `sign`); a bounded search writes the result in its shortest form
-//! (`plan`, `product`).
+//! (`plan`, `identities`, `powers`, `product`).
 
 mod certificate;
 mod closed;
@@ -12,11 +12,14 @@ mod form;
 mod forms;
 mod fraction;
 mod gcd;
+mod identities;
 mod integral;
+mod laurent;
 mod meter;
 mod parse_back;
 mod plan;
 mod polynomial;
+mod powers;
 mod product;
 mod read;
 mod region;
@@ -27,4 +30,4 @@ mod total;
 
 pub use facts::Fact;
 pub use form::{Form, NameKind};
-pub use forms::{ClosedForms, Quantity, closed_forms, element_form, evaluation_form, exact_area};
+pub use forms::{ClosedForms, ElementForm, Quantity, closed_forms, element_form, evaluation_form, exact_area};

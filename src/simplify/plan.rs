@@ -7,102 +7,29 @@
 use super::factor::factor;
 use super::form::{Form, NameKind};
 use super::fraction::Fraction;
+use super::identities::homogeneous;
+use super::laurent::{Exponents, Laurent, single_generator};
 use super::meter::{Exhausted, Step, spend};
-use super::polynomial::{GENERATORS, Monomial, Polynomial};
-use super::product::{Exponent, is_negative, powered, product, ratio, signed_product, sum};
-use super::ring::{Kind, Pair, Ring};
+use super::polynomial::{GENERATORS, Polynomial};
+use super::product::{is_negative, powered, product, ratio, signed_product, sum};
+use super::ring::{Kind, Ring};
 use crate::expression::{ExpressionId, Graph, SymbolId};
-use dashu_base::{Abs, Gcd, UnsignedAbs};
+use dashu_base::{Abs, UnsignedAbs};
 use dashu_int::IBig;
 use dashu_ratio::RBig;
 use rustc_hash::FxHashMap;
-
-/// Exponents of the generators, below the fraction bar negative.
-type Exponents = [i8; GENERATORS];
-
-/// A sum of rational multiples of monomials with exponents of either sign; sorted, no zero coefficient.
-#[derive(Clone, PartialEq, Eq, Hash, Debug)]
-pub(super) struct Laurent {
-    terms: Vec<(Exponents, RBig)>,
-}
-
-/// Forms with their exponents.
-type Powers = Vec<(Form, Exponent)>;
 
 /// Operations that no opaque function is printed beyond.
 const LONGEST_FUNCTION: usize = 400;
 
 /// The plans explored at each place, the most promising ones by a rough estimate.
-const BEAM: usize = 5;
+const BEAM: usize = 2;
+
+/// The equal polynomials that are planned, those of the fewest terms.
+const VARIANTS: usize = 4;
 
 /// A form and whether it is subtracted.
 pub(super) type SignedForm = (bool, Form);
-
-impl Laurent {
-    pub fn of(polynomial: &Polynomial) -> Step<Self> {
-        let exponents = |monomial: &Monomial| -> Step<Exponents> {
-            let mut signed = [0; GENERATORS];
-            for (place, &exponent) in monomial.0.iter().enumerate() {
-                signed[place] = i8::try_from(exponent).map_err(|_| Exhausted)?;
-            }
-            Ok(signed)
-        };
-        let terms: Step<Vec<_>> =
-            polynomial.terms().iter().map(|(m, x)| Ok((exponents(m)?, RBig::from(x.clone())))).collect();
-        Ok(Self { terms: terms? })
-    }
-
-    fn collect(terms: impl IntoIterator<Item = (Exponents, RBig)>) -> Self {
-        let mut sums: FxHashMap<Exponents, RBig> = FxHashMap::default();
-        for (exponents, x) in terms {
-            *sums.entry(exponents).or_insert(RBig::ZERO) += x;
-        }
-        let mut terms: Vec<_> = sums.into_iter().filter(|(_, x)| !x.is_zero()).collect();
-        terms.sort_unstable_by_key(|term| std::cmp::Reverse(term.0));
-        Self { terms }
-    }
-
-    /// The sum times a monomial with a rational coefficient.
-    pub fn times(&self, number: &RBig, exponents: &Exponents) -> Step<Self> {
-        let shifted = |own: &Exponents| -> Step<Exponents> {
-            let mut total = *own;
-            for (total, shift) in total.iter_mut().zip(exponents) {
-                *total = total.checked_add(*shift).ok_or(Exhausted)?;
-            }
-            Ok(total)
-        };
-        let terms: Step<Vec<_>> = self.terms.iter().map(|(e, x)| Ok((shifted(e)?, x * number))).collect();
-        Ok(Self { terms: terms? })
-    }
-
-    /// The common factor, number (with the sign of the leading term) and monomial, and the polynomial that is left.
-    fn content(&self) -> (RBig, Exponents, Polynomial) {
-        let mut lowest = self.terms.first().map_or([0; GENERATORS], |(exponents, _)| *exponents);
-        for (exponents, _) in &self.terms {
-            for (low, own) in lowest.iter_mut().zip(exponents) {
-                *low = (*low).min(*own);
-            }
-        }
-        let mut divisor = IBig::ONE;
-        for (_, x) in &self.terms {
-            let q = IBig::from(x.denominator().clone());
-            divisor = &divisor * &q / IBig::from((&divisor).gcd(&q));
-        }
-        let polynomial = Polynomial::collect(self.terms.iter().map(|(exponents, x)| {
-            let mut monomial = Monomial::ONE;
-            for (place, (own, low)) in exponents.iter().zip(&lowest).enumerate() {
-                monomial.0[place] = (own - low) as u8;
-            }
-            (monomial, x.numerator() * &divisor / IBig::from(x.denominator().clone()))
-        }));
-        let (unit, primitive) = polynomial.primitive();
-        (ratio(unit, divisor), lowest, primitive)
-    }
-
-    fn len(&self) -> usize {
-        self.terms.len()
-    }
-}
 
 /// Writes ring elements as forms.
 pub(super) struct Printer<'a> {
@@ -179,7 +106,7 @@ impl<'a> Printer<'a> {
         Form::of(self.graph, expression, &self.variables, LONGEST_FUNCTION).ok_or(Exhausted)
     }
 
-    fn argument(&mut self, angle: usize) -> Step<Form> {
+    pub fn argument(&mut self, angle: usize) -> Step<Form> {
         let argument = self.ring.angles[angle].clone();
         self.fraction(&argument)
     }
@@ -264,6 +191,10 @@ impl<'a> Printer<'a> {
             }
             let shown = Laurent::of(&variant)?.times(&number, &exponents)?;
             self.planned(&shown, best)?;
+            if let Some(joined) = self.joined(&shown)? {
+                let form = self.sum(&joined)?;
+                keep(best, form);
+            }
         }
         for tangents in self.with_tangents(laurent)? {
             self.planned(&tangents, best)?;
@@ -316,113 +247,9 @@ impl<'a> Printer<'a> {
         }
         let shortest = variants.iter().map(|variant| variant.terms().len()).min().unwrap_or(0);
         variants.retain(|variant| variant.terms().len() <= 2 * shortest + 4);
+        variants.sort_by_key(|variant| variant.terms().len());
+        variants.truncate(VARIANTS);
         Ok(variants)
-    }
-
-    /// 1/c^2 as 1 + t^2 with t = s/c the tangent, and 1/s^2 as 1 + 1/t^2; likewise for the hyperbolic pair.
-    fn with_tangents(&self, laurent: &Laurent) -> Step<Vec<Laurent>> {
-        let mut result = Vec::new();
-        let mut all = laurent.clone();
-        for pair in self.ring.pairs() {
-            for (below, above) in [(pair.cosine, pair.sine), (pair.sine, pair.cosine)] {
-                // cosh^-2 = 1 - tanh^2, sinh^-2 = coth^2 - 1
-                let (one, square) = match (pair.hyperbolic, below == pair.cosine) {
-                    (false, _) => (1, 1),
-                    (true, true) => (1, -1),
-                    (true, false) => (-1, 1),
-                };
-                let rewritten = |source: &Laurent| -> Option<Laurent> {
-                    let applies = |e: &Exponents| e[below] == -2 && e[above] == 0;
-                    if !source.terms.iter().any(|(e, _)| applies(e)) {
-                        return None;
-                    }
-                    Some(Laurent::collect(source.terms.iter().flat_map(|(e, x)| {
-                        if !applies(e) {
-                            return vec![(*e, x.clone())];
-                        }
-                        let (mut plain, mut tangent) = (*e, *e);
-                        plain[below] = 0;
-                        tangent[above] = 2;
-                        vec![(plain, x * RBig::from(one)), (tangent, x * RBig::from(square))]
-                    })))
-                };
-                if let Some(one) = rewritten(laurent) {
-                    result.push(one);
-                }
-                if below == pair.cosine
-                    && let Some(next) = rewritten(&all)
-                {
-                    all = next;
-                }
-            }
-        }
-        if all != *laurent && !result.contains(&all) {
-            result.push(all);
-        }
-        Ok(result)
-    }
-
-    /// The sum in the doubled angle of each pair that has even degrees only, and of all of them.
-    fn doubled(&mut self, laurent: &Laurent) -> Step<Vec<Laurent>> {
-        let mut result: Vec<Laurent> = Vec::new();
-        let mut all = laurent.clone();
-        for pair in self.ring.pairs() {
-            for source in [laurent.clone(), all.clone()] {
-                if let Some(lifted) = self.lifted(&source, &pair)? {
-                    if source == all {
-                        all = lifted.clone();
-                    }
-                    if !result.contains(&lifted) {
-                        result.push(lifted);
-                    }
-                }
-            }
-        }
-        result.retain(|lifted| lifted.len() <= 2 * laurent.len() + 2);
-        Ok(result)
-    }
-
-    /// s^2 = (1 - C)/2, c^2 = (1 + C)/2, s c = S/2 with the pair (S, C) of twice the angle.
-    fn lifted(&mut self, laurent: &Laurent, pair: &Pair) -> Step<Option<Laurent>> {
-        let (s, c) = (pair.sine, pair.cosine);
-        let even = laurent.terms.iter().all(|(e, _)| (e[s] + e[c]) % 2 == 0 && e[s] >= 0 && e[c] >= 0);
-        let used = laurent.terms.iter().any(|(e, _)| e[s] > 0 || e[c] > 0);
-        let high = laurent.terms.iter().any(|(e, _)| e[s] + e[c] > 8);
-        if !even || !used || high {
-            return Ok(None);
-        }
-        let double = self.double_pair(pair)?;
-        let mut terms = Vec::new();
-        for (exponents, x) in &laurent.terms {
-            let mut rest = *exponents;
-            let (i, j) = (rest[s], rest[c]);
-            rest[s] = 0;
-            rest[c] = 0;
-            let mut part = vec![(rest, x.clone())];
-            let half = RBig::ONE / RBig::from(2u8);
-            // One mixed factor at most, the others are squares.
-            if i % 2 == 1 {
-                for (e, x) in &mut part {
-                    e[double.sine] += 1;
-                    *x *= &half;
-                }
-            }
-            let minus = if pair.hyperbolic { (-1, 1) } else { (1, -1) };
-            for _ in 0..i / 2 {
-                part = times_binomial(&part, minus, double.cosine);
-            }
-            for _ in 0..j / 2 {
-                part = times_binomial(&part, (1, 1), double.cosine);
-            }
-            terms.extend(part);
-        }
-        Ok(Some(Laurent::collect(terms)))
-    }
-
-    fn double_pair(&mut self, pair: &Pair) -> Step<Pair> {
-        let two = Fraction::whole(Polynomial::integer(2));
-        let argument = self.ring.multiply(&self.ring.angles[pair.angle.0], &two)?;
-        self.ring.pair_of(argument, pair.hyperbolic)
     }
 
     fn factored(&mut self, polynomial: &Polynomial, negated: bool, best: &mut SignedForm) -> Step<()> {
@@ -454,8 +281,9 @@ impl<'a> Printer<'a> {
         }
         plans.sort_by_key(|(estimate, _)| *estimate);
         for (_, plan) in plans.into_iter().take(BEAM) {
-            let form = self.carried_out(&plan)?;
-            keep(best, form);
+            if let Some(form) = self.carried_out(&plan, best.1.operations())? {
+                keep(best, form);
+            }
         }
         Ok(())
     }
@@ -497,9 +325,15 @@ impl<'a> Printer<'a> {
         Ok(plans)
     }
 
-    fn carried_out(&mut self, plan: &Plan) -> Step<SignedForm> {
-        let mut terms = Vec::new();
+    /// The parts written and added; `None` as soon as that takes more than `limit` operations.
+    fn carried_out(&mut self, plan: &Plan, limit: usize) -> Step<Option<SignedForm>> {
+        let mut terms: Vec<(bool, Form)> = Vec::new();
+        let mut operations = 0;
         for part in &plan.parts {
+            operations += terms.last().map_or(0, |(_, term)| 1 + term.operations());
+            if operations > limit {
+                return Ok(None);
+            }
             let (negative, inner) = self.sum(&part.sum)?;
             let negative = (negative && part.power % 2 == 1) != is_negative(&part.number);
             if part.power == 1 && part.number.clone().abs().is_one() && part.factor == [0; GENERATORS] {
@@ -511,7 +345,7 @@ impl<'a> Printer<'a> {
             factors.push((inner, (i64::from(part.power), 1)));
             terms.push(signed_product(negative, &magnitude, factors));
         }
-        Ok(signed_sum(terms))
+        Ok(Some(signed_sum(terms)))
     }
 
     /// Term by term.
@@ -529,156 +363,6 @@ impl<'a> Printer<'a> {
         let factors = self.generator_powers(exponents, &mut magnitude)?;
         Ok(product(&magnitude, factors))
     }
-
-    /// Powers of generators: s^i/c^i is a power of the tangent, and half angles are doubled where that is shorter. Numbers
-    /// that this brings in are multiplied into `number`.
-    pub fn generator_powers(&mut self, exponents: &Exponents, number: &mut RBig) -> Step<Vec<(Form, Exponent)>> {
-        let mut rest = *exponents;
-        let mut factors = Vec::new();
-        self.merge_half_angles(&mut rest, number)?;
-        for pair in self.ring.pairs() {
-            let (i, j) = (rest[pair.sine], rest[pair.cosine]);
-            if i == 0 && j == 0 {
-                continue;
-            }
-            rest[pair.sine] = 0;
-            rest[pair.cosine] = 0;
-            if i == -j {
-                let name = if pair.hyperbolic { "tanh" } else { "tan" };
-                let argument = self.argument(pair.angle.0)?;
-                factors.push((Form::Call(name.to_owned(), vec![argument]), (i64::from(i), 1)));
-                continue;
-            }
-            let plain = self.plain_pair(&pair, i, j)?;
-            match self.doubled_pair(&pair, i, j)? {
-                Some((doubled, scale)) if cost(&doubled, &(&*number * &scale)) < cost(&plain, number) => {
-                    *number *= scale;
-                    factors.extend(doubled);
-                }
-                _ => factors.extend(plain),
-            }
-        }
-        if let Some(exponential) = self.joint_exponential(&mut rest)? {
-            factors.push((exponential, (1, 1)));
-        }
-        for side in [1, -1] {
-            if let Some(radicand) = self.joint_root(&mut rest, side)? {
-                factors.push((radicand, (i64::from(side), 2)));
-            }
-        }
-        for (generator, &exponent) in rest.iter().enumerate().filter(|(_, exponent)| **exponent != 0) {
-            factors.push((self.generator(generator)?, (i64::from(exponent), 1)));
-        }
-        Ok(factors)
-    }
-
-    /// Several square roots above the bar (side 1) or below it (side -1) as one: their common radicand.
-    fn joint_root(&mut self, rest: &mut Exponents, side: i8) -> Step<Option<Form>> {
-        let roots: Vec<(usize, Polynomial)> = (0..self.ring.generators.len())
-            .filter(|&generator| rest[generator] == side)
-            .filter_map(|generator| match &self.ring.generators[generator] {
-                Kind::Root(2, radicand) => Some((generator, radicand.clone())),
-                _ => None,
-            })
-            .collect();
-        let mut product = Polynomial::one();
-        for (generator, radicand) in &roots {
-            if super::factor::square_root(radicand)?.is_none() {
-                product = self.ring.canonical(&product.times(radicand)?)?;
-                rest[*generator] = 0;
-            }
-        }
-        if product.is_one() { Ok(None) } else { Ok(Some(self.polynomial(&product)?)) }
-    }
-
-    /// All exponentials as one: exp(a)^i exp(b)^j = exp(i a + j b).
-    fn joint_exponential(&mut self, rest: &mut Exponents) -> Step<Option<Form>> {
-        let mut argument = Fraction::zero();
-        for (generator, exponent) in rest.iter_mut().enumerate().filter(|(_, exponent)| **exponent != 0) {
-            let Some(Kind::Exp(angle)) = self.ring.generators.get(generator) else { continue };
-            let multiple = Fraction::whole(Polynomial::integer(i64::from(*exponent)));
-            let term = self.ring.multiply(&self.ring.angles[angle.0], &multiple)?;
-            argument = self.ring.add(&argument, &term)?;
-            *exponent = 0;
-        }
-        if argument.is_zero() {
-            return Ok(None);
-        }
-        Ok(Some(Form::Call("exp".to_owned(), vec![self.fraction(&argument)?])))
-    }
-
-    /// s^i c^i as (S/2)^i with the sine of twice the angle, where that is shorter or meets other powers of that angle.
-    fn merge_half_angles(&mut self, rest: &mut Exponents, number: &mut RBig) -> Step<()> {
-        let mut place = 0;
-        while let Some(pair) = self.ring.pairs().get(place).copied() {
-            place += 1;
-            let i = rest[pair.sine];
-            if i == 0 || i != rest[pair.cosine] {
-                continue;
-            }
-            let double = self.double_pair(&pair)?;
-            let meets = rest[double.sine] != 0 || rest[double.cosine] != 0;
-            let scale = RBig::from(2u8).pow(isize::from(i.abs()));
-            let scaled = if i > 0 { &*number / &scale } else { &*number * &scale };
-            let plain = self.plain_pair(&pair, i, i)?;
-            let doubled = self.plain_pair(&double, i, 0)?;
-            if meets || cost(&doubled, &scaled) < cost(&plain, number) {
-                (rest[pair.sine], rest[pair.cosine]) = (0, 0);
-                rest[double.sine] += i;
-                *number = scaled;
-                // The doubled pair may stand anywhere in the list.
-                place = 0;
-            }
-        }
-        Ok(())
-    }
-
-    fn plain_pair(&mut self, pair: &Pair, i: i8, j: i8) -> Step<Vec<(Form, Exponent)>> {
-        let mut factors = Vec::new();
-        for (generator, exponent) in [(pair.sine, i), (pair.cosine, j)] {
-            if exponent != 0 {
-                factors.push((self.generator(generator)?, (i64::from(exponent), 1)));
-            }
-        }
-        Ok(factors)
-    }
-
-    /// s^i c^j in twice the angle: s c = S/2, then s^2 = (1 - C)/2 or c^2 = (1 + C)/2; `None` if an odd power is left.
-    fn doubled_pair(&mut self, pair: &Pair, i: i8, j: i8) -> Step<Option<(Powers, RBig)>> {
-        let shared = if i.signum() == j.signum() { i.signum() * i.abs().min(j.abs()) } else { 0 };
-        let (i, j) = (i - shared, j - shared);
-        if i % 2 != 0 || j % 2 != 0 || (i != 0 && j != 0) {
-            return Ok(None);
-        }
-        let Pair { sine, cosine, .. } = self.double_pair(pair)?;
-        let mut factors = Vec::new();
-        if shared != 0 {
-            factors.push((self.generator(sine)?, (i64::from(shared), 1)));
-        }
-        let one = (false, Form::integer(1));
-        let squares = (i + j) / 2;
-        if squares != 0 {
-            let cosine = self.generator(cosine)?;
-            // sinh^2 = (cosh 2x - 1)/2
-            let terms = match (i != 0, pair.hyperbolic) {
-                (true, true) => vec![(false, cosine), (true, Form::integer(1))],
-                (true, false) => vec![one, (true, cosine)],
-                (false, _) => vec![one, (false, cosine)],
-            };
-            factors.push((Form::Sum(terms), (i64::from(squares), 1)));
-        }
-        let halvings = i64::from(shared) + i64::from(squares);
-        let two = RBig::from(2u8).pow(halvings.abs() as isize);
-        Ok(Some((factors, if halvings > 0 { RBig::ONE / two } else { two })))
-    }
-}
-
-/// Operations of factors and the number before them.
-fn cost(factors: &[(Form, Exponent)], number: &RBig) -> usize {
-    let powers = |(form, (power, _)): &(Form, Exponent)| 1 + form.operations() + usize::from(power.abs() > 1);
-    let one = dashu_int::UBig::ONE;
-    let numbers = usize::from(number.numerator() != &IBig::ONE) + usize::from(number.denominator() != &one);
-    factors.iter().map(powers).sum::<usize>() + numbers
 }
 
 /// Parts that add up to a sum: each a number times a monomial times a power of a sum.
@@ -829,63 +513,21 @@ fn binomial_squares(laurent: &Laurent) -> Vec<Plan> {
     plans
 }
 
-/// Terms of lower degree in a pair times s^2 + c^2 (or cosh^2 - sinh^2) until all have one degree.
-fn homogeneous(polynomial: &Polynomial, pair: &Pair) -> Step<Option<Polynomial>> {
-    let degree = |monomial: &Monomial| monomial.0[pair.sine] + monomial.0[pair.cosine];
-    let highest = polynomial.terms().iter().map(|(monomial, _)| degree(monomial)).max().unwrap_or(0);
-    let lowest = polynomial.terms().iter().map(|(monomial, _)| degree(monomial)).min().unwrap_or(0);
-    if highest == lowest || highest > 8 || polynomial.terms().iter().any(|(m, _)| (highest - degree(m)) % 2 == 1) {
-        return Ok(None);
-    }
-    let square = |generator| Polynomial::generator(generator).power(2);
-    let one = if pair.hyperbolic {
-        square(pair.cosine)?.minus(&square(pair.sine)?)
-    } else {
-        square(pair.sine)?.plus(&square(pair.cosine)?)
-    };
-    let mut sum = Polynomial::zero();
-    for (monomial, x) in polynomial.terms() {
-        let term = Polynomial::term(*monomial, x.clone());
-        sum = sum.plus(&term.times(&one.power(u32::from((highest - degree(monomial)) / 2))?)?);
-    }
-    Ok(Some(sum))
-}
-
-/// A sum times (a + b g)/2 for a generator g.
-fn times_binomial(terms: &[(Exponents, RBig)], (a, b): (i8, i8), generator: usize) -> Vec<(Exponents, RBig)> {
-    let half = |x: &RBig, sign: i8| x * RBig::from(sign) / RBig::from(2u8);
-    let raised = |e: &Exponents| {
-        let mut e = *e;
-        e[generator] += 1;
-        e
-    };
-    terms.iter().flat_map(|(e, x)| [(*e, half(x, a)), (raised(e), half(x, b))]).collect()
-}
-
-/// The generator, if the polynomial is one alone.
-pub(super) fn single_generator(polynomial: &Polynomial) -> Option<usize> {
-    match polynomial.terms() {
-        [(monomial, x)] if *x == IBig::ONE && monomial.0.iter().map(|&e| u32::from(e)).sum::<u32>() == 1 => {
-            monomial.0.iter().position(|&e| e == 1)
-        }
-        _ => None,
-    }
-}
-
 /// A sum in which a leading minus sign is taken out if every term has one.
 fn signed_sum(terms: Vec<(bool, Form)>) -> SignedForm {
-    if terms.iter().all(|(negative, _)| *negative) {
-        (true, sum(terms.into_iter().map(|(_, term)| (false, term)).collect()))
-    } else {
-        (false, sum(terms))
+    let negative = terms.iter().all(|(negative, _)| *negative);
+    match sum(terms.into_iter().map(|(own, term)| (own != negative, term)).collect()) {
+        // Numbers that cancel may leave one term.
+        Form::Negate(inner) => (!negative, *inner),
+        form => (negative, form),
     }
 }
 
 /// Keeps the shorter form; a sign outside counts as an operation.
 fn keep(best: &mut SignedForm, candidate: SignedForm) {
-    // Of equally long forms the one with fewer sums inside each other.
-    let cost = |(negative, form): &SignedForm| (form.operations() + usize::from(*negative), form.sums());
-    if cost(&candidate) < cost(best) {
+    let cost = |(negative, form): &SignedForm| form.operations() + usize::from(*negative);
+    let order = cost(&candidate).cmp(&cost(best));
+    if order.then_with(|| candidate.1.clutter().cmp(&best.1.clutter())).is_lt() {
         *best = candidate;
     }
 }

@@ -78,13 +78,13 @@ impl Ring {
     }
 
     /// The pairs (s, c), in order.
-    pub fn pairs(&self) -> Vec<Pair> {
+    pub fn pairs(&self) -> impl Iterator<Item = Pair> + '_ {
         let pair = |(sine, kind): (usize, &Kind)| match kind {
             Kind::Sin(angle) => Some(Pair { sine, cosine: sine + 1, hyperbolic: false, angle: *angle }),
             Kind::Sinh(angle) => Some(Pair { sine, cosine: sine + 1, hyperbolic: true, angle: *angle }),
             _ => None,
         };
-        self.generators.iter().enumerate().filter_map(pair).collect()
+        self.generators.iter().enumerate().filter_map(pair)
     }
 
     /// The pair of an argument, added if it is new.
@@ -107,7 +107,6 @@ impl Ring {
     pub fn directions(&self, polynomials: &[&Polynomial]) -> Vec<Directions> {
         let used: Vec<usize> = self
             .pairs()
-            .iter()
             .enumerate()
             .filter(|(_, pair)| polynomials.iter().any(|p| p.degree(pair.sine) > 1 || p.degree(pair.cosine) > 1))
             .map(|(place, _)| place)
@@ -121,7 +120,7 @@ impl Ring {
     /// The normal form for given directions: roots below their index, one generator of each pair at most linear.
     pub fn reduced(&self, polynomial: &Polynomial, directions: Directions) -> Step<Polynomial> {
         let mut result = self.without_root_powers(polynomial)?;
-        for (place, pair) in self.pairs().into_iter().enumerate() {
+        for (place, pair) in self.pairs().enumerate() {
             let keeps_sine = directions.keeps_sine(place);
             let (gone, kept) = if keeps_sine { (pair.cosine, pair.sine) } else { (pair.sine, pair.cosine) };
             if result.degree(gone) < 2 {
