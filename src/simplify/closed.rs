@@ -13,10 +13,11 @@ use super::forms::Quantity;
 use super::fraction::{Fraction, common_denominator, raised};
 use super::gcd::gcd;
 use super::laurent::{Laurent, single_generator};
-use super::meter::{Exhausted, Step};
+use super::meter::{Exhausted, Step, with_allowance};
 use super::plan::Printer;
 use super::polynomial::{GENERATORS, Polynomial};
 use super::product::{Exponent, flipped, is_negative, product, ratio};
+use super::radical::binomial_root;
 use super::read::{Arguments, Purpose, Reader};
 use super::region::{self, guesses};
 use super::ring::{Directions, Kind, Pair, Ring};
@@ -27,6 +28,9 @@ use crate::language::{Model, Patch};
 use dashu_base::{Abs, Signed};
 use dashu_int::IBig;
 use dashu_ratio::RBig;
+
+/// Steps for the greatest common divisors of the components of a normal.
+const SHARED_FACTORS: u64 = 2_000_000;
 
 /// A value `outside * sqrt(root/below)`; the polynomials under the root are square-free.
 #[derive(Clone, Debug)]
@@ -120,11 +124,32 @@ impl<'a> Elements<'a> {
         for (component, (i, j)) in normal.iter_mut().zip(cross) {
             *component = ring.canonical(&u[i].times(&v[j])?.minus(&u[j].times(&v[i])?))?;
         }
-        let (content_n, mut direction) = take_content(ring, &normal.map(Fraction::whole))?;
+        let content_uv = ring.multiply(&content_u, &content_v)?;
+        let shared = with_allowance(SHARED_FACTORS, || take_content(ring, &normal.clone().map(Fraction::whole)));
+        let has_roots = ring.generators.iter().any(|kind| matches!(kind, Kind::Root(2, _)));
+        let (content_n, mut direction) = match shared {
+            Ok(found) if !has_roots => found,
+            // Factors with roots are not found by a greatest common divisor; the square of the norm shows them.
+            Ok((content, direction)) => match with_allowance(SHARED_FACTORS, || {
+                let square =
+                    dot(ring, &direction.clone().map(Fraction::whole), &direction.clone().map(Fraction::whole))?;
+                without_root(ring, &square, &direction)
+            }) {
+                Ok(Some((factor, direction))) => (ring.multiply(&content, &factor)?, direction),
+                _ => (content, direction),
+            },
+            Err(Exhausted) => {
+                let gram =
+                    ring.subtract(&ring.multiply(&first[0], &first[2])?, &ring.multiply(&first[1], &first[1])?)?;
+                let scale = ring.multiply(&content_uv, &content_uv)?;
+                let square = ring.divide(&gram, &scale)?.ok_or(Exhausted)?;
+                without_root(ring, &square, &normal)?.ok_or(Exhausted)?
+            }
+        };
         if patch.orientation < 0 {
             direction = direction.map(|component| component.negated());
         }
-        let content = ring.multiply(&ring.multiply(&content_u, &content_v)?, &content_n)?;
+        let content = ring.multiply(&content_uv, &content_n)?;
         let mut square = Polynomial::zero();
         for component in &direction {
             square = square.plus(&component.times(component)?);
@@ -503,6 +528,21 @@ fn in_half_angle(polynomial: &Polynomial, pair: &Pair, half: &Pair) -> Step<Opti
         sum = sum.plus(&term);
     }
     Ok(Some(sum))
+}
+
+/// A vector without the factor that its squared length is the square of; `None` if there is none.
+fn without_root(ring: &Ring, square: &Fraction, vector: &[Polynomial; 3]) -> Step<Option<(Fraction, [Polynomial; 3])>> {
+    let Some(binomial) = binomial_root(ring, &square.numerator)? else { return Ok(None) };
+    let factor = Fraction::whole(ring.canonical(&binomial.sum())?);
+    let conjugate = ring.canonical(&binomial.conjugate())?;
+    let norm = Fraction::whole(ring.product(&factor.numerator, &conjugate)?);
+    let below = ring.inverse(&norm)?.ok_or(Exhausted)?;
+    let mut rest = [(); 3].map(|()| Fraction::zero());
+    for (rest, component) in rest.iter_mut().zip(vector) {
+        *rest = ring.multiply(&Fraction::whole(ring.product(component, &conjugate)?), &below)?;
+    }
+    let (content, direction) = take_content(ring, &rest)?;
+    Ok(Some((ring.multiply(&factor, &content)?, direction)))
 }
 
 pub(super) fn dot(ring: &Ring, a: &[Fraction; 3], b: &[Fraction; 3]) -> Step<Fraction> {

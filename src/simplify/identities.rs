@@ -9,6 +9,111 @@ use super::ring::Pair;
 use dashu_base::Signed;
 use dashu_ratio::RBig;
 
+/// The highest degree that is written in multiples of the angle.
+const HIGHEST_MULTIPLE: i8 = 24;
+
+/// The degree from which a multiple of the angle is taken without a comparison.
+const HIGH_DEGREE: i8 = 7;
+
+/// Coefficients of cosine and sine, circular or hyperbolic, of the multiples 0, 1, ... of an angle.
+struct Harmonics(Vec<[RBig; 2]>);
+
+impl Harmonics {
+    /// x s^i c^j
+    fn of(i: i8, j: i8, hyperbolic: bool, x: &RBig) -> Self {
+        let size = (i + j) as usize + 1;
+        let zero = || vec![[RBig::ZERO, RBig::ZERO]; size];
+        let mut now = zero();
+        now[0][0] = x.clone();
+        let half = RBig::ONE / RBig::from(2u8);
+        for by_sine in (0..i).map(|_| true).chain((0..j).map(|_| false)) {
+            let mut next = zero();
+            for (k, [cosine, sine]) in now.iter().enumerate() {
+                let (cosine, sine) = (cosine * &half, sine * &half);
+                if cosine.is_zero() && sine.is_zero() {
+                    continue;
+                }
+                // 2 cos k cos 1 = cos(k+1) + cos(k-1), 2 sin k sin 1 = cos(k-1) - cos(k+1), ...; sinh has no minus.
+                let up = k + 1;
+                let (down, turned) = if k == 0 { (1, true) } else { (k - 1, false) };
+                let odd = |value: RBig| if turned { -value } else { value };
+                if by_sine {
+                    next[up][1] += &cosine;
+                    next[down][1] -= odd(cosine);
+                    let sign = |value: RBig| if hyperbolic { value } else { -value };
+                    next[up][0] += sign(sine.clone());
+                    next[down][0] -= sign(sine);
+                } else {
+                    next[up][0] += &cosine;
+                    next[down][0] += cosine;
+                    next[up][1] += &sine;
+                    next[down][1] += odd(sine);
+                }
+            }
+            // The sine of 0.
+            next[0][1] = RBig::ZERO;
+            now = next;
+        }
+        Self(now)
+    }
+
+    fn add(&mut self, other: &Self) {
+        if self.0.len() < other.0.len() {
+            self.0.resize(other.0.len(), [RBig::ZERO, RBig::ZERO]);
+        }
+        for (own, other) in self.0.iter_mut().zip(&other.0) {
+            own[0] += &other[0];
+            own[1] += &other[1];
+        }
+    }
+
+    fn multiples(&self) -> impl Iterator<Item = usize> + '_ {
+        self.0.iter().enumerate().filter(|(_, [cosine, sine])| !cosine.is_zero() || !sine.is_zero()).map(|(k, _)| k)
+    }
+
+    fn count(&self) -> usize {
+        self.0.iter().flatten().filter(|x| !x.is_zero()).count()
+    }
+
+    /// The same in powers of the pair of `unit` times the angle: Chebyshev polynomials of both kinds, whose recurrence is
+    /// the same for circular and hyperbolic pairs.
+    fn polynomial(&self, rest: &Exponents, unit: usize, target: &Pair) -> Vec<(Exponents, RBig)> {
+        let mut terms = Vec::new();
+        // Coefficients of T_k and U_k-1 by powers of the cosine.
+        let mut first = (vec![RBig::ONE], vec![RBig::ZERO, RBig::ONE]);
+        let mut second = (vec![RBig::ZERO], vec![RBig::ONE]);
+        for [cosine, sine] in self.0.iter().step_by(unit) {
+            for (coefficients, x, with_sine) in [(&first.0, cosine, 0), (&second.0, sine, 1)] {
+                for (power, coefficient) in coefficients.iter().enumerate() {
+                    let mut exponents = *rest;
+                    exponents[target.cosine] += power as i8;
+                    exponents[target.sine] += with_sine;
+                    terms.push((exponents, coefficient * x));
+                }
+            }
+            first = (first.1.clone(), recurrence(&first.0, &first.1));
+            second = (second.1.clone(), recurrence(&second.0, &second.1));
+        }
+        terms
+    }
+}
+
+/// 2 x p - q for polynomials by their coefficients.
+fn recurrence(q: &[RBig], p: &[RBig]) -> Vec<RBig> {
+    let mut next = vec![RBig::ZERO; p.len() + 1];
+    for (power, x) in p.iter().enumerate() {
+        next[power + 1] += x * RBig::from(2u8);
+    }
+    for (power, x) in q.iter().enumerate() {
+        next[power] -= x;
+    }
+    next
+}
+
+fn gcd(a: usize, b: usize) -> usize {
+    if b == 0 { a } else { gcd(b, a % b) }
+}
+
 impl Printer<'_> {
     /// 1/c^2 as 1 + t^2 with t = s/c the tangent, and 1/s^2 as 1 + 1/t^2; likewise for the hyperbolic pair.
     pub fn with_tangents(&self, laurent: &Laurent) -> Step<Vec<Laurent>> {
@@ -82,7 +187,7 @@ impl Printer<'_> {
         if !even || !used || high {
             return Ok(None);
         }
-        let double = self.double_pair(pair)?;
+        let Some(double) = self.multiple_pair(pair, 2)? else { return Ok(None) };
         let mut terms = Vec::new();
         for (exponents, x) in &laurent.terms {
             let mut rest = *exponents;
@@ -110,10 +215,67 @@ impl Printer<'_> {
         Ok(Some(Laurent::collect(terms)))
     }
 
-    pub fn double_pair(&mut self, pair: &Pair) -> Step<Pair> {
-        let two = Fraction::whole(Polynomial::integer(2));
-        let argument = self.ring.multiply(&self.ring.angles[pair.angle.0], &two)?;
-        self.ring.pair_of(argument, pair.hyperbolic)
+    /// The sum in multiples of an angle where it has a high degree: by the largest multiple that all of it is in, and as a
+    /// sum of sines and cosines of multiples where that has fewer terms. The first of these is far shorter where the
+    /// degree is at least [`HIGH_DEGREE`]; whether that is so is told.
+    pub fn in_multiples(&mut self, laurent: &Laurent) -> Step<(Vec<Laurent>, bool)> {
+        let mut result = Vec::new();
+        let mut shorter = false;
+        for pair in self.ring.pairs().collect::<Vec<_>>() {
+            let degree = |e: &Exponents| e[pair.sine] + e[pair.cosine];
+            let highest = laurent.terms.iter().map(|(e, _)| degree(e)).max().unwrap_or(0);
+            let below = laurent.terms.iter().any(|(e, _)| e[pair.sine] < 0 || e[pair.cosine] < 0);
+            if below || !(3..=HIGHEST_MULTIPLE).contains(&highest) {
+                continue;
+            }
+            spend(laurent.len() * usize::from(highest as u8))?;
+            let mut harmonics: Vec<(Exponents, Harmonics)> = Vec::new();
+            for (exponents, x) in &laurent.terms {
+                let mut rest = *exponents;
+                (rest[pair.sine], rest[pair.cosine]) = (0, 0);
+                let own = Harmonics::of(exponents[pair.sine], exponents[pair.cosine], pair.hyperbolic, x);
+                match harmonics.iter_mut().find(|(known, _)| *known == rest) {
+                    Some((_, total)) => total.add(&own),
+                    None => harmonics.push((rest, own)),
+                }
+            }
+            let unit = harmonics.iter().fold(0, |unit, (_, own)| own.multiples().fold(unit, gcd));
+            if unit > 1
+                && let Some(target) = self.multiple_pair(&pair, unit)?
+            {
+                let terms = harmonics.iter().map(|(rest, own)| own.polynomial(rest, unit, &target));
+                result.push(Laurent::collect(terms.flatten()));
+                shorter |= highest >= HIGH_DEGREE;
+            }
+            let count: usize = harmonics.iter().map(|(_, own)| own.count()).sum();
+            if count <= laurent.len() {
+                result.extend(self.as_harmonics(&harmonics, &pair)?);
+            }
+        }
+        Ok((result, shorter))
+    }
+
+    fn as_harmonics(&mut self, harmonics: &[(Exponents, Harmonics)], pair: &Pair) -> Step<Option<Laurent>> {
+        let mut terms = Vec::new();
+        for (rest, own) in harmonics {
+            for (multiple, [cosine, sine]) in own.0.iter().enumerate() {
+                let (mut with_cosine, mut with_sine) = (*rest, *rest);
+                if multiple > 0 && !(cosine.is_zero() && sine.is_zero()) {
+                    let Some(target) = self.multiple_pair(pair, multiple)? else { return Ok(None) };
+                    with_cosine[target.cosine] += 1;
+                    with_sine[target.sine] += 1;
+                }
+                terms.extend([(with_cosine, cosine.clone()), (with_sine, sine.clone())]);
+            }
+        }
+        Ok(Some(Laurent::collect(terms)))
+    }
+
+    /// The pair of a multiple of an angle; `None` where the ring is full.
+    pub fn multiple_pair(&mut self, pair: &Pair, multiple: usize) -> Step<Option<Pair>> {
+        let factor = Fraction::whole(Polynomial::integer(multiple as i64));
+        let argument = self.ring.multiply(&self.ring.angles[pair.angle.0], &factor)?;
+        self.ring.pair_if_room(argument, pair.hyperbolic)
     }
 
     /// The sum with products of two angles joined, as long as that saves terms: s_p c_q + c_p s_q is the sine of p + q,
@@ -161,7 +323,7 @@ impl Printer<'_> {
                 }
                 // sin: s c + c s is the sum. cos: c c - s s is the sum, c c + s s the difference; hyperbolic: reversed.
                 let added = if is_sine || p.hyperbolic { same } else { !same };
-                let (target, turned) = self.angle_of(p, q, added)?;
+                let Some((target, turned)) = self.angle_of(p, q, added)? else { continue };
                 rest[if is_sine { target.sine } else { target.cosine }] += 1;
                 let x = if is_sine && turned { -x.clone() } else { x.clone() };
                 let kept = laurent.terms.iter().filter(|(f, _)| f != e && *f != other).cloned();
@@ -172,13 +334,14 @@ impl Printer<'_> {
     }
 
     /// The pair of p + q or p - q, and whether its angle is the negative of that.
-    fn angle_of(&mut self, p: &Pair, q: &Pair, added: bool) -> Step<(Pair, bool)> {
+    fn angle_of(&mut self, p: &Pair, q: &Pair, added: bool) -> Step<Option<(Pair, bool)>> {
         let (first, second) = (self.ring.angles[p.angle.0].clone(), self.ring.angles[q.angle.0].clone());
         let angle = if added { self.ring.add(&first, &second)? } else { self.ring.subtract(&first, &second)? };
         let opposite = angle.negated();
         let turned = self.ring.angles.contains(&opposite)
             || (!self.ring.angles.contains(&angle) && angle.numerator.leading().is_negative());
-        Ok((self.ring.pair_of(if turned { opposite } else { angle }, p.hyperbolic)?, turned))
+        let pair = self.ring.pair_if_room(if turned { opposite } else { angle }, p.hyperbolic)?;
+        Ok(pair.map(|pair| (pair, turned)))
     }
 }
 

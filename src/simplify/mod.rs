@@ -4,6 +4,7 @@
 //! found there by exact arithmetic (`gcd`, `factor`, `sign`); a bounded search writes the result in its shortest form
 //! (`plan`, `identities`, `powers`, `product`).
 
+mod boxes;
 mod certificate;
 mod closed;
 mod factor;
@@ -21,6 +22,7 @@ mod plan;
 mod polynomial;
 mod powers;
 mod product;
+mod radical;
 mod read;
 mod region;
 mod ring;

@@ -152,17 +152,26 @@ impl<'a> Printer<'a> {
         // A plan may come back to this sum: it then finds the plain form.
         let mut best = self.flat(laurent)?;
         self.known.insert(laurent.clone(), best.clone());
+        let (multiples, shorter) = self.in_multiples(laurent)?;
+        if shorter {
+            for other in multiples {
+                let form = self.sum(&other)?;
+                keep(&mut best, form);
+            }
+            self.known.insert(laurent.clone(), best.clone());
+            return Ok(best);
+        }
         if self.nodes == 0 {
             return Ok(best);
         }
         self.nodes -= 1;
         spend(50 * laurent.len())?;
-        self.improve(laurent, &mut best)?;
+        self.improve(laurent, multiples, &mut best)?;
         self.known.insert(laurent.clone(), best.clone());
         Ok(best)
     }
 
-    fn improve(&mut self, laurent: &Laurent, best: &mut SignedForm) -> Step<()> {
+    fn improve(&mut self, laurent: &Laurent, multiples: Vec<Laurent>, best: &mut SignedForm) -> Step<()> {
         let (number, exponents, polynomial) = laurent.content();
         let is_free = exponents == [0; GENERATORS] && number.clone().abs().is_one();
         if !is_free {
@@ -200,8 +209,8 @@ impl<'a> Printer<'a> {
             self.planned(&tangents, best)?;
         }
         if is_free {
-            for doubled in self.doubled(laurent)? {
-                let form = self.sum(&doubled)?;
+            for other in self.doubled(laurent)?.into_iter().chain(multiples) {
+                let form = self.sum(&other)?;
                 keep(best, form);
             }
         }

@@ -100,7 +100,7 @@ impl Printer<'_> {
         while let Some(pair) = todo.pop() {
             let (own_sine, own_cosine) = (rest[pair.sine], rest[pair.cosine]);
             let i = own_sine.signum() * own_sine.abs().min(own_cosine.abs());
-            let double = self.double_pair(&pair)?;
+            let Some(double) = self.multiple_pair(&pair, 2)? else { continue };
             let meets = rest[double.sine] != 0 || rest[double.cosine] != 0;
             let scale = RBig::from(2u8).pow(isize::from(i.abs()));
             let scaled = if i > 0 { &*number / &scale } else { &*number * &scale };
@@ -137,7 +137,7 @@ impl Printer<'_> {
         if i % 2 != 0 || j % 2 != 0 || (i != 0 && j != 0) {
             return Ok(None);
         }
-        let Pair { sine, cosine, .. } = self.double_pair(pair)?;
+        let Some(Pair { sine, cosine, .. }) = self.multiple_pair(pair, 2)? else { return Ok(None) };
         let mut factors = Vec::new();
         if shared != 0 {
             factors.push((self.generator(sine)?, (i64::from(shared), 1)));

@@ -134,6 +134,7 @@ fn dissolve(form: Form, exponent: Exponent, number: &mut RBig, flat: &mut Vec<(F
             above.into_iter().for_each(|form| dissolve(form, (power, 1), number, flat));
             below.into_iter().for_each(|form| dissolve(form, (-power, 1), number, flat));
         }
+        Form::Number(text) if text == "1" => {}
         // A long number is a named constant of the sheet and stays as it was typed.
         Form::Number(text) if root == 1 && text.len() <= 4 && text.parse::<u64>().is_ok_and(|n| n > 0) => {
             let value = RBig::from(text.parse::<u64>().expect("just parsed"));

@@ -103,6 +103,16 @@ impl Ring {
         Ok(Pair { sine, cosine, hyperbolic, angle })
     }
 
+    /// The pair of an argument; `None` where it is new and there is no room for it.
+    pub fn pair_if_room(&mut self, argument: Fraction, hyperbolic: bool) -> Step<Option<Pair>> {
+        let known = self.pairs().find(|pair| pair.hyperbolic == hyperbolic && self.angles[pair.angle.0] == argument);
+        match known {
+            Some(pair) => Ok(Some(pair)),
+            None if self.generators.len() + 2 > GENERATORS => Ok(None),
+            None => self.pair_of(argument, hyperbolic).map(Some),
+        }
+    }
+
     /// All directions for the pairs that polynomials use; the first replaces every s^2.
     pub fn directions(&self, polynomials: &[&Polynomial]) -> Vec<Directions> {
         let used: Vec<usize> = self

@@ -5,14 +5,16 @@
 //! coefficients of one sign only, the polynomial has that sign (the criterion of Polya and Bernstein; sufficient, not
 //! necessary). Exact arithmetic throughout. Directions of the pairs, factors, and halves of the region are tried in turn.
 
+use super::boxes::Boxes;
 use super::factor::factor;
 use super::fraction::Fraction;
 use super::meter::Step;
 use super::polynomial::{GENERATORS, Monomial, Polynomial};
 use super::ring::{AngleId, Kind, Ring};
-use crate::expression::{Exact, Function, Graph, Node};
+use crate::expression::{Exact, Graph};
 use dashu_int::IBig;
 use dashu_ratio::RBig;
+use std::cell::OnceCell;
 use std::f64::consts::PI;
 
 /// Bounds of a symbol, as elements of the ring; several lower or upper ones may be known.
@@ -56,12 +58,12 @@ impl Ranges {
 
 /// 1 if the polynomial is proved nonnegative, -1 if nonpositive.
 pub(super) fn sign(ring: &Ring, graph: &Graph, ranges: &Ranges, polynomial: &Polynomial) -> Option<i8> {
-    Prover { ring, graph, ranges, strict: false }.sign(polynomial, HALVINGS).ok().flatten()
+    Prover::new(ring, graph, ranges, false).sign(polynomial, HALVINGS).ok().flatten()
 }
 
 /// Like [`sign`], and the polynomial is proved not to vanish inside the region.
 pub(super) fn strict_sign(ring: &Ring, graph: &Graph, ranges: &Ranges, polynomial: &Polynomial) -> Option<i8> {
-    Prover { ring, graph, ranges, strict: true }.sign(polynomial, 0).ok().flatten()
+    Prover::new(ring, graph, ranges, true).sign(polynomial, 0).ok().flatten()
 }
 
 struct Prover<'a> {
@@ -71,6 +73,7 @@ struct Prover<'a> {
     /// Whether zeros inside the region must be excluded. Variables and parameters are inside their ranges for t > 0; the
     /// boxes of functions are widened instead, because a function takes its extreme values inside.
     strict: bool,
+    boxes: OnceCell<Boxes<'a>>,
 }
 
 /// How much a strict proof widens boxes.
@@ -85,7 +88,16 @@ struct Cover {
     denominator: Polynomial,
 }
 
-impl Prover<'_> {
+impl<'a> Prover<'a> {
+    fn new(ring: &'a Ring, graph: &'a Graph, ranges: &'a Ranges, strict: bool) -> Self {
+        Self { ring, graph, ranges, strict, boxes: OnceCell::new() }
+    }
+
+    /// The ranges of the generators, where they are bounded by numbers.
+    fn boxes(&self) -> &Boxes<'a> {
+        self.boxes.get_or_init(|| Boxes::new(self.ring, self.graph, self.ranges))
+    }
+
     fn sign(&self, polynomial: &Polynomial, halvings: u32) -> Step<Option<i8>> {
         let canonical = self.ring.canonical(polynomial)?;
         if let Some(sign) = self.at_once(&canonical)? {
@@ -108,7 +120,10 @@ impl Prover<'_> {
         if halvings == 0 {
             return Ok(None);
         }
-        self.by_halves(&canonical, halvings)
+        match self.by_halves(&canonical, halvings)? {
+            Some(sign) => Ok(Some(sign)),
+            None => self.boxes().sign(&canonical, self.strict),
+        }
     }
 
     fn at_once(&self, polynomial: &Polynomial) -> Step<Option<i8>> {
@@ -179,7 +194,7 @@ impl Prover<'_> {
                 *ranges.entry(variable) = Range { lower: vec![lower.clone()], upper: vec![upper.clone()] };
                 // The next halving takes the other variable.
                 ranges.variables.rotate_left(1);
-                let part = Prover { ranges: &ranges, ..*self };
+                let part = Prover::new(self.ring, self.graph, &ranges, self.strict);
                 signs[place] = match part.at_once(polynomial)? {
                     Some(sign) => Some(sign),
                     None if halvings > 1 => part.by_halves(polynomial, halvings - 1)?,
@@ -312,12 +327,12 @@ impl Prover<'_> {
             }
             Kind::Cosh(_) => whole(t.plus(&Polynomial::one())),
             Kind::Sinh(angle) => {
-                let (lower, upper) = self.numeric(&self.ring.angles[angle.0], 4);
-                if self.strict && lower <= 0.0 && upper >= 0.0 {
+                let range = self.boxes().fraction(&self.ring.angles[angle.0]);
+                if self.strict && range.contains(0.0) {
                     Ok(None)
-                } else if lower >= 0.0 {
+                } else if range.lower() >= 0.0 {
                     whole(t)
-                } else if upper <= 0.0 {
+                } else if range.upper() <= 0.0 {
                     whole(t.negated())
                 } else {
                     Ok(None)
@@ -332,10 +347,10 @@ impl Prover<'_> {
                 whole(t)
             }
             Kind::Root(..) | Kind::Call(..) | Kind::Opaque(_) => {
-                let (lower, upper) = self.numeric_generator(generator, 4);
-                if lower >= 0.0 {
+                let range = self.boxes().generator(generator);
+                if range.lower() >= 0.0 {
                     whole(t)
-                } else if upper <= 0.0 {
+                } else if range.upper() <= 0.0 {
                     whole(t.negated())
                 } else {
                     Ok(None)
@@ -444,8 +459,8 @@ impl Prover<'_> {
             let turns_inside = half(&from).floor() + IBig::ONE < half(&to).ceil();
             return (lower, upper, turns_inside);
         }
-        let (lower, upper) = self.numeric(argument, 4);
-        let (lower, upper) = (lower * f64::from(factor), upper * f64::from(factor));
+        let range = self.boxes().fraction(argument);
+        let (lower, upper) = (range.lower() * f64::from(factor), range.upper() * f64::from(factor));
         if !(upper - lower < 6.0 && lower.abs() < 1e6) {
             return whole;
         }
@@ -507,84 +522,6 @@ impl Prover<'_> {
             _ => None,
         }
     }
-
-    /// Bounds in double precision with a margin; infinite where nothing is known.
-    fn numeric(&self, fraction: &Fraction, depth: u32) -> (f64, f64) {
-        let mut value = self.numeric_polynomial(&fraction.numerator, depth);
-        for (factor, exponent) in &fraction.denominator {
-            let below = self.numeric_polynomial(factor, depth);
-            if below.0 <= 0.0 && below.1 >= 0.0 && !(below.0 == 0.0 && below.1 > 0.0) {
-                return (f64::NEG_INFINITY, f64::INFINITY);
-            }
-            for _ in 0..*exponent {
-                value = times(value, (1.0 / below.1, if below.0 == 0.0 { f64::INFINITY } else { 1.0 / below.0 }));
-            }
-        }
-        let divisor = RBig::from_parts_signed(IBig::ONE, fraction.divisor.clone()).to_f64().value();
-        widened(times(value, (divisor, divisor)))
-    }
-
-    fn numeric_polynomial(&self, polynomial: &Polynomial, depth: u32) -> (f64, f64) {
-        let mut sum = (0.0, 0.0);
-        for (monomial, x) in polynomial.terms() {
-            let x = RBig::from(x.clone()).to_f64().value();
-            let mut product = (x, x);
-            for generator in 0..self.ring.generators.len() {
-                for _ in 0..monomial.0[generator] {
-                    product = times(product, self.numeric_generator(generator, depth));
-                }
-            }
-            sum = widened((sum.0 + product.0, sum.1 + product.1));
-        }
-        sum
-    }
-
-    fn numeric_generator(&self, generator: usize, depth: u32) -> (f64, f64) {
-        let anything = (f64::NEG_INFINITY, f64::INFINITY);
-        let Some(depth) = depth.checked_sub(1) else { return anything };
-        match &self.ring.generators[generator] {
-            Kind::Pi => (PI, PI.next_up()),
-            Kind::Literal(value) => widened((value.to_f64(), value.to_f64())),
-            Kind::Sin(_) | Kind::Cos(_) => (-1.0, 1.0),
-            Kind::Cosh(_) => (1.0, f64::INFINITY),
-            Kind::Exp(_) => (0.0, f64::INFINITY),
-            Kind::Sinh(_) => anything,
-            Kind::Root(2, radicand) => {
-                let (lower, upper) = self.numeric_polynomial(radicand, depth);
-                widened((lower.max(0.0).sqrt(), upper.max(0.0).sqrt()))
-            }
-            Kind::Root(..) => anything,
-            Kind::Call(function, argument) => {
-                let (lower, upper) = self.numeric(argument, depth);
-                // Increasing functions, an outer margin far above their rounding.
-                let range = |low: f64, high: f64| {
-                    let end = |x: f64, out: f64| if x == 0.0 { 0.0 } else { function.evaluate(x) + out };
-                    (end(lower.max(low), -1e-12), end(upper.min(high), 1e-12))
-                };
-                match function {
-                    Function::Asin => range(-1.0, 1.0),
-                    Function::Atan | Function::Asinh | Function::Erf => range(-1e300, 1e300),
-                    Function::Acos => (0.0, PI + 1e-15),
-                    Function::Acosh | Function::Erfc => (0.0, f64::INFINITY),
-                    Function::Sign => (-1.0, 1.0),
-                    _ => anything,
-                }
-            }
-            Kind::Opaque(expression) => match self.graph.node(*expression) {
-                Node::Call(Function::Abs | Function::Sqrt, _) => (0.0, f64::INFINITY),
-                _ => anything,
-            },
-            Kind::Symbol(_) => match self.ranges.of(generator) {
-                Some(range) => {
-                    let bound = |bound: &Fraction| self.numeric(bound, depth);
-                    let lower = range.lower.iter().map(|b| bound(b).0).fold(f64::NEG_INFINITY, f64::max);
-                    let upper = range.upper.iter().map(|b| bound(b).1).fold(f64::INFINITY, f64::min);
-                    (lower, upper)
-                }
-                None => anything,
-            },
-        }
-    }
 }
 
 enum Attempt {
@@ -599,7 +536,7 @@ struct Choices {
 }
 
 impl Choices {
-    fn pick<'a>(&mut self, bounds: &[&'a Fraction]) -> Option<&'a Fraction> {
+    fn pick<'b>(&mut self, bounds: &[&'b Fraction]) -> Option<&'b Fraction> {
         let count = bounds.len().max(1);
         let place = self.left % count;
         self.left /= count;
@@ -659,23 +596,6 @@ fn cosine_box(quarters: &RBig) -> (RBig, RBig) {
     let value = pxfm::f_cos(quarters.to_f64().value() * (PI / 2.0));
     let end = |x: f64| RBig::try_from((x * 1e12).round()).unwrap_or(RBig::ZERO) / RBig::from(1_000_000_000_000u64);
     (end(value - 1e-11).max(-RBig::ONE), end(value + 1e-11).min(RBig::ONE))
-}
-
-fn times(a: (f64, f64), b: (f64, f64)) -> (f64, f64) {
-    // An end that is 0 times an infinite one is 0: the infinity is not attained.
-    let product = |x: f64, y: f64| if x == 0.0 || y == 0.0 { 0.0 } else { x * y };
-    let products = [product(a.0, b.0), product(a.0, b.1), product(a.1, b.0), product(a.1, b.1)];
-    widened((
-        products.iter().copied().fold(f64::INFINITY, f64::min),
-        products.iter().copied().fold(f64::NEG_INFINITY, f64::max),
-    ))
-}
-
-/// One unit in the last place outward, except where an end is exactly 0.
-fn widened(range: (f64, f64)) -> (f64, f64) {
-    let lower = if range.0 == 0.0 { 0.0 } else { range.0.next_down() };
-    let upper = if range.1 == 0.0 { 0.0 } else { range.1.next_up() };
-    (lower, upper)
 }
 
 /// An exact number of the graph as a rational number.
