@@ -29,7 +29,16 @@ pub(super) fn run(options: &ElementOptions) -> Result<Exit, Failure> {
         ElementFormat::Fortran => source(Language::Fortran)?,
         ElementFormat::Julia => source(Language::Julia)?,
     };
-    output::print(&text);
+    // What the formulas rest on goes where they go.
+    let comment: Option<fn(&str) -> String> = match format {
+        ElementFormat::Latex => Some(|note| format!("% {note}\n")),
+        ElementFormat::Typst => Some(|note| format!("// {note}\n")),
+        ElementFormat::Mathml => Some(|note| format!("<!-- {} -->\n", note.replace("--", "- -"))),
+        _ => None,
+    };
+    let comments: String =
+        comment.map_or_else(String::new, |comment| report.notes.iter().map(|n| comment(n)).collect());
+    output::print(&(comments + &text));
     if format != ElementFormat::Text {
         report.notes.iter().for_each(|note| output::note(note));
     }

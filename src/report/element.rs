@@ -3,7 +3,7 @@
 use super::notation::{Document, Equation};
 use super::source::{Language, Request, SourceError, source};
 use super::stamp::Stamp;
-use crate::expression::{ExpressionId, Graph, SymbolId};
+use crate::expression::{BinaryFunction, ExpressionId, Function, Graph, Node, SymbolId};
 use crate::geometry::Surface;
 use crate::language::{Bindings, Model, PatchId};
 use crate::simplify::{Fact, Form, Quantity, closed_forms, evaluation_form};
@@ -30,12 +30,23 @@ pub enum Written {
     Form(Form),
     /// Operations of a formula that is not written out.
     TooLong(u64),
+    /// There is none, because the patch has no normal.
+    Undefined,
 }
 
 impl Written {
+    /// The formula as text; null where it is not written out.
+    fn json(&self) -> Value {
+        match self {
+            Written::Form(form) => json!(form.text()),
+            Written::TooLong(_) | Written::Undefined => Value::Null,
+        }
+    }
+
     fn text(&self) -> String {
         match self {
             Written::Form(form) => form.text(),
+            Written::Undefined => "undefined".to_owned(),
             Written::TooLong(u64::MAX) => "more than 10^19 operations, too long to print here".to_owned(),
             Written::TooLong(count) => format!("{count} operations, too long to print here"),
         }
@@ -107,6 +118,9 @@ impl ElementReport {
             if let Some(form) = quantity.and_then(|quantity| closed.forms.get(&quantity)) {
                 return Written::Form(form.clone());
             }
+            if closed.is_degenerate && quantity.is_some_and(Quantity::needs_normal) {
+                return Written::Undefined;
+            }
             if quantity.is_some() && plain.last() != Some(&key) {
                 plain.push(key);
             }
@@ -128,12 +142,25 @@ impl ElementReport {
         let operations = match &element.forms[0] {
             Written::Form(form) => form.operations() as u64,
             Written::TooLong(count) => *count,
+            Written::Undefined => 0,
         };
         entries.insert(3, element);
 
         let mut notes = Vec::new();
-        for condition in &closed.conditions {
+        if closed.is_degenerate {
+            notes.push("the patch is degenerate: dA = 0 everywhere, so it has no normal and no curvature".to_owned());
+        }
+        if has_creases(&graph, &patch.position) {
+            notes.push("curvatures and facts hold away from the creases of abs, sign, min, max and if".to_owned());
+        }
+        for condition in closed.conditions() {
             notes.push(format!("the signs hold for {condition}"));
+        }
+        for condition in &closed.area_conditions {
+            notes.push(format!("the area as it is written needs {condition}"));
+        }
+        if closed.is_raw {
+            notes.push("dA is shown as it is defined: no shorter form was found".to_owned());
         }
         for factor in &closed.unproved_signs {
             let text = factor.text();
@@ -160,10 +187,11 @@ impl ElementReport {
         }
 
         let mut outputs: Vec<(String, ExpressionId)> = Vec::new();
-        for (_, name, _, raw) in &vectors {
+        let exists = |quantity: Quantity| !(closed.is_degenerate && quantity.needs_normal());
+        for (_, name, _, raw) in vectors.iter().filter(|(_, _, quantity, _)| quantity.is_none_or(|q| exists(q(0)))) {
             outputs.extend(axes.iter().zip(["x", "y", "z"]).map(|(&axis, end)| (format!("{name}_{end}"), raw[axis])));
         }
-        for (key, quantity, raw) in scalars {
+        for (key, quantity, raw) in scalars.into_iter().filter(|(_, quantity, _)| exists(*quantity)) {
             let formula = if quantity == Quantity::Element { evaluated.unwrap_or(raw) } else { raw };
             outputs.push((key.to_owned(), formula));
         }
@@ -195,7 +223,7 @@ impl ElementReport {
                 .iter()
                 .map(|written| match written {
                     Written::Form(form) => Some(form.clone()),
-                    Written::TooLong(_) => None,
+                    Written::TooLong(_) | Written::Undefined => None,
                 })
                 .collect();
             let Some(right) = forms else { continue };
@@ -236,6 +264,18 @@ impl ElementReport {
             },
         )
     }
+}
+
+/// Whether a position has jumps of its own slope in it.
+fn has_creases(graph: &Graph, position: &[ExpressionId]) -> bool {
+    graph.reachable(position).into_iter().any(|id| {
+        matches!(
+            graph.node(id),
+            Node::Call(Function::Abs | Function::Sign, _)
+                | Node::Call2(BinaryFunction::Min | BinaryFunction::Max, ..)
+                | Node::Select(..)
+        )
+    })
 }
 
 /// Operations of a formula written out in full; shared parts count each time they stand. Saturates.
@@ -285,8 +325,8 @@ pub fn element_json(report: &ElementReport, stamp: &Stamp) -> Value {
     object.insert("variables".into(), json!(report.variables));
     for entry in &report.entries {
         let value = match &entry.forms[..] {
-            [one] => json!(one.text()),
-            several => json!(several.iter().map(Written::text).collect::<Vec<_>>()),
+            [one] => one.json(),
+            several => Value::Array(several.iter().map(Written::json).collect()),
         };
         object.insert(entry.key.to_owned(), value);
         if entry.key == "dA" {

@@ -214,6 +214,10 @@ impl<'a> Elements<'a> {
     /// |g| sqrt(P), the area element.
     pub fn element(&mut self) -> Step<Vec<Rooted>> {
         let content = self.content.clone();
+        if content.is_zero() || self.square.is_zero() {
+            let one = Polynomial::one();
+            return Ok(vec![Rooted { outside: Fraction::zero(), bars: Vec::new(), root: one.clone(), below: one }]);
+        }
         let mut candidates = Vec::new();
         for (outside, root) in self.squares(&self.square.clone())? {
             let above = self.ring().factored(&content.numerator)?;
@@ -455,6 +459,9 @@ impl Elements<'_> {
         for (quantity, value) in [(Quantity::E, &e), (Quantity::F, &f), (Quantity::G, &g)] {
             values.push((quantity, plain(value.clone())));
         }
+        if element.outside.is_zero() {
+            return Ok(values);
+        }
         // Over the element: value/(outside sqrt(root)).
         let over = |elements: &Self, value: &Fraction| -> Step<Rooted> {
             let outside = elements.ring().divide(value, &element.outside)?.ok_or(Exhausted)?;
@@ -596,11 +603,8 @@ fn take_content(ring: &Ring, vector: &[Fraction; 3]) -> Step<(Fraction, [Polynom
 impl Printer<'_> {
     /// The shortest form of a value.
     pub fn shortest(&mut self, value: &Rooted) -> Step<Form> {
-        if value.outside.is_zero() {
-            return Ok(Form::integer(0));
-        }
         let form = self.rooted(value)?;
-        if !value.root.is_one() || !value.below.is_one() || !value.bars.is_empty() {
+        if value.outside.is_zero() || !value.root.is_one() || !value.below.is_one() || !value.bars.is_empty() {
             return Ok(form);
         }
         let termwise = self.fraction(&value.outside)?;
@@ -609,6 +613,9 @@ impl Printer<'_> {
 
     /// A value with a root, in its shortest form.
     pub fn rooted(&mut self, value: &Rooted) -> Step<Form> {
+        if value.outside.is_zero() {
+            return Ok(Form::integer(0));
+        }
         let mut number = ratio(IBig::ONE, value.outside.divisor.clone());
         let mut exponents = [0i8; GENERATORS];
         let mut others: Vec<(Form, Exponent)> = Vec::new();

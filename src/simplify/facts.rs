@@ -43,9 +43,12 @@ impl fmt::Display for Fact {
     }
 }
 
-/// The facts of a patch; none that could not be proved.
+/// The facts of a patch, after its element was made; none that could not be proved, and none of a patch without area.
 pub(super) fn facts(elements: &mut Elements<'_>) -> Step<Vec<Fact>> {
     let mut facts = Vec::new();
+    if elements.square.is_zero() || elements.content.is_zero() {
+        return Ok(facts);
+    }
     let [e, f, g] = elements.first.clone();
     if f.is_zero() {
         facts.push(Fact::Orthogonal);
@@ -96,7 +99,9 @@ pub(super) fn facts(elements: &mut Elements<'_>) -> Step<Vec<Fact>> {
         let below = ring.multiply(&ring.multiply(&square, &square)?, &Fraction::whole(elements.square.clone()))?;
         let below = ring.multiply(&four, &below)?;
         let squared = ring.divide(&top, &below)?;
+        // Where the normal turns around, H changes its sign although H^2 is constant.
         if let Some(squared) = squared
+            && elements.unproved.is_empty()
             && is_constant(elements, &squared)?
         {
             facts.push(Fact::ConstantMean);

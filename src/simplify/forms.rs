@@ -11,7 +11,7 @@ use super::read::Arguments;
 use super::stability::is_stable;
 use super::total::Total;
 use crate::calculus::{cross, norm};
-use crate::expression::{ExpressionId, Graph, SymbolId, evaluate_one};
+use crate::expression::{ExpressionId, Function, Graph, SymbolId, evaluate_one};
 use crate::language::{Bound, Model, Patch, PatchId};
 use std::collections::BTreeMap;
 
@@ -68,6 +68,19 @@ pub enum Quantity {
     Mean,
 }
 
+impl Quantity {
+    /// Whether it is undefined where dA is 0.
+    pub fn needs_normal(self) -> bool {
+        use Quantity::{Gauss, L, M, Mean, N2, Normal};
+        matches!(self, Normal(_) | L | M | N2 | Gauss | Mean)
+    }
+
+    /// Whether it turns around with the normal, or is a root: its form may rest on signs.
+    fn has_sign(self) -> bool {
+        !matches!(self, Quantity::E | Quantity::F | Quantity::G | Quantity::Gauss)
+    }
+}
+
 /// The closed forms of a patch; a quantity that is missing has none that could be found and proved.
 #[derive(Clone, Debug, Default)]
 pub struct ClosedForms {
@@ -77,8 +90,14 @@ pub struct ClosedForms {
     pub area: Option<Form>,
     /// What is proved of the patch.
     pub facts: Vec<Fact>,
-    /// Conditions on the parameters, beyond those of the sheet, under which the signs in the forms were proved.
-    pub conditions: Vec<String>,
+    /// Conditions on the parameters, beyond those of the sheet, under which the signs in a form were proved.
+    pub conditions_of: BTreeMap<Quantity, Vec<String>>,
+    /// Conditions under which the exact area is defined.
+    pub area_conditions: Vec<String>,
+    /// Whether the area element is shown as it is defined, because nothing shorter was found.
+    pub is_raw: bool,
+    /// Whether the patch has no area: dA = 0 everywhere.
+    pub is_degenerate: bool,
     /// Factors of the area element whose sign could not be proved: they stand between bars.
     pub unproved_signs: Vec<Form>,
     /// Quantities for which the allowance of steps ran out: no form, or not the shortest one.
@@ -115,19 +134,29 @@ pub fn closed_forms(model: &Model, patch: PatchId) -> ClosedForms {
             }
         }
         found.facts = with_allowance(READING, || facts(&mut elements)).unwrap_or_default();
-        found.conditions = elements.conditions.clone();
+        for quantity in found.forms.keys().filter(|quantity| quantity.has_sign()) {
+            found.conditions_of.insert(*quantity, elements.conditions.clone());
+        }
         merge(&mut best, found);
     }
     if let (Some(raw), Some(element)) = (raw, best.forms.get_mut(&Quantity::Element))
         && raw.operations() < element.operations()
     {
         *element = raw;
-        best.conditions.clear();
+        best.is_raw = true;
+        best.conditions_of.remove(&Quantity::Element);
         best.unproved_signs.clear();
     }
     if let Some(element) = best.forms.get(&Quantity::Element) {
-        let mut total = Total { model, patch, graph: graph.clone(), names: names(model, patch) };
+        let mut total =
+            Total { model, patch, graph: graph.clone(), names: names(model, patch), conditions: Vec::new() };
         best.area = with_allowance(INTEGRATING, || total.area(element));
+        best.area_conditions = total.conditions;
+        best.is_degenerate = *element == Form::integer(0);
+    }
+    if best.is_degenerate {
+        best.forms.retain(|quantity, _| !quantity.needs_normal());
+        best.facts.clear();
     }
     for list in [&mut best.cut_short, &mut best.failed] {
         list.retain(|quantity| !best.forms.contains_key(quantity));
@@ -137,15 +166,18 @@ pub fn closed_forms(model: &Model, patch: PatchId) -> ClosedForms {
     best
 }
 
-/// The shorter form of each quantity; conditions go with the element.
+/// The shorter form of each quantity, with its conditions.
 fn merge(best: &mut ClosedForms, found: ClosedForms) {
     for (quantity, form) in found.forms {
         if best.forms.get(&quantity).is_none_or(|known| form.is_better_than(known)) {
             best.forms.insert(quantity, form);
             best.failed.retain(|failed| *failed != quantity);
+            match found.conditions_of.get(&quantity) {
+                Some(conditions) => best.conditions_of.insert(quantity, conditions.clone()),
+                None => best.conditions_of.remove(&quantity),
+            };
             if quantity == Quantity::Element {
                 best.unproved_signs = found.unproved_signs.clone();
-                best.conditions = found.conditions.clone();
             }
         }
     }
@@ -164,7 +196,7 @@ fn merge(best: &mut ClosedForms, found: ClosedForms) {
 pub struct ElementForm {
     /// The form; it is proved equal to |phi_u x phi_v|.
     pub form: Form,
-    /// See [`ClosedForms::conditions`].
+    /// See [`ClosedForms::conditions_of`].
     pub conditions: Vec<String>,
 }
 
@@ -172,7 +204,15 @@ impl ClosedForms {
     /// The form of the area element.
     pub fn element(&self) -> Option<ElementForm> {
         let form = self.forms.get(&Quantity::Element)?.clone();
-        Some(ElementForm { form, conditions: self.conditions.clone() })
+        Some(ElementForm { form, conditions: self.conditions_of.get(&Quantity::Element).cloned().unwrap_or_default() })
+    }
+
+    /// The conditions of all forms.
+    pub fn conditions(&self) -> Vec<String> {
+        let mut all: Vec<String> = self.conditions_of.values().flatten().cloned().collect();
+        all.sort();
+        all.dedup();
+        all
     }
 }
 
@@ -219,7 +259,8 @@ fn raw_element(graph: &mut Graph, patch: &Patch, formulas: &Formulas) -> Option<
 }
 
 /// The area element as it is best evaluated: the proved closed form where it is about as accurate as the norm of the cross
-/// product and holds without further conditions; `None` where it is not.
+/// product; `None` where it is not. A form whose sign holds under conditions is evaluated as its absolute value, which needs
+/// none; if more than its sign rests on them, it is not evaluated.
 ///
 /// `norm` is the norm in `graph`, `values` the parameters, `element` the closed form of the patch.
 pub fn evaluation_form(
@@ -230,16 +271,18 @@ pub fn evaluation_form(
     values: &dyn Fn(SymbolId) -> f64,
     element: &ElementForm,
 ) -> Option<ExpressionId> {
-    // Conditions were derived from the values of the sheet; other values might not fulfil them.
-    let as_in_the_sheet = model
-        .parameters
-        .iter()
-        .all(|parameter| evaluate_one(&model.graph, parameter.default, |_| f64::NAN) == values(parameter.symbol));
-    if !element.conditions.is_empty() && !as_in_the_sheet {
-        return None;
-    }
     let patch = &model.patches[patch.0];
-    let formula = parse_back(graph, &element.form.text(), &names(model, patch))?;
+    let mut formula = parse_back(graph, &element.form.text(), &names(model, patch))?;
+    if !element.conditions.is_empty() {
+        let mut own = model.graph.clone();
+        let formulas = Formulas::new(&mut own, patch);
+        let forms = BTreeMap::from([(Quantity::Element, element.form.clone())]);
+        let certificate = Certificate::new(model, patch, &formulas, &own);
+        if with_allowance(EVALUATING, || certificate.check(&forms, &[]))[&Quantity::Element] != Proof::Equal {
+            return None;
+        }
+        formula = graph.call(Function::Abs, formula);
+    }
     let limits = limits(graph, patch, values);
     is_stable(graph, formula, norm, patch.variables, limits, values).then_some(formula)
 }
@@ -267,7 +310,8 @@ pub fn exact_area(model: &Model, patch: PatchId, values: &dyn Fn(SymbolId) -> f6
         if proofs[&Quantity::Element] != Proof::Equal {
             return None;
         }
-        let mut total = Total { model, patch, graph: graph.clone(), names: names(model, patch) };
+        let mut total =
+            Total { model, patch, graph: graph.clone(), names: names(model, patch), conditions: Vec::new() };
         let area = total.area(&form)?;
         let formula = parse_back(&mut total.graph, &area.text(), &total.names)?;
         Some((area, evaluate_one(&total.graph, formula, values)))

@@ -155,7 +155,7 @@ pub(super) fn guesses(reader: &mut Reader<'_>, model: &Model, ranges: &Ranges, u
         }
     }
     let exact = at_the_values(reader, model, ranges)?;
-    guesses.push(Guess { text: "the values of the sheet".to_owned(), ranges: exact });
+    guesses.push(Guess { text: "the values of the sheet, and perhaps for no others".to_owned(), ranges: exact });
     Ok(guesses)
 }
 

@@ -70,7 +70,9 @@ impl Ring {
         if let Some(known) = self.generators.iter().position(|known| *known == kind) {
             return Ok(known);
         }
-        if self.generators.len() == GENERATORS {
+        // A sine is always followed by its cosine.
+        let room = if matches!(kind, Kind::Sin(_) | Kind::Sinh(_)) { 2 } else { 1 };
+        if self.generators.len() + room > GENERATORS {
             return Err(Exhausted);
         }
         self.generators.push(kind);

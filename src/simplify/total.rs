@@ -23,6 +23,8 @@ pub(super) struct Total<'a> {
     pub graph: Graph,
     /// Symbols by their names in forms.
     pub names: Vec<(String, SymbolId)>,
+    /// What must not be zero for the area that was found.
+    pub conditions: Vec<String>,
 }
 
 impl Total<'_> {
@@ -34,16 +36,17 @@ impl Total<'_> {
         let integrand = parse_back(&mut self.graph, &element.text(), &self.names)?;
         let mut best: Option<Form> = None;
         for [inner, outer] in [[0, 1], [1, 0]] {
-            if let Ok(form) = self.in_order(integrand, inner, outer)
+            if let Ok((form, conditions)) = self.in_order(integrand, inner, outer)
                 && best.as_ref().is_none_or(|known| form.operations() < known.operations())
             {
                 best = Some(form);
+                self.conditions = conditions;
             }
         }
         best
     }
 
-    fn in_order(&mut self, integrand: ExpressionId, inner: usize, outer: usize) -> Step<Form> {
+    fn in_order(&mut self, integrand: ExpressionId, inner: usize, outer: usize) -> Step<(Form, Vec<String>)> {
         let limits = |interval: &Interval| match (interval.lower, interval.upper) {
             (Bound::Finite(lower), Bound::Finite(upper)) => Ok((lower, upper)),
             _ => Err(Exhausted),
@@ -59,7 +62,14 @@ impl Total<'_> {
         let (mut reader, ranges) = self.reader(&[total], Purpose::Printing)?;
         let graph = reader.graph;
         let value = reader.read(total, &|ring: &Ring, p: &Polynomial| sign(ring, graph, &ranges, p))?;
-        Printer::new(reader.ring.clone(), graph, self.patch.variables, NODES).fraction(&value)
+        let mut printer = Printer::new(reader.ring.clone(), graph, self.patch.variables, NODES);
+        let mut conditions = Vec::new();
+        for (factor, _) in &value.denominator {
+            if strict_sign(&reader.ring, graph, &ranges, factor).is_none() {
+                conditions.push(format!("{} != 0", printer.polynomial(factor)?.text()));
+            }
+        }
+        Ok((printer.fraction(&value)?, conditions))
     }
 
     fn reader(&self, formulas: &[ExpressionId], purpose: Purpose) -> Step<(Reader<'_>, Ranges)> {
