@@ -17,7 +17,7 @@ use super::meter::{Exhausted, Step, with_allowance};
 use super::plan::Printer;
 use super::polynomial::{GENERATORS, Polynomial};
 use super::product::{Exponent, flipped, is_negative, product, ratio};
-use super::radical::binomial_root;
+use super::radical::{binomial_root, root_in_ring};
 use super::read::{Arguments, Purpose, Reader};
 use super::region::{self, guesses};
 use super::ring::{Directions, Kind, Pair, Ring};
@@ -257,6 +257,14 @@ impl<'a> Elements<'a> {
                 None => bars.push((factor.clone(), *exponent)),
             }
         }
+        let mut root = product.root;
+        if !root.is_one()
+            && let Some(known) = root_in_ring(self.ring(), &root)?
+            && matches!(known.terms(), [(_, x)] if x.is_positive())
+        {
+            value.numerator = self.ring().product(&value.numerator, &known)?;
+            root = Polynomial::one();
+        }
         let mut outside = self.ring().cancelled(value)?;
         let mut below = Polynomial::one();
         for (place, kind) in self.ring().generators.iter().enumerate() {
@@ -268,7 +276,7 @@ impl<'a> Elements<'a> {
                 below = below.times(radicand)?;
             }
         }
-        self.balanced(Rooted { outside, bars, root: product.root, below })
+        self.balanced(Rooted { outside, bars, root, below })
     }
 
     /// Squares that show only in half angles: 1 - cos u = 2 sin(u/2)^2. With s = 2SC, c = C^2 - S^2, 1 = C^2 + S^2 a

@@ -44,10 +44,19 @@ impl fmt::Display for Fact {
 }
 
 /// The facts of a patch, after its element was made; none that could not be proved, and none of a patch without area.
-pub(super) fn facts(elements: &mut Elements<'_>) -> Step<Vec<Fact>> {
+///
+/// When the allowance runs out, what was found until then stands.
+pub(super) fn facts(elements: &mut Elements<'_>) -> Vec<Fact> {
     let mut facts = Vec::new();
+    // Exhausted: the rest stays open.
+    let _ = collect(elements, &mut facts);
+    facts.sort();
+    facts
+}
+
+fn collect(elements: &mut Elements<'_>, facts: &mut Vec<Fact>) -> Step<()> {
     if elements.square.is_zero() || elements.content.is_zero() {
-        return Ok(facts);
+        return Ok(());
     }
     let [e, f, g] = elements.first.clone();
     if f.is_zero() {
@@ -107,8 +116,7 @@ pub(super) fn facts(elements: &mut Elements<'_>) -> Step<Vec<Fact>> {
             facts.push(Fact::ConstantMean);
         }
     }
-    facts.sort();
-    Ok(facts)
+    Ok(())
 }
 
 /// Whether both partial derivatives are zero.

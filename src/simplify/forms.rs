@@ -133,7 +133,7 @@ pub fn closed_forms(model: &Model, patch: PatchId) -> ClosedForms {
                 Proof::Open => found.cut_short.push(quantity),
             }
         }
-        found.facts = with_allowance(READING, || facts(&mut elements)).unwrap_or_default();
+        found.facts = with_allowance(READING, || facts(&mut elements));
         for quantity in found.forms.keys().filter(|quantity| quantity.has_sign()) {
             found.conditions_of.insert(*quantity, elements.conditions.clone());
         }

@@ -162,10 +162,11 @@ impl Ring {
                 denominator.retain(|(_, exponent)| *exponent > 0);
             }
             // The radicand is primitive where it stands below as a factor of its own.
-            if let Some(at) = denominator.iter().position(|(factor, _)| factor == radicand)
-                && let Some(quotient) = numerator.divided_by(&root)?
+            let (unit, primitive) = radicand.primitive();
+            if let Some(at) = denominator.iter().position(|(factor, _)| *factor == primitive)
+                && let Some(quotient) = self.quotient(numerator, &root)?
             {
-                *numerator = quotient;
+                *numerator = quotient.scaled(&unit)?;
                 denominator[at].1 -= 1;
                 include(denominator, &root, 1);
                 denominator.retain(|(_, exponent)| *exponent > 0);
@@ -181,9 +182,17 @@ impl Ring {
         }
         if let Some(place) = super::laurent::single_generator(divisor)
             && let Kind::Root(2, radicand) = &self.generators[place]
-            && let Some(quotient) = dividend.divided_by(radicand)?
         {
-            return Ok(Some(quotient.times(divisor)?));
+            // (a r + b q)/q = a q + b for q^2 = r
+            let coefficients = dividend.coefficients(place);
+            if let Some((first, [second])) = coefficients.split_first()
+                && let Some(first) = first.divided_by(radicand)?
+            {
+                return Ok(Some(first.times(divisor)?.plus(second)));
+            }
+            if let Some(quotient) = dividend.divided_by(radicand)? {
+                return Ok(Some(quotient.times(divisor)?));
+            }
         }
         let relevant = self.pairs().any(|pair| divisor.uses(pair.sine) || divisor.uses(pair.cosine));
         if !relevant {

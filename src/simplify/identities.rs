@@ -16,15 +16,15 @@ const HIGHEST_MULTIPLE: i8 = 24;
 const HIGH_DEGREE: i8 = 7;
 
 /// Coefficients of cosine and sine, circular or hyperbolic, of the multiples 0, 1, ... of an angle.
-struct Harmonics(Vec<[RBig; 2]>);
+pub(super) struct Harmonics(Vec<[RBig; 2]>);
 
 impl Harmonics {
-    /// x s^i c^j
-    fn of(i: i8, j: i8, hyperbolic: bool, x: &RBig) -> Self {
+    /// s^i c^j
+    pub fn of(i: i8, j: i8, hyperbolic: bool) -> Self {
         let size = (i + j) as usize + 1;
         let zero = || vec![[RBig::ZERO, RBig::ZERO]; size];
         let mut now = zero();
-        now[0][0] = x.clone();
+        now[0][0] = RBig::ONE;
         let half = RBig::ONE / RBig::from(2u8);
         for by_sine in (0..i).map(|_| true).chain((0..j).map(|_| false)) {
             let mut next = zero();
@@ -55,6 +55,20 @@ impl Harmonics {
             now = next;
         }
         Self(now)
+    }
+
+    fn times(mut self, x: &RBig) -> Self {
+        self.0.iter_mut().flatten().for_each(|own| *own *= x);
+        self
+    }
+
+    /// Multiple, 0 for a cosine and 1 for a sine, coefficient.
+    pub fn parts(&self) -> impl Iterator<Item = (usize, usize, &RBig)> {
+        self.0
+            .iter()
+            .enumerate()
+            .flat_map(|(multiple, pair)| pair.iter().enumerate().map(move |(kind, x)| (multiple, kind, x)))
+            .filter(|(.., x)| !x.is_zero())
     }
 
     fn add(&mut self, other: &Self) {
@@ -233,7 +247,7 @@ impl Printer<'_> {
             for (exponents, x) in &laurent.terms {
                 let mut rest = *exponents;
                 (rest[pair.sine], rest[pair.cosine]) = (0, 0);
-                let own = Harmonics::of(exponents[pair.sine], exponents[pair.cosine], pair.hyperbolic, x);
+                let own = Harmonics::of(exponents[pair.sine], exponents[pair.cosine], pair.hyperbolic).times(x);
                 match harmonics.iter_mut().find(|(known, _)| *known == rest) {
                     Some((_, total)) => total.add(&own),
                     None => harmonics.push((rest, own)),

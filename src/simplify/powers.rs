@@ -68,8 +68,13 @@ impl Printer<'_> {
             .collect();
         let mut product = Polynomial::one();
         for (generator, radicand) in &roots {
-            if super::factor::square_root(radicand)?.is_none() {
-                product = self.ring.canonical(&product.times(radicand)?)?;
+            if super::factor::square_root(radicand)?.is_some() {
+                continue;
+            }
+            let joined = self.ring.canonical(&product.times(radicand)?)?;
+            // A product of long sums is longer than the two.
+            if joined.terms().len() <= 1 + product.terms().len().max(radicand.terms().len()) {
+                product = joined;
                 rest[*generator] = 0;
             }
         }

@@ -58,7 +58,7 @@ pub(super) fn binomial_root(ring: &Ring, polynomial: &Polynomial) -> Step<Option
 }
 
 /// A polynomial whose square is the given one in the ring: radicands that divide it give their roots.
-fn root_in_ring(ring: &Ring, polynomial: &Polynomial) -> Step<Option<Polynomial>> {
+pub(super) fn root_in_ring(ring: &Ring, polynomial: &Polynomial) -> Step<Option<Polynomial>> {
     let mut rest = ring.canonical(polynomial)?;
     let mut root = Polynomial::one();
     for (place, kind) in ring.generators.iter().enumerate() {

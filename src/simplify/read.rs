@@ -155,7 +155,14 @@ impl<'a> Reader<'a> {
     /// The argument as a sum of rational multiples of bases.
     fn bases(&self, family: Family, is_exp: bool, argument: ExpressionId) -> Step<Vec<(Linear, RBig)>> {
         let terms = linear(self.graph, argument)?;
-        let alone = |(key, coefficient): (Key, RBig)| (vec![(key, RBig::ONE)], coefficient);
+        let alone = |(key, coefficient): (Key, RBig)| {
+            // Plain numbers are related to no other: sin(3/2) is not written in sin(1/10).
+            if key.is_empty() {
+                let sign = if coefficient.is_negative() { -RBig::ONE } else { RBig::ONE };
+                return (vec![(key, coefficient.abs())], sign);
+            }
+            (vec![(key, RBig::ONE)], coefficient)
+        };
         if self.arguments == Arguments::Split || is_exp {
             return Ok(terms.into_iter().map(alone).collect());
         }
@@ -300,6 +307,20 @@ impl<'a> Reader<'a> {
                 let inner = self.get(argument, sign)?;
                 let square = self.ring.multiply(&inner, &inner)?;
                 self.root(&square, 2, sign)?.map_or_else(|| self.generator(Kind::Opaque(id)), Ok)
+            }
+            Function::Sign => {
+                let inner = self.get(argument, sign)?;
+                let own = |polynomial: &Polynomial| sign(&self.ring, polynomial);
+                let below = inner.denominator.iter().map(
+                    |(factor, exponent)| {
+                        if exponent % 2 == 0 { Some(1) } else { own(factor) }
+                    },
+                );
+                // Where it is 0 it is on a crease.
+                match below.fold(own(&inner.numerator), |total, next| Some(total? * next?)) {
+                    Some(known) if !inner.is_zero() => Ok(Fraction::whole(Polynomial::integer(i64::from(known)))),
+                    _ => self.function(function, inner),
+                }
             }
             _ => {
                 let inner = self.get(argument, sign)?;
