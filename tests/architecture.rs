@@ -37,11 +37,11 @@ fn rust_files(folder: &Path, found: &mut Vec<PathBuf>) {
     }
 }
 
-/// Stages mentioned as `crate::stage` or within `crate::{...}` in code (comments do not count).
+/// Stages mentioned as `crate::stage`, `super::super::stage` or within `crate::{...}` in code (comments do not count).
 fn used_stages(text: &str) -> Vec<(usize, String)> {
     let code: String = text.lines().map(|line| line.split("//").next().unwrap_or("")).collect::<Vec<_>>().join("\n");
     let mut used = Vec::new();
-    for (at, found) in code.match_indices("crate::") {
+    for (at, found) in code.match_indices("crate::").chain(code.match_indices("super::super::")) {
         let rest = &code[at + found.len()..];
         let line = code[..at].matches('\n').count() + 1;
         let names = if rest.starts_with('{') { group_heads(rest) } else { vec![leading_name(rest)] };

@@ -2,6 +2,7 @@
 
 use approx::assert_relative_eq;
 use quadrel::expression::evaluate_one;
+use quadrel::integrals::{NoProgress, Settings, answer};
 use quadrel::language::{Model, Source, check};
 use std::f64::consts::PI;
 
@@ -173,4 +174,38 @@ fn exponential_calls_are_refused() {
     }
     let errors = check(Source::new("test.sheet", format!("{sheet}a = f59(1/7)"))).unwrap_err();
     assert!(errors.diagnostics.iter().any(|d| d.code == "too-large" || d.code == "too-deep"), "{errors}");
+}
+
+/// A function that nothing calls is checked all the same.
+#[test]
+fn names_in_functions_that_nothing_calls_are_known() {
+    let plate = "s(u, v) = (u, v, 0*u) on u in [0, 1], v in [0, 1]";
+    let errors = check(Source::new("test.sheet", format!("f(x) = g(x) + 1\n{plate}"))).expect_err("g is unknown");
+    assert_eq!(errors.diagnostics[0].code, "unknown-name");
+    assert!(check(Source::new("test.sheet", format!("f(x) = x + 1\n{plate}"))).is_ok());
+}
+
+/// Functionals may stand in functions; a value that rests on one has no range.
+#[test]
+fn functionals_in_functions() {
+    let plate = "s(u, v) = (u, v, 0*u) on u in [0, 1], v in [0, 2]";
+    let found = model(&format!("{plate}\nm(k) = k*area(s)\na = m(3)"));
+    assert_eq!(found.value_named("a").expect("a").depends_on.len(), 1);
+    let errors = check(Source::new("test.sheet", format!("{plate}\nA = area(s) in (0, 3)"))).expect_err("a range");
+    assert!(errors.diagnostics[0].message.contains("depends on an integral"), "{}", errors.diagnostics[0].message);
+}
+
+/// Thousands of patches in one chain: plates of slope i, each of area sqrt(1 + i^2).
+#[test]
+fn thousands_of_patches() {
+    let count = 3_000;
+    let names: Vec<String> = (0..count).map(|i| format!("p{i}")).collect();
+    let patches: String =
+        (0..count).map(|i| format!("p{i}(u, v) = (u, v, {i}*u) on u in [0, 1], v in [0, 1]\n")).collect();
+    let model = model(&format!("{patches}a = area({})", names.join(" + ")));
+    let bindings = model.bind(&[]).expect("no parameters");
+    let found = answer(&model, &bindings, &[], &Settings::default(), &NoProgress).expect("an area");
+    let expected: f64 = (0..count).map(|i| f64::from(i).hypot(1.0)).sum();
+    let component = &found[0].components[0];
+    assert!((component.value - expected).abs() <= component.error, "{} {expected}", component.value);
 }

@@ -209,7 +209,12 @@ impl Checker {
         for &index in circle {
             self.definitions[index].state = State::Broken;
         }
-        self.error_with_hint("circle", span, message, "write one of them without the others".to_owned());
+        let hint = if circle.len() == 1 {
+            "give it a value without its own name"
+        } else {
+            "write one of them without the others"
+        };
+        self.error_with_hint("circle", span, message, hint.to_owned());
     }
 
     pub(super) fn distinct_arguments(&mut self, arguments: &[Name]) -> Checked<()> {

@@ -72,6 +72,11 @@ fn bracket_after_operand(c: &Context<'_>) -> Diagnostic {
     let inner = close.and_then(|close| c.short(c.at + 1, close.checked_sub(1)?));
     let is_unit = inner.is_some_and(|inner| !inner.contains(',') && !inner.starts_with(|c: char| c.is_ascii_digit()));
     match inner.filter(|_| is_unit) {
+        Some(unit) if follows_range(c) => {
+            c.error("unit-syntax", "a unit stands only after a number, not after a range").with_hint(format!(
+                "the ends of a range have the unit of the parameter; another one: `(0 [{unit}], 1 [{unit}])`"
+            ))
+        }
         Some(unit) => {
             let operand = if c.before().0 == Some(Name) { c.before().1 } else { "(...)" };
             c.error("unit-syntax", "a unit stands only after a number")
@@ -81,6 +86,22 @@ fn bracket_after_operand(c: &Context<'_>) -> Diagnostic {
             .error("unexpected", "`[` cannot stand here")
             .with_hint("components are `.x`, `.y`, `.z`; an interval follows `in`"),
     }
+}
+
+/// `in (0, 10)` stands before.
+fn follows_range(c: &Context<'_>) -> bool {
+    let mut depth = 0;
+    for at in (0..c.at).rev() {
+        match c.word(at) {
+            ")" | "]" => depth += 1,
+            "(" | "[" => depth -= 1,
+            _ => {}
+        }
+        if depth == 0 {
+            return at > 0 && c.word(at - 1) == "in";
+        }
+    }
+    false
 }
 
 /// `sin u`, `if a > b ...`
