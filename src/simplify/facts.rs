@@ -26,6 +26,8 @@ pub enum Fact {
     ConstantMean,
     /// H^2 = K, and not minimal: both principal curvatures are equal.
     Umbilic,
+    /// dA > 0 at every point of the region, ends that belong to it included.
+    Regular,
 }
 
 impl fmt::Display for Fact {
@@ -39,6 +41,7 @@ impl fmt::Display for Fact {
             Fact::ConstantGauss => "constant-K",
             Fact::ConstantMean => "constant-H",
             Fact::Umbilic => "umbilic",
+            Fact::Regular => "regular",
         })
     }
 }

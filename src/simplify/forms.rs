@@ -8,6 +8,7 @@ use super::meter::{Exhausted, Step, with_allowance};
 use super::parse_back::parse_back;
 use super::plan::Printer;
 use super::read::Arguments;
+use super::regular::is_regular;
 use super::stability::is_stable;
 use super::total::Total;
 use crate::calculus::{cross, norm};
@@ -153,6 +154,9 @@ pub fn closed_forms(model: &Model, patch: PatchId) -> ClosedForms {
         best.area = with_allowance(INTEGRATING, || total.area(element));
         best.area_conditions = total.conditions;
         best.is_degenerate = *element == Form::integer(0);
+        if with_allowance(READING, || is_regular(model, patch, &graph, element)) {
+            best.facts.push(Fact::Regular);
+        }
     }
     if best.is_degenerate {
         best.forms.retain(|quantity, _| !quantity.needs_normal());

@@ -25,6 +25,7 @@ mod product;
 mod radical;
 mod read;
 mod region;
+mod regular;
 mod ring;
 mod sign;
 mod stability;

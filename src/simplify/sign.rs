@@ -63,7 +63,7 @@ pub(super) fn sign(ring: &Ring, graph: &Graph, ranges: &Ranges, polynomial: &Pol
 
 /// Like [`sign`], and the polynomial is proved not to vanish inside the region.
 pub(super) fn strict_sign(ring: &Ring, graph: &Graph, ranges: &Ranges, polynomial: &Polynomial) -> Option<i8> {
-    Prover::new(ring, graph, ranges, true).sign(polynomial, 0).ok().flatten()
+    Prover::new(ring, graph, ranges, true).sign(polynomial, HALVINGS).ok().flatten()
 }
 
 struct Prover<'a> {
