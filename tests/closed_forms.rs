@@ -1,6 +1,8 @@
 //! Closed forms against the literature (`data/surfaces.json`, with its sources): equal, and not longer. What is equal is
 //! decided at random points by an evaluator that shares nothing with the simplifier but the table of functions.
 
+// Another test uses the rest of it.
+#[allow(dead_code)]
 #[path = "support/double_double.rs"]
 mod double_double;
 mod support;

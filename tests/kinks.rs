@@ -2,6 +2,7 @@
 
 use quadrel::integrals::{Answer, AnswerKind, NoProgress, Settings, answer};
 use quadrel::language::{Source, check};
+use std::f64::consts::PI;
 
 fn run(sheet: &str, relative: f64) -> Answer {
     let model = check(Source::new("kinks.sheet", sheet)).expect("a valid sheet");
@@ -12,8 +13,12 @@ fn run(sheet: &str, relative: f64) -> Answer {
 
 /// Asserts that the error covers the truth, at coarse and fine tolerances, and returns the finest kind.
 fn honest(sheet: &str, truth: f64) -> AnswerKind {
+    honest_at(&[1e-2, 1e-3, 1e-4, 1e-6, 1e-9], sheet, truth)
+}
+
+fn honest_at(tolerances: &[f64], sheet: &str, truth: f64) -> AnswerKind {
     let mut kind = AnswerKind::Unreached;
-    for relative in [1e-2, 1e-3, 1e-4, 1e-6, 1e-9] {
+    for &relative in tolerances {
         let found = run(sheet, relative);
         let component = &found.components[0];
         // The exact value is rounded to a double as well.
@@ -115,4 +120,39 @@ q{i} = integral(sin(1000*u*v)*abs(sin(500*u*v)), p{i})
         assert!((component.value - truth).abs() <= component.error, "{} ± {}", component.value, component.error);
     }
     assert!(found[5].evaluations < found[0].evaluations, "the stock is shared");
+}
+
+/// Small holes in a flange of radii 0.3 and 0.5, on a circle of radius 0.42: the area is pi (0.5^2 - 0.3^2) less pi r^2 for each.
+#[test]
+fn small_holes() {
+    let flange = "ring(s, u) = (s*cos(u), s*sin(u), 0) on s in [0.3, 0.5], u in [0, 2*pi]";
+    for (radius, angles) in [(0.0005, &[0.3, 1.3][..]), (0.004, &[0.3, 1.3]), (0.004, &[0.3, 1.3, 2.3, 3.3, 4.3])] {
+        let squares =
+            angles.iter().map(|angle| format!("(x - 0.42*cos({angle}))^2 + (y - 0.42*sin({angle}))^2 > {radius}^2"));
+        let distances =
+            angles.iter().map(|angle| format!("hypot(x - 0.42*cos({angle}), y - 0.42*sin({angle})) > {radius}"));
+        let truth = PI * (0.16 - angles.len() as f64 * radius * radius);
+        for holes in [squares.collect::<Vec<_>>(), distances.collect()] {
+            let sheet = format!("{flange}\nbored = ring where {}\nq = area(bored)", holes.join(" and "));
+            honest_at(&[1e-3, 1e-9], &sheet, truth);
+        }
+    }
+}
+
+/// Jumps and bumps on small places of the unit square, alone and in one pass with each other: areas and volumes of discs,
+/// cones and strips by hand.
+#[test]
+fn small_places() {
+    let square = "sq(x, y) = (x, y, 0) on x in [0, 1], y in [0, 1]";
+    let (jump, cone) =
+        ("if(hypot(x - 0.7123, y - 0.2212) < 0.003, 1000, 0)", "max(0, 0.003 - hypot(x - 0.7123, y - 0.2212))");
+    let strip = "if(abs(x - 0.4567) < 1e-4, 1, 0)";
+    let jump_truth = 1000.0 * PI * 9e-6;
+    let at = |question: &str, truth| honest_at(&[1e-3, 1e-9], &format!("{square}\nq = {question}"), truth);
+    assert_eq!(at(&format!("integral({jump}, sq)"), jump_truth), AnswerKind::Estimate);
+    at(&format!("integral({cone}, sq)"), PI * 2.7e-8 / 3.0);
+    at(&format!("integral({strip}, sq)"), 2e-4);
+    let waves = "integral(sum(i in 1..20, abs(sin(i*x*50 + y))), sq)";
+    at(&format!("integral({strip}, sq) + 0*{waves}"), 2e-4);
+    at(&format!("integral({jump}, sq) + 0*{waves}"), jump_truth);
 }

@@ -5,6 +5,7 @@ mod bounded;
 mod error;
 mod exact;
 mod functionals;
+mod hidden;
 mod nodes;
 mod outcome;
 mod patch_integrand;

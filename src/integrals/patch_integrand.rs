@@ -2,10 +2,12 @@
 //! trims resolved, kinks and sharp features located.
 
 use super::error::{IntegralError, Place};
+use super::hidden::small_places;
 use super::roots::{SignChanges, bisect, point, sign_changes};
 use super::rounding::{at_edge_of_domain, evaluate_bounded, remedy};
 use super::sharp::{SharpPlace, sharp_places};
 use super::structure::{Feature, Kink, features, is_periodic, kinks};
+use crate::enclosure::{Image, Interval, enclose};
 use crate::expression::{ExpressionId, Graph, SymbolId, evaluate, first_undefined, print_limited};
 use crate::kernel::{Kernel, Program};
 use crate::language::{Bindings, Bound, Patch};
@@ -127,7 +129,18 @@ impl Question<'_> {
         let mut outer_breaks = Vec::new();
         let allowed = PREPARATION_WORK.min(preparation);
         let mut work_left = allowed;
-        outer_breaks.extend(integrand.find_kinks(graph, &kinks, outer_segment, &compile, &mut work_left)?);
+        let mut hidden = Vec::new();
+        if let (Limits::Constant(inner), true) =
+            (&integrand.limits, outer_segment.from.is_finite() && outer_segment.to.is_finite())
+            && inner.from.is_finite()
+            && inner.to.is_finite()
+        {
+            let width = SMALL_PLACE * (outer_segment.to - outer_segment.from);
+            for kink in kinks.iter().filter(|kink| kink.along == [true, true]).take(MOST_EXAMINED) {
+                hidden.extend(small_places(graph, kink.formula, variables, [outer_segment, *inner], width, &value_of));
+            }
+        }
+        outer_breaks.extend(integrand.find_kinks(graph, &kinks, outer_segment, hidden, &compile, &mut work_left)?);
         let places = integrand.find_sharp_places(graph, &features, outer_segment, &compile, &mut work_left)?;
         integrand.prepared = allowed - work_left;
         outer_breaks.extend(places.iter().flat_map(|place| &place.outer));
@@ -137,6 +150,9 @@ impl Question<'_> {
         // Independence is needed to tell what the splits cost, periods are known only once they are settled.
         integrand.find_independence(graph, &roots, variables);
         integrand.afford(outer_segment, !kinks.is_empty(), &places, budget);
+        if integrand.sides.rough {
+            integrand.bound_hidden(kinks.len(), &self.largest(graph, outer_segment, variables, &integrand));
+        }
         integrand.sides.rounding = self.rounding(graph, outer_segment, variables, &integrand);
         integrand.find_periods(graph, self.densities, variables, &value_of);
         Ok(integrand)
@@ -179,6 +195,24 @@ impl Question<'_> {
             }
         }
         total.iter().map(|sum| if count > 0.0 { sum / count } else { 0.0 }).collect()
+    }
+
+    /// The largest size of each density on a rectangle, where interval arithmetic bounds it.
+    fn largest(
+        &self,
+        graph: &Graph,
+        outer: Segment,
+        variables: [SymbolId; 2],
+        integrand: &PatchIntegrand,
+    ) -> Vec<Option<f64>> {
+        let Limits::Constant(inner) = integrand.limits else { return vec![None; self.densities.len()] };
+        let range_of = |symbol: SymbolId| match variables.iter().position(|&variable| variable == symbol) {
+            Some(0) => Interval::new(outer.from, outer.to),
+            Some(_) => Interval::new(inner.from, inner.to),
+            None => Interval::point(self.bindings.value(symbol)),
+        };
+        let size = |image: Image| image.range.is_bounded().then(|| image.range.magnitude());
+        enclose(graph, self.densities, range_of).into_iter().map(size).collect()
     }
 
     /// Whether the interval of variable `index` depends on `other`.
@@ -341,7 +375,7 @@ const SHARP_EVALUATIONS: u64 = 20_000;
 const SHARP_OVERHEAD: u64 = 10;
 
 /// Work that the preparation of one patch may take, in additions.
-const PREPARATION_WORK: u64 = 1_500_000_000;
+const PREPARATION_WORK: u64 = 3_000_000_000;
 
 /// Inner lines that may be looked at to see where the arrangement of kinks changes.
 const STRUCTURE_LINES: u64 = 2_000;
@@ -354,6 +388,11 @@ const CHANGES_TOGETHER: usize = 8;
 
 /// Where the next change is looked for, behind one that is found, as a share of the distance of samples.
 const BESIDE: f64 = 1e-6;
+
+/// A place that is narrower than this part of the outer range is looked at by itself, and the number of formulas that are
+/// examined for such places.
+const SMALL_PLACE: f64 = 4.0 / STRUCTURE_SAMPLES as f64;
+const MOST_EXAMINED: usize = 24;
 
 /// Samples along the outer line at which the arrangement of kinks is compared.
 const STRUCTURE_SAMPLES: usize = 97;
@@ -445,6 +484,7 @@ impl PatchIntegrand {
         graph: &Graph,
         kinks: &[Kink],
         outer_segment: Segment,
+        hidden: Vec<f64>,
         compile: &impl Fn(&Graph, &[ExpressionId]) -> Result<Kernel, IntegralError>,
         work_left: &mut u64,
     ) -> Result<Vec<f64>, IntegralError> {
@@ -475,7 +515,7 @@ impl PatchIntegrand {
         }
         self.kinks = mixed;
         if !self.kinks.is_empty() || self.trim.is_some() {
-            outer_breaks.extend(self.structure_changes(outer_segment, *work_left));
+            outer_breaks.extend(self.structure_changes(outer_segment, hidden, *work_left));
             *work_left = work_left.saturating_sub(self.searched.load(Ordering::Relaxed));
         }
         if self.sides.rough {
@@ -543,6 +583,40 @@ impl PatchIntegrand {
                 // A place where the density is infinite shows in the rules, which cannot come near it.
                 *unsplit += if held.is_finite() { held } else { 0.0 };
             }
+        }
+    }
+
+    /// Where kinks or the trim were not resolved, a place that holds no node may be cut out or jump: for each formula as
+    /// much of every density as the cells between four nodes hold, added to the error. `largest` bounds the densities where
+    /// that could be proved.
+    fn bound_hidden(&mut self, kinks: usize, largest: &[Option<f64>]) {
+        let mut mean = vec![0.0; self.components()];
+        let mut count = 0.0;
+        let mut whole = 0.0;
+        let segments = self.sides.outer.clone();
+        for segment in &segments {
+            for share in [0.13, 0.47, 0.82] {
+                let outer = point(*segment, share);
+                let limits = self.limits_at(outer);
+                let measure = (segment.to - segment.from) * (limits.to - limits.from);
+                if !measure.is_finite() {
+                    continue;
+                }
+                for inner_share in [0.11, 0.43, 0.86] {
+                    let mut densities = vec![0.0; self.components()];
+                    self.evaluate(outer, &[point(limits, inner_share)], &mut densities);
+                    for (mean, density) in mean.iter_mut().zip(densities) {
+                        *mean += if density.is_finite() { density.abs() * measure } else { 0.0 };
+                    }
+                    whole += measure;
+                    count += 1.0;
+                }
+            }
+        }
+        let cells = 4.0 * kinks.max(1) as f64 / self.first_round().max(1) as f64;
+        for ((unsplit, mean), largest) in self.unsplit.iter_mut().zip(mean).zip(largest) {
+            let sum = largest.map_or(mean, |largest| largest * whole);
+            *unsplit += if count > 0.0 { sum * segments.len() as f64 / count * cells } else { 0.0 };
         }
     }
 
@@ -628,17 +702,21 @@ impl PatchIntegrand {
 
     /// Outer values at which kinks appear, vanish, cross or leave through a limit, to the last place. Two or more changes
     /// close together may leave some unfound; the integrand is then rough. So it is where looking takes more than `work_left`.
-    fn structure_changes(&mut self, outer_segment: Segment, work_left: u64) -> Vec<f64> {
+    fn structure_changes(&mut self, outer_segment: Segment, hidden: Vec<f64>, work_left: u64) -> Vec<f64> {
         let everything = |_: usize| true;
-        let at = |i: usize| point(outer_segment, (i as f64 + 0.5) / STRUCTURE_SAMPLES as f64);
+        let even = |i: usize| point(outer_segment, (i as f64 + 0.5) / STRUCTURE_SAMPLES as f64);
+        let mut samples: Vec<f64> = (0..STRUCTURE_SAMPLES).map(even).chain(hidden).collect();
+        samples.sort_by(f64::total_cmp);
+        samples.dedup();
+        let at = |i: usize| samples[i];
         let mut changes = Vec::new();
         let (mut before, settled) = self.arrangement(at(0), &everything);
         let searched = |lines: u64| lines.saturating_mul(self.searched.load(Ordering::Relaxed));
-        let mut rough = !settled || searched(STRUCTURE_SAMPLES as u64) > work_left;
+        let mut rough = !settled || searched(samples.len() as u64) > work_left;
         let mut lines = 0;
         let mut parts = before.len() as u64 + 1;
         let all = self.kinks.len().max(1) as u64;
-        for i in 1..STRUCTURE_SAMPLES {
+        for i in 1..samples.len() {
             let (here, settled) = self.arrangement(at(i), &everything);
             rough |= !settled || searched(1) > work_left;
             lines += 1;
@@ -677,7 +755,7 @@ impl PatchIntegrand {
         }
         // Each sample along the outer line looks at a whole line, with the trim at its parts.
         self.line_work = searched(1) / (1 + lines);
-        self.line_parts = parts / STRUCTURE_SAMPLES as u64 + 1;
+        self.line_parts = parts / samples.len() as u64 + 1;
         self.sides.rough |= rough;
         changes
     }

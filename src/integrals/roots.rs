@@ -80,27 +80,25 @@ fn dips(a: f64, b: f64, c: f64) -> bool {
     a * b > 0.0 && b * c > 0.0 && b.abs() <= a.abs() && b.abs() <= c.abs()
 }
 
-/// The two roots beside an extreme value that crosses zero, if it does: golden-section search on |f|.
+/// The two roots beside an extreme value that crosses zero, if it does: the lowest of some points and its neighbors, again
+/// and again.
 fn pair_between(x: [f64; 3], middle: f64, f: &mut dyn FnMut(&[f64]) -> Vec<f64>) -> Vec<f64> {
     let sign = middle.signum();
-    let ratio = 0.5 * (5f64.sqrt() - 1.0);
     let (mut low, mut high) = (x[0], x[2]);
-    for _ in 0..40 {
-        let left = high - ratio * (high - low);
-        let right = low + ratio * (high - low);
-        let values = f(&[left, right]);
-        for (at, value) in [(left, values[0]), (right, values[1])] {
-            if value * sign < 0.0 {
-                let before = narrow(x[0], at, sign, f);
-                let after = narrow(at, x[2], -sign, f);
-                return vec![before, after];
-            }
+    for _ in 0..12 {
+        let step = (high - low) / PARTS as f64;
+        let inner: Vec<f64> = (1..PARTS).map(|i| low + step * i as f64).collect();
+        let values = f(&inner);
+        let Some(lowest) = (0..inner.len()).min_by(|&i, &j| (values[i] * sign).total_cmp(&(values[j] * sign))) else {
+            break;
+        };
+        let (at, value) = (inner[lowest], values[lowest]);
+        if value * sign < 0.0 {
+            let before = narrow(x[0], at, sign, f);
+            let after = narrow(at, x[2], -sign, f);
+            return vec![before, after];
         }
-        if values[0] * sign < values[1] * sign {
-            high = right;
-        } else {
-            low = left;
-        }
+        (low, high) = (at - step, at + step);
     }
     Vec::new()
 }

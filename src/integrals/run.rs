@@ -424,7 +424,7 @@ impl Run<'_> {
             self.settings.evaluations.unwrap_or_else(default)
         };
         let least = if self.work_left.get() > 0 { LEAST_PREPARATION } else { LAST_PREPARATION };
-        let integrand = question.prepare(&mut self.graph, &budget, (self.work_left.get() / 8).max(least))?;
+        let integrand = question.prepare(&mut self.graph, &budget, (self.work_left.get() / 4).max(least))?;
         let (work, budget) = (integrand.work(), budget(&integrand));
         let tolerance = |k: usize, value: f64, magnitude: f64| {
             // Integrals that only carry errors need two digits.

@@ -47,7 +47,7 @@ pub fn value_with_error(value: f64, error: f64) -> String {
         return format!("{value:.2e}, no error bound");
     }
     if error == 0.0 {
-        return format!("{value} ± 0");
+        return format!("{} ± 0", without_sign_of_zero(format!("{value}")));
     }
     let place = error.log10().floor() as i32 - 1;
     let size = if value == 0.0 { place } else { value.abs().log10().floor() as i32 };
