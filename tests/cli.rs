@@ -422,3 +422,18 @@ fn help() {
         insta::assert_snapshot!(format!("help_{name}"), text(&run(&arguments, None).stdout));
     }
 }
+
+/// A disk that is full is a failure of output, not a success.
+#[cfg(target_os = "linux")]
+#[test]
+fn a_full_disk_is_told() {
+    let full = std::fs::OpenOptions::new().write(true).open("/dev/full").expect("/dev/full");
+    let output = std::process::Command::new(env!("CARGO_BIN_EXE_quadrel"))
+        .args(["answer", "examples/belt.sheet"])
+        .stdout(full)
+        .stderr(std::process::Stdio::piped())
+        .output()
+        .expect("a run");
+    assert_eq!(output.status.code(), Some(5));
+    assert!(text(&output.stderr).contains("standard output"));
+}

@@ -148,7 +148,16 @@ fn forms_of_the_literature_are_reached() {
                 }
             }
         }
-        let facts: Vec<String> = found.facts.iter().map(Fact::to_string).collect();
+        // The lists do not say which charts are regular; whether that is so is looked at in numbers.
+        let (regular, facts): (Vec<Fact>, Vec<Fact>) = found.facts.iter().partition(|fact| **fact == Fact::Regular);
+        if !regular.is_empty() {
+            let mut random = Random::new(31);
+            assert!(
+                (0..40).all(|_| value(text(&entry, "dA"), &point(&entry, &mut random)) > 0.0),
+                "{id} is not regular"
+            );
+        }
+        let facts: Vec<String> = facts.iter().map(Fact::to_string).collect();
         let mut expected = strings(&entry["facts"]);
         expected.sort();
         let mut sorted = facts.clone();
@@ -261,6 +270,18 @@ fn the_mean_curvature_of_a_sphere_walked_over_twice_is_not_constant() {
     let sheet = "s(t, p) = (sin(t)*cos(p), sin(t)*sin(p), cos(t)) on t in [0, 2*pi], p in [0, pi]";
     let found = closed_forms(&checked(sheet), PatchId(0));
     assert!(!found.facts.contains(&Fact::ConstantMean) && found.facts.contains(&Fact::ConstantGauss));
+}
+
+/// Poles and tips that belong to the region make a chart singular; without them, or open there, it is regular.
+#[test]
+fn regular_charts() {
+    for (v, is_regular) in [("[0.1, 3]", true), ("(0, pi)", true), ("[0, pi)", false), ("[0.1, pi]", false)] {
+        let sheet = format!("s(v, u) = (sin(v)*cos(u), sin(v)*sin(u), cos(v)) on v in {v}, u in [0, 2*pi]");
+        let found = closed_forms(&checked(&sheet), PatchId(0));
+        // What is not proved is not said; what is false never.
+        assert!(is_regular || !found.facts.contains(&Fact::Regular), "{v}");
+        assert!(v != "[0.1, 3]" || found.facts.contains(&Fact::Regular), "{v}");
+    }
 }
 
 /// A curve has no area, no normal and no curvature, and nothing is claimed of it.

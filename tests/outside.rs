@@ -436,3 +436,16 @@ fn ribs_that_fall_between_the_nodes() {
         holds(&checks, &[0.5]);
     }
 }
+
+/// An integral that does not exist leaves the sound ones beside it: over the plane, that of exp(-r^2) is pi, that of
+/// 1/(1 + r^2)^2 is pi; the area is infinite.
+#[test]
+fn an_infinite_area_leaves_the_others() {
+    let sheet = "gau(x, y) = (x, y, 0) on x in [-inf, inf], y in [-inf, inf]\nG = integral(exp(-(x^2 + y^2)), gau)\n\
+        H1 = integral(1/(1 + x^2 + y^2)^2, gau)\nwhole = area(gau)";
+    let found = each(sheet, &Settings::default());
+    close(&found[0], PI);
+    assert!(found[1].failure.is_none());
+    assert!((found[1].components[0].value - PI).abs() <= found[1].components[0].error);
+    assert!(found[2].failure.is_some());
+}

@@ -16,9 +16,6 @@ pub(super) fn run(options: &AnswerOptions) -> Result<Exit, Failure> {
                 .to_owned(),
         ));
     }
-    if options.threads == Some(0) {
-        return Err(Failure::Usage("--threads is at least 1".to_owned()));
-    }
     let (model, bindings) = load(&options.sheet, &options.set)?;
     let settings = Settings { relative: options.rel, absolute: options.abs, evaluations: options.evaluations };
     let watch = Watch::new();

@@ -83,7 +83,7 @@ pub struct AnswerOptions {
     #[arg(long)]
     pub evaluations: Option<u64>,
     /// Threads for large work; the result does not depend on it. Default: all processors.
-    #[arg(long)]
+    #[arg(long, value_parser = threads)]
     pub threads: Option<usize>,
     /// Print one JSON document.
     #[arg(long)]
@@ -174,7 +174,7 @@ pub struct SpeedOptions {
     #[arg(long, default_value_t = 1_000_000)]
     pub scattered: usize,
     /// Threads.
-    #[arg(long, default_value_t = 1)]
+    #[arg(long, default_value_t = 1, value_parser = threads)]
     pub threads: usize,
     /// Repeats; the minimum counts.
     #[arg(long, default_value_t = 11)]
@@ -202,10 +202,20 @@ pub enum SimplifyOption {
     Off,
 }
 
+/// More threads than this help no machine, and take long to start.
+const MOST_THREADS: usize = 512;
+
 fn tolerance(text: &str) -> Result<f64, String> {
     match text.parse::<f64>() {
         Ok(value) if value.is_finite() && value >= 0.0 => Ok(value),
         _ => Err("a tolerance is a number of at least 0, such as 1e-9".to_owned()),
+    }
+}
+
+fn threads(text: &str) -> Result<usize, String> {
+    match text.parse() {
+        Ok(count) if (1..=MOST_THREADS).contains(&count) => Ok(count),
+        _ => Err(format!("threads are 1 to {MOST_THREADS}")),
     }
 }
 

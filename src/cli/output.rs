@@ -1,13 +1,19 @@
 //! Where text goes: results to standard output, messages to standard error, color only where a terminal shows it.
 
+use super::Exit;
 use crate::integrals::IntegralError;
 use crate::language::{Diagnostic, Part, Severity, Source};
-use std::io::Write;
+use std::io::{ErrorKind, Write};
 
-/// Prints a result. A reader that has gone away is not an error.
+/// Prints a result. A reader that has gone away is not an error; a full disk ends the run.
 pub(super) fn print(text: &str) {
     let mut out = std::io::stdout().lock();
-    let _ = out.write_all(text.as_bytes()).and_then(|()| out.flush());
+    if let Err(error) = out.write_all(text.as_bytes()).and_then(|()| out.flush())
+        && error.kind() != ErrorKind::BrokenPipe
+    {
+        problem(&format!("standard output: {error}"));
+        std::process::exit(Exit::Files as i32);
+    }
 }
 
 /// Prints the one JSON document.

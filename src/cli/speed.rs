@@ -19,8 +19,8 @@ pub(super) fn run(options: &SpeedOptions) -> Result<Exit, Failure> {
     if options.scattered > MOST_POINTS {
         return Err(Failure::Usage(format!("--scattered takes at most {MOST_POINTS} points")));
     }
-    if options.repeats == 0 || options.threads == 0 {
-        return Err(Failure::Usage("--repeats and --threads are at least 1".to_owned()));
+    if options.repeats == 0 || options.scattered == 0 {
+        return Err(Failure::Usage("--repeats and --scattered are at least 1".to_owned()));
     }
     let lanes = options.lanes.unwrap_or_else(Lanes::widest);
     if !lanes.is_supported() {
@@ -33,6 +33,9 @@ pub(super) fn run(options: &SpeedOptions) -> Result<Exit, Failure> {
         simplify: options.simplify == SimplifyOption::On,
         lanes,
     };
+    if model.patches[patch.0].trim.is_some() {
+        output::note("the whole region is measured: `where` is not part of dA");
+    }
     let measured = rayon::ThreadPoolBuilder::new()
         .num_threads(options.threads)
         .build()

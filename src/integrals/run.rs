@@ -346,7 +346,8 @@ impl Run<'_> {
         }
     }
 
-    /// Integrates the members of a pass together. One whose integral fails is taken out, and the others begin again.
+    /// Integrates the members of a pass together. One whose integral fails is taken out and tried alone, and
+    /// the others begin again.
     fn run_pass(
         &mut self,
         pass: Pass,
@@ -382,18 +383,16 @@ impl Run<'_> {
                         shares[member.functional][member.share].integrals = Ok(Some(part));
                     }
                 }
-                Err(JointFailure { error, component: Some(component) }) => {
+                // A sound integral can overflow in the map that another one needs at an end: each is judged alone.
+                Err(JointFailure { component: Some(component), .. }) if members.len() > 1 => {
                     let member = members.remove(joint.member_of(component));
-                    shares[member.functional][member.share].integrals = Err(error);
-                    if !members.is_empty() {
-                        groups.push(members);
-                    }
+                    groups.extend([members, vec![member]]);
                 }
                 // A formula that is too large for one kernel may fit in parts.
                 Err(JointFailure { error, component: None }) if error.code == "formula" && members.len() > 1 => {
                     groups.extend(members.into_iter().map(|member| vec![member]));
                 }
-                Err(JointFailure { error, component: None }) => {
+                Err(JointFailure { error, .. }) => {
                     for member in members {
                         shares[member.functional][member.share].integrals = Err(error.clone());
                     }
