@@ -9,6 +9,7 @@ mod support;
 
 use approx::assert_relative_eq;
 use double_double::Double;
+use quadrel::enclosure::{Interval, enclose_one};
 use quadrel::expression::{ExpressionId, Function, Graph, Node, SymbolId, evaluate, evaluate_one};
 use quadrel::geometry::Surface;
 use quadrel::language::{Model, PatchId, Source, check};
@@ -411,6 +412,40 @@ fn evaluated_forms_hold_near_the_edges() {
         }
     }
     assert!(compared > 2_000, "{compared}");
+}
+
+/// Ranges of the closed form and of the norm of the cross product over small boxes overlap: both contain the truth.
+#[test]
+fn ranges_of_both_forms_overlap() {
+    let mut bounded = 0;
+    for entry in surfaces() {
+        let model = model(&entry);
+        let bindings = model.bind(&[]).expect("values of the sheet");
+        let mut graph = model.graph.clone();
+        let norm = Surface::new(&mut graph, &model.patches[0]).element;
+        let Some(element) = element_form(&model, PatchId(0)) else { continue };
+        let mut formulas = Formulas::new();
+        let form = formulas.parse(&element.form.text());
+        let known: Vec<(String, f64)> =
+            model.parameters.iter().map(|own| (own.name.clone(), bindings.value(own.symbol))).collect();
+        let mut random = Random::new(41);
+        for _ in 0..10 {
+            let box_of = ["u", "v"].map(|variable| {
+                let ends: Vec<f64> = strings(&entry[variable]).iter().map(|end| value(end, &known)).collect();
+                let at = ends[0] + (ends[1] - ends[0]) * random.between(0.02, 0.97);
+                Interval::new(at, at + 1e-3 * (ends[1] - ends[0]))
+            });
+            let range_of = |name: &str| match ["u", "v"].iter().position(|own| *own == name) {
+                Some(place) => box_of[place],
+                None => Interval::point(known.iter().find(|(own, _)| own == name).expect("a parameter").1),
+            };
+            let left = enclose_one(&formulas.graph, form, |symbol| range_of(formulas.graph.symbol_name(symbol))).range;
+            let right = enclose_one(&graph, norm, |symbol| range_of(graph.symbol_name(symbol))).range;
+            assert!(!left.intersection(right).is_empty(), "{}: {left} {right}", entry["id"]);
+            bounded += usize::from(left.is_bounded() && right.is_bounded());
+        }
+    }
+    assert!(bounded > 300, "{bounded}");
 }
 
 /// A formula in double-double arithmetic.

@@ -7,6 +7,7 @@ use super::factor::square_root;
 use super::meter::{Step, spend};
 use super::polynomial::Polynomial;
 use super::ring::{Kind, Ring};
+use dashu_int::IBig;
 
 /// A sum whose square is known: `lead + rest`. The product with `lead - rest` has fewer roots.
 pub(super) struct Binomial {
@@ -43,7 +44,7 @@ pub(super) fn binomial_root(ring: &Ring, polynomial: &Polynomial) -> Step<Option
                 continue;
             }
             let (Some(first), Some(last)) = (root_in_ring(ring, first)?, root_in_ring(ring, last)?) else { continue };
-            let double = ring.canonical(&first.times(&last)?.plus(&first.times(&last)?))?;
+            let double = ring.canonical(&first.times(&last)?.scaled(&IBig::from(2))?)?;
             let middle = ring.canonical(middle)?;
             let lead = first.times(&Polynomial::generator(generator))?;
             if double == middle {
