@@ -255,7 +255,9 @@ fn assemble(target: &Target, run: &mut Run<'_>, outcomes: &FxHashMap<FunctionalI
     let failure = failure(target, &components, &behind, run, outcomes);
     let reason = match &failure {
         Some(failure) => Some(failure.error.message.clone()),
-        None => (!reached).then(|| doubt.unwrap_or_else(|| reason(finite, limit, allowed < FINEST * largest))),
+        None => {
+            (!reached).then(|| doubt.unwrap_or_else(|| reason(finite, limit, allowed < FINEST * largest, behind.len())))
+        }
     };
     Answer {
         name: target.name.clone(),
@@ -300,7 +302,7 @@ fn failure(
     Some(Box::new(AnswerFailure { error, span: target.span, line, column }))
 }
 
-fn reason(finite: bool, limit: Option<Limit>, too_fine: bool) -> String {
+fn reason(finite: bool, limit: Option<Limit>, too_fine: bool, integrals: usize) -> String {
     if !finite && limit.is_none() {
         return "there is no error bound: a divisor is zero within its error".to_owned();
     }
@@ -309,6 +311,7 @@ fn reason(finite: bool, limit: Option<Limit>, too_fine: bool) -> String {
         Some(Limit::Rounding) => "rounding errors of the integrand are larger than the tolerance",
         Some(Limit::Stopped) => "the run was interrupted",
         Some(Limit::Growth(_)) => "whether the integral exists cannot be told from samples",
+        None if integrals == 1 => "the error bound of the integral stays above the tolerance",
         None => "the errors of the integrals add up to more than the tolerance",
     };
     if !finite {
